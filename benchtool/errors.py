@@ -1,0 +1,167 @@
+"""Every error benchtool raises on purpose.
+
+The tree::
+
+    BenchtoolError                what went wrong, where, and what to do next
+    ├── UsageError                options that contradict each other or lack something
+    │   └── UnitError                 a text that is no value of the unit asked for
+    ├── InputError                a file that cannot be opened or written
+    ├── CaptureError              a file that was opened
+    │   ├── UnknownStructureError     no reader recognises it
+    │   ├── AmbiguousStructureError   two readings are sound; the hint names the option
+    │   └── MalformedCaptureError     recognised, but damaged or empty; carries path and line
+    ├── MeasurementError          the data do not hold what was asked of them
+    ├── DesignError               the design file; carries every fault with key, line and nearest key
+    └── SolveError                no circuit of the given topology gives these times
+
+A board that fails is a result and never an exception.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import ClassVar
+
+
+class BenchtoolError(Exception):
+    """Base of all errors that benchtool raises on purpose.
+
+    Args:
+        message: What went wrong and where, one sentence.
+        hint: What the user can do next, one sentence.
+        code: Stable name of the error; the class's own where none is given.
+    """
+
+    default_code: ClassVar[str] = "error"
+
+    def __init__(self, message: str, *, hint: str, code: str | None = None) -> None:
+        super().__init__(message)
+        self.message = message
+        self.hint = hint
+        self.code = code or self.default_code
+
+    def __reduce__(self) -> tuple[object, ...]:
+        return _revive, (type(self), self.args, self.__dict__)
+
+    def __str__(self) -> str:
+        return self.message
+
+
+def _revive(
+    kind: type[BenchtoolError], args: tuple[object, ...], state: dict[str, object]
+) -> BenchtoolError:
+    """Rebuild a pickled error without calling its keyword-only constructor."""
+    error = kind.__new__(kind, *args)
+    error.args = args
+    error.__dict__.update(state)
+    return error
+
+
+class UsageError(BenchtoolError):
+    """Options that contradict each other, or one that is missing."""
+
+    default_code = "usage"
+
+
+class UnitError(UsageError, ValueError):
+    """A text that is not a value of the unit asked for."""
+
+    default_code = "unit"
+
+
+class InputError(BenchtoolError):
+    """A file that cannot be opened or written."""
+
+    default_code = "input"
+
+
+class CaptureError(BenchtoolError):
+    """A capture file that was opened but gives no capture."""
+
+    default_code = "capture"
+
+
+class UnknownStructureError(CaptureError):
+    """No reader recognises the file."""
+
+    default_code = "unknown-structure"
+
+
+class AmbiguousStructureError(CaptureError):
+    """Two readings of the file are both sound."""
+
+    default_code = "ambiguous-structure"
+
+
+class MalformedCaptureError(CaptureError):
+    """The structure is known but the content is damaged.
+
+    Args:
+        message: What is wrong.
+        hint: What to do.
+        path: Name of the file.
+        line: Line (text) or byte offset (binary) of the damage, where known.
+        code: Stable name of the error.
+    """
+
+    default_code = "malformed-capture"
+
+    def __init__(
+        self,
+        message: str,
+        *,
+        hint: str,
+        path: str = "",
+        line: int | None = None,
+        code: str | None = None,
+    ) -> None:
+        super().__init__(message, hint=hint, code=code)
+        self.path = path
+        self.line = line
+
+
+class MeasurementError(BenchtoolError):
+    """The data do not hold what was asked of them."""
+
+    default_code = "no-measurement"
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class DesignFault:
+    """One fault of a design file: where it is and what is wrong with it."""
+
+    key: str
+    message: str
+    file: str = ""
+    line: int | None = None
+    near: str | None = None
+
+
+class DesignError(BenchtoolError):
+    """A design file with one or more faults.
+
+    Args:
+        message: Summary sentence.
+        hint: What to do.
+        faults: Every fault found, in file order.
+        code: Stable name of the error.
+    """
+
+    default_code = "design"
+
+    def __init__(
+        self,
+        message: str,
+        *,
+        hint: str,
+        faults: tuple[DesignFault, ...] = (),
+        code: str | None = None,
+    ) -> None:
+        super().__init__(message, hint=hint, code=code)
+        self.faults = faults
+
+
+class SolveError(BenchtoolError):
+    """No circuit of the given topology gives the measured times."""
+
+    default_code = "no-solution"

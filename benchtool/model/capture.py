@@ -1,0 +1,301 @@
+"""What was recorded: captures, their traces and where they came from."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Iterator
+from dataclasses import dataclass, field
+from typing import Literal, Protocol
+
+import numpy as np
+from numpy.typing import NDArray
+
+from benchtool.model.quantity import Notice
+
+FloatArray = NDArray[np.float64]
+BoolArray = NDArray[np.bool_]
+AnyArray = NDArray[np.generic]
+
+BLOCK = 1 << 18
+"""Samples in a block: small enough for the cache, large enough for numpy."""
+
+
+class Samples(Protocol):
+    """A row of samples that can be walked in blocks as often as needed.
+
+    An array, a mapped file and a text file meet it alike, so the size of a capture costs time
+    and not memory. An implementation that holds a file opens and closes it inside ``blocks``.
+    """
+
+    @property
+    def size(self) -> int:
+        """Number of samples."""
+        ...
+
+    @property
+    def dtype(self) -> np.dtype[np.generic]:
+        """Type of a sample: an integer for codes, a float for volts."""
+        ...
+
+    def blocks(self, start: int = 0, stop: int | None = None) -> Iterator[AnyArray]:
+        """Yield consecutive 1-D pieces of the samples ``start`` to ``stop``."""
+        ...
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class ArraySamples:
+    """Samples held in an array, in memory or mapped from a file."""
+
+    array: AnyArray
+
+    def __post_init__(self) -> None:
+        if self.array.ndim != 1:
+            raise ValueError(f"samples must be 1-D, got {self.array.ndim}-D")
+
+    @property
+    def size(self) -> int:
+        """Number of samples."""
+        return int(self.array.size)
+
+    @property
+    def dtype(self) -> np.dtype[np.generic]:
+        """Type of a sample."""
+        return self.array.dtype
+
+    def blocks(self, start: int = 0, stop: int | None = None) -> Iterator[AnyArray]:
+        """Yield consecutive views of the samples ``start`` to ``stop``."""
+        end = self.size if stop is None else min(stop, self.size)
+        for first in range(start, end, BLOCK):
+            yield self.array[first : min(first + BLOCK, end)]
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Scale:
+    """Volts from codes: ``volts = gain * code + offset``.
+
+    Attributes:
+        gain: Volts a code; 1.0 where the samples are volts already.
+        offset: Volts at code zero.
+        step_v: Size of one code in volts, or None where the samples have no fixed step.
+    """
+
+    gain: float = 1.0
+    offset: float = 0.0
+    step_v: float | None = None
+
+    def __post_init__(self) -> None:
+        if not (math.isfinite(self.gain) and self.gain != 0 and math.isfinite(self.offset)):
+            raise ValueError(f"a scale needs a finite gain other than 0, got {self.gain}")
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class UniformTime:
+    """Evenly spaced samples: sample ``i`` lies at ``span.start_s + (i - span.start) * dt_s``.
+
+    Attributes:
+        dt_s: Sample interval in seconds, greater than 0.
+        u_rel: Relative standard uncertainty of ``dt_s`` from how it was printed, 0 where exact.
+    """
+
+    dt_s: float
+    u_rel: float = 0.0
+
+    def __post_init__(self) -> None:
+        if not (math.isfinite(self.dt_s) and self.dt_s > 0):
+            raise ValueError(f"a sample interval must be finite and > 0, got {self.dt_s}")
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class StampedTime:
+    """Samples with a time stamp each, in seconds after the first sample.
+
+    Attributes:
+        stamps: float64 seconds, one a sample, not decreasing inside a span.
+        resolution_s: Step of the printed stamps (last digit), 0 where unknown.
+    """
+
+    stamps: Samples
+    resolution_s: float = 0.0
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Span:
+    """A gap-free piece of a waveform: samples ``start`` to ``stop`` (exclusive).
+
+    Attributes:
+        start: Index of the first sample.
+        stop: One past the last sample.
+        start_s: Time of the first sample in seconds after the first sample of the trace.
+    """
+
+    start: int
+    stop: int
+    start_s: float
+
+    def __post_init__(self) -> None:
+        if not 0 <= self.start < self.stop:
+            raise ValueError(f"a span needs 0 <= start < stop, got {self.start}, {self.stop}")
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class Waveform:
+    """One channel of samples.
+
+    ``samples`` are codes or volts, ``scale`` makes volts of them. Floating samples may hold NaN
+    for what the file did not give; timing treats a run of NaN as a gap.
+
+    Attributes:
+        samples: The samples; 1-D.
+        scale: Volts from samples.
+        time: Even or stamped time.
+        spans: Gap-free pieces in order, never overlapping.
+        channel: Name as the file gives it, or ``column 2``.
+        unit: Unit of the scaled samples, V, or 1 for sampled logic.
+    """
+
+    samples: Samples
+    time: UniformTime | StampedTime
+    spans: tuple[Span, ...]
+    channel: str
+    scale: Scale = Scale()
+    unit: str = "V"
+
+    def __post_init__(self) -> None:
+        if not self.spans:
+            raise ValueError("a waveform needs at least one span")
+        if self.spans[-1].stop > self.samples.size:
+            raise ValueError("the last span ends beyond the samples")
+
+    @property
+    def is_logic(self) -> bool:
+        """Whether the samples are sampled logic states 0 and 1."""
+        return self.unit == "1"
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class TimeSpan:
+    """A gap-free piece of a logic trace, with the state it begins in."""
+
+    start_s: float
+    end_s: float
+    starts_high: bool
+
+    def __post_init__(self) -> None:
+        if not self.end_s >= self.start_s:
+            raise ValueError(f"a time span cannot end before it starts: {self}")
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class LogicTrace:
+    """One channel of transitions.
+
+    Attributes:
+        times_s: Seconds after the start of the record, shape (n,), not decreasing.
+        states: State after each transition, True is high, shape (n,); the transitions of a span
+            alternate, beginning with the one that leaves ``starts_high``.
+        spans: Gap-free pieces of the record in order.
+        tick_s: Resolution of the times in seconds.
+        channel: Name as the file gives it.
+        end_known: Whether the record's end is stated; otherwise it ends at its last transition.
+    """
+
+    times_s: FloatArray
+    states: BoolArray
+    spans: tuple[TimeSpan, ...]
+    tick_s: float
+    channel: str
+    end_known: bool = True
+
+    def __post_init__(self) -> None:
+        if self.times_s.shape != self.states.shape or self.times_s.ndim != 1:
+            raise ValueError("times and states must be 1-D and of one length")
+        if not self.tick_s >= 0:
+            raise ValueError(f"a tick must be >= 0, got {self.tick_s}")
+
+
+Trace = Waveform | LogicTrace
+
+Role = Literal["output", "capacitor", "supply", "trigger", "other"]
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class StructurePoint:
+    """One thing found about a file's structure, and what it was found from."""
+
+    name: str
+    value: str
+    evidence: str
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Origin:
+    """Where a capture came from.
+
+    Attributes:
+        source: File name as given, or ``-`` for standard input.
+        format: Name of the reader: text, vcd, npz, wav.
+        sha256: Of the file's bytes as stored.
+        start_ns: Absolute start in integer nanoseconds since 1970 (UTC), where the file says.
+        instrument: What the file says of the instrument, where it does.
+    """
+
+    source: str
+    format: str
+    sha256: str
+    start_ns: int | None = None
+    instrument: str | None = None
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class Capture:
+    """One file or one acquisition: its traces, its structure and what was assumed on reading."""
+
+    origin: Origin
+    traces: tuple[Trace, ...]
+    structure: tuple[StructurePoint, ...] = ()
+    warnings: tuple[Notice, ...] = ()
+
+    def __post_init__(self) -> None:
+        if not self.traces:
+            raise ValueError("a capture needs at least one trace")
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class ReadOptions:
+    """What the user overrules about a file's structure; None leaves it to detection.
+
+    Attributes:
+        format: Name of the reader.
+        delimiter: One of ``, ; tab | space``.
+        decimal: ``.`` or ``,``.
+        time_unit: s, ms, us, ns or ps: the unit of the time column.
+        interval_s: Sample interval in seconds, where the file has no time column.
+        channel: Name (or number, from 1) of the trace to measure.
+    """
+
+    format: str | None = None
+    delimiter: str | None = None
+    decimal: str | None = None
+    time_unit: str | None = None
+    interval_s: float | None = None
+    channel: str | None = None
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class MeasureOptions:
+    """What the user overrules about a measurement; None leaves it to the design or the default.
+
+    Attributes:
+        active: ``high`` or ``low``: which state starts a cycle.
+        level_v: Mid reference level in volts.
+        timebase_rel: Half-width of the timebase error, relative (50 ppm is 50e-6).
+        jitter_rel: Assumed jitter of one interval, relative half-width.
+        temperature_c: Temperature of the board in degrees Celsius.
+    """
+
+    active: Literal["high", "low"] | None = None
+    level_v: float | None = None
+    timebase_rel: float | None = None
+    jitter_rel: float | None = None
+    temperature_c: float | None = None
+    read: ReadOptions = field(default_factory=ReadOptions)

@@ -1,0 +1,206 @@
+"""Combining uncertainties and expanding them: Student t, Welch–Satterthwaite, common errors.
+
+The quantiles are closed forms, so that measuring needs no statistics library at start-up.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Iterable
+from functools import lru_cache
+from statistics import NormalDist
+
+from benchtool.model.quantity import Contribution, Measured
+
+COVERAGE = 0.95
+_NORMAL = NormalDist()
+_LARGE_DOF = 400  # above this the expansions in 1/dof are good to better than 1e-8
+
+
+def whole_dof(dof: float) -> float:
+    """Truncate degrees of freedom to a whole number of at least 1, or ``inf``.
+
+    References:
+        JCGM 100:2008, G.4.1: if nu_eff is not an integer, truncate to the next lower integer.
+    """
+    return max(1.0, math.floor(dof)) if math.isfinite(dof) else math.inf
+
+
+def t_cdf(t: float, dof: float) -> float:
+    """Return the probability that Student's t is at most ``t``.
+
+    Args:
+        t: Quantile.
+        dof: Degrees of freedom; truncated to a whole number, ``inf`` for the normal law.
+
+    References:
+        Abramowitz & Stegun 26.7.3 and 26.7.4 (whole dof), 26.7.8 (large dof).
+    """
+    nu = whole_dof(dof)
+    if math.isinf(nu):
+        return _NORMAL.cdf(t)
+    if nu > _LARGE_DOF:
+        return _NORMAL.cdf(_normal_equivalent(t, nu))
+    return 0.5 + math.copysign(_central_area(abs(t), int(nu)) / 2, t)
+
+
+def _central_area(t: float, nu: int) -> float:
+    """Return P(|T| <= t) for whole ``nu``: A&S 26.7.3 (odd) and 26.7.4 (even)."""
+    theta = math.atan(t / math.sqrt(nu))
+    sine, cosine = math.sin(theta), math.cos(theta)
+    if nu == 1:
+        return 2 * theta / math.pi
+    odd = nu % 2
+    term = cosine if odd else 1.0
+    total = term
+    for i in range(2 + odd, nu - 1, 2):
+        term *= cosine * cosine * (i - 1) / i
+        total += term
+    return 2 / math.pi * (theta + sine * total) if odd else sine * total
+
+
+def _normal_equivalent(t: float, nu: float) -> float:
+    """Return the normal deviate of equal probability, solving A&S 26.7.5 by Newton's method."""
+    x = t
+    for _ in range(20):
+        step = (_t_expansion(x, nu) - t) / (1 + (3 * x * x + 1) / (4 * nu))
+        x -= step
+        if abs(step) < 1e-12 * max(1.0, abs(x)):
+            break
+    return x
+
+
+def _t_expansion(x: float, nu: float) -> float:
+    """Return Student's quantile from the normal one, A&S 26.7.5."""
+    x3, x5, x7 = x**3, x**5, x**7
+    return (
+        x
+        + (x3 + x) / (4 * nu)
+        + (5 * x5 + 16 * x3 + 3 * x) / (96 * nu**2)
+        + (3 * x7 + 19 * x5 + 17 * x3 - 15 * x) / (384 * nu**3)
+    )
+
+
+@lru_cache(maxsize=1024)
+def t_quantile(p: float, dof: float) -> float:
+    """Return Student's t below which lies the probability ``p``.
+
+    Args:
+        p: Probability, 0 < p < 1.
+        dof: Degrees of freedom; truncated to a whole number, ``inf`` for the normal law.
+
+    Raises:
+        ValueError: If ``p`` is not between 0 and 1.
+
+    Example:
+        >>> round(t_quantile(0.975, 16), 3)
+        2.12
+    """
+    if not 0 < p < 1:
+        raise ValueError(f"a probability lies between 0 and 1, got {p}")
+    nu = whole_dof(dof)
+    x = _NORMAL.inv_cdf(p)
+    if math.isinf(nu):
+        return x
+    if nu > _LARGE_DOF:
+        return _t_expansion(x, nu)
+    return math.copysign(_bisect_t(max(p, 1 - p), nu), p - 0.5)
+
+
+def _bisect_t(p: float, nu: float) -> float:
+    """Find t with ``t_cdf(t, nu) == p`` for ``p >= 0.5``."""
+    low, high = 0.0, 2.0
+    while t_cdf(high, nu) < p:
+        low, high = high, high * 2
+    while high - low > 1e-13 * high:
+        middle = (low + high) / 2
+        if middle in (low, high):
+            break
+        low, high = (middle, high) if t_cdf(middle, nu) < p else (low, middle)
+    return (low + high) / 2
+
+
+def coverage_factor(dof: float, coverage: float = COVERAGE) -> float:
+    """Return k, so that ``k*u`` covers the two-sided probability ``coverage``."""
+    return t_quantile((1 + coverage) / 2, whole_dof(dof))
+
+
+def expanded(measured: Measured, coverage: float = COVERAGE) -> float:
+    """Return U = k·u in the unit of ``measured``."""
+    return coverage_factor(measured.dof, coverage) * measured.u
+
+
+def effective_dof(contributions: Iterable[Contribution]) -> float:
+    """Return the effective degrees of freedom of independent contributions.
+
+    References:
+        JCGM 100:2008, equation (G.2b), Welch–Satterthwaite.
+    """
+    terms = list(contributions)
+    variance = sum(term.u**2 for term in terms)
+    spread = sum(term.u**4 / term.dof for term in terms)
+    return variance**2 / spread if spread > 0 else math.inf
+
+
+def combine(
+    value: float, unit: str, contributions: Iterable[Contribution], *, n: int = 1
+) -> Measured:
+    """Return a measured value from its budget of independent contributions.
+
+    Args:
+        value: The estimate.
+        unit: SI unit of the estimate.
+        contributions: Standard uncertainties in ``unit``; those of zero are left out.
+        n: Number of observations.
+
+    References:
+        JCGM 100:2008, equation (10) with independent inputs, and (G.2b).
+    """
+    budget = tuple(term for term in contributions if term.u != 0)
+    u = math.sqrt(sum(term.u**2 for term in budget))
+    return Measured(value=value, u=u, unit=unit, dof=effective_dof(budget), n=n, budget=budget)
+
+
+def propagate(
+    value: float,
+    unit: str,
+    inputs: Iterable[tuple[float, Measured]],
+    extra: Iterable[Contribution] = (),
+) -> Measured:
+    """Return a value computed from measured inputs, with errors they share taken once.
+
+    Args:
+        value: The computed estimate.
+        unit: Its SI unit.
+        inputs: Pairs of sensitivity coefficient (unit / input's unit) and input.
+        extra: Further contributions in ``unit``.
+
+    References:
+        JCGM 100:2008, equation (13); contributions of one source that are common are fully
+        correlated, all others independent.
+    """
+    pairs = list(inputs)
+    terms = [part for factor, item in pairs for part in _scaled_budget(item, factor)]
+    n = min((item.n for _, item in pairs), default=1)
+    return combine(value, unit, _merge_common([*terms, *extra]), n=n)
+
+
+def _scaled_budget(item: Measured, factor: float) -> list[Contribution]:
+    budget = item.budget or (Contribution(source="input", u=item.u, dof=item.dof),)
+    return [part.scaled(factor) for part in budget]
+
+
+def _merge_common(terms: list[Contribution]) -> list[Contribution]:
+    """Add the signed contributions of each common source; keep the others apart."""
+    merged: dict[str, Contribution] = {}
+    separate: list[Contribution] = []
+    for term in terms:
+        if not term.common:
+            separate.append(term)
+            continue
+        known = merged.get(term.source)
+        total = term.u + (known.u if known else 0.0)
+        merged[term.source] = Contribution(
+            source=term.source, u=total, dof=term.dof, common=True, note=term.note
+        )
+    return [*separate, *merged.values()]
