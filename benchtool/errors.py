@@ -9,9 +9,9 @@ The tree::
     ├── CaptureError              a file that was opened
     │   ├── UnknownStructureError     no reader recognises it
     │   ├── AmbiguousStructureError   two readings are sound; the hint names the option
-    │   └── MalformedCaptureError     recognised, but damaged or empty; carries path and line
+    │   └── MalformedCaptureError     recognised, but damaged; carries path and line
     ├── MeasurementError          the data do not hold what was asked of them
-    ├── DesignError               the design file; carries every fault with key, line and nearest key
+    ├── DesignError               the design file; carries every fault with its key and line
     └── SolveError                no circuit of the given topology gives these times
 
 A board that fails is a result and never an exception.

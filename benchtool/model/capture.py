@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterator
-from dataclasses import dataclass, field
+from dataclasses import dataclass
 from typing import Literal, Protocol
 
 import numpy as np
@@ -279,23 +279,3 @@ class ReadOptions:
     time_unit: str | None = None
     interval_s: float | None = None
     channel: str | None = None
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
-class MeasureOptions:
-    """What the user overrules about a measurement; None leaves it to the design or the default.
-
-    Attributes:
-        active: ``high`` or ``low``: which state starts a cycle.
-        level_v: Mid reference level in volts.
-        timebase_rel: Half-width of the timebase error, relative (50 ppm is 50e-6).
-        jitter_rel: Assumed jitter of one interval, relative half-width.
-        temperature_c: Temperature of the board in degrees Celsius.
-    """
-
-    active: Literal["high", "low"] | None = None
-    level_v: float | None = None
-    timebase_rel: float | None = None
-    jitter_rel: float | None = None
-    temperature_c: float | None = None
-    read: ReadOptions = field(default_factory=ReadOptions)

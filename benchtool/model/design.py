@@ -179,6 +179,23 @@ class Instrument:
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
+class DesignValue:
+    """One value of a design, for showing.
+
+    Attributes:
+        section: Table of the file to which it belongs, ``stage.spacing``.
+        key: Its key there.
+        value: The value as people read it.
+        origin: "stated", "default", or "default: " and where the default comes from.
+    """
+
+    section: str
+    key: str
+    value: str
+    origin: str
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
 class Design:
     """A design file, validated.
 
@@ -192,6 +209,8 @@ class Design:
         probe: Probe load.
         source: File name.
         sha256: Of the file's bytes.
+        stated: Keys that the file states, dotted as TOML writes them; whatever is not among them
+            is a default.
     """
 
     name: str
@@ -206,3 +225,4 @@ class Design:
     probe: Probe = Probe()
     source: str = ""
     sha256: str = ""
+    stated: frozenset[str] = field(default=frozenset(), compare=False, repr=False)

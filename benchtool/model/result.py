@@ -8,7 +8,7 @@ from typing import Literal
 from benchtool.model.capture import FloatArray, Role, StructurePoint
 from benchtool.model.design import Design, Rule, Stage
 from benchtool.model.quantity import Measured, Notice, Quantity
-from benchtool.model.timing import Dropped, Jitter, Levels, StabilityPoint, Timing
+from benchtool.model.timing import Dropped, Intervals, Jitter, Levels, StabilityPoint, Timing
 
 VerdictName = Literal[
     "pass", "conditional-pass", "conditional-fail", "undecided", "fail", "unusable"
@@ -60,7 +60,8 @@ class Check:
     """One quantity held against its limits.
 
     ``accept_lower`` and ``accept_upper`` are the limits drawn in by the guard band; both None
-    where nothing is left between them. ``reason`` is one sentence.
+    where nothing is left between them. ``reason`` is one sentence; ``warnings`` concern this
+    check alone.
     """
 
     quantity: str
@@ -75,6 +76,17 @@ class Check:
     verdict: VerdictName
     reason: str
     nominal: float | None = None
+    warnings: tuple[Notice, ...] = ()
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Change:
+    """How a quantity changed since the baseline: relative, unit 1, with its uncertainty."""
+
+    quantity: str
+    before: Measured
+    change: Measured
+    significant: bool
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -155,13 +167,26 @@ class Source:
     instrument: str | None = None
 
 
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Flat:
+    """A record without an edge: its length, and its state where that is known."""
+
+    length_s: float
+    state: Literal["high", "low"] | None
+
+
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class StageResult:
-    """All that was found for one stage, or for the one trace measured without a design."""
+    """All that was found for one stage, or for the one trace measured without a design.
+
+    ``trace`` is None where plain figures were given in place of a capture; ``source`` is the
+    index of the file in the analysis. ``likely`` is one sentence that names the likeliest
+    part; ``series`` the intervals themselves; ``flat`` is set where there is no edge.
+    """
 
     source: int
     stage: str | None
-    trace: TraceFacts
+    trace: TraceFacts | None
     levels: Levels | None = None
     intervals: IntervalCounts | None = None
     timing: Timing | None = None
@@ -170,9 +195,13 @@ class StageResult:
     solution: Solution | None = None
     checks: tuple[Check, ...] = ()
     verdict: VerdictName | None = None
+    likely: str | None = None
+    changes: tuple[Change, ...] = ()
     findings: tuple[Finding, ...] = ()
     warnings: tuple[Notice, ...] = ()
     overview: Overview | None = None
+    series: Intervals | None = None
+    flat: Flat | None = None
     design: Stage | None = None
 
 

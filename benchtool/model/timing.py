@@ -79,6 +79,8 @@ class Edges:
             and the code step over the slew; common to all widths, cancels in the period.
         stretch_u_rel: Relative standard uncertainty of all times from few printed digits.
         end_known: Whether the record's end is stated.
+        grid_s: What is left of the grid in resolved times, as the grid step that would give the
+            same error; 0 where edges hold enough samples.
         warnings: What was seen on the way.
     """
 
@@ -91,6 +93,7 @@ class Edges:
     level_u_s: float = 0.0
     stretch_u_rel: float = 0.0
     end_known: bool = True
+    grid_s: float = 0.0
     warnings: tuple[Notice, ...] = ()
 
     def __post_init__(self) -> None:

@@ -1,0 +1,32 @@
+"""What the user overrules about a measurement."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import Literal
+
+from benchtool.model.capture import ReadOptions
+from benchtool.model.design import Probe
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class MeasureOptions:
+    """What the user overrules about a measurement; None leaves it to the design or the default.
+
+    Attributes:
+        active: ``high`` or ``low``: which state starts a cycle.
+        level_v: Mid reference level in volts.
+        timebase_rel: Half-width of the timebase error, relative (50 ppm is 50e-6).
+        jitter_rel: Assumed jitter of one interval, relative half-width.
+        temperature_c: Temperature of the board in degrees Celsius.
+        probe: The probe's load.
+        read: What is overruled about the file's structure.
+    """
+
+    active: Literal["high", "low"] | None = None
+    level_v: float | None = None
+    timebase_rel: float | None = None
+    jitter_rel: float | None = None
+    temperature_c: float | None = None
+    probe: Probe | None = None
+    read: ReadOptions = ReadOptions()

@@ -1,0 +1,50 @@
+"""Every code that the program can print has an entry."""
+
+import ast
+from collections.abc import Iterator
+from pathlib import Path
+
+import pytest
+
+import benchtool
+from benchtool.circuits.faults import FAULTS
+from benchtool.circuits.topologies import TOPOLOGIES
+from benchtool.designs.vocabulary import IC_TERMS, QUANTITIES
+from benchtool.manual import lookup
+
+ROOT = Path(benchtool.__file__).parent
+
+
+def literal_codes() -> Iterator[str]:
+    """Yield every text given as ``code=`` or as an error class's ``default_code``."""
+    for path in ROOT.rglob("*.py"):
+        for node in ast.walk(ast.parse(path.read_text("utf-8"))):
+            for name, value in _named(node):
+                if name in {"code", "default_code"} and isinstance(value, ast.Constant):
+                    yield value.value
+
+
+def _named(node: ast.AST) -> Iterator[tuple[str | None, ast.expr | None]]:
+    if isinstance(node, ast.Call):
+        yield from ((keyword.arg, keyword.value) for keyword in node.keywords)
+    elif isinstance(node, ast.Assign) and isinstance(node.targets[0], ast.Name):
+        yield node.targets[0].id, node.value
+    elif isinstance(node, ast.AnnAssign) and isinstance(node.target, ast.Name):
+        yield node.target.id, node.value
+
+
+CODES = sorted({code for code in literal_codes() if isinstance(code, str)})
+
+
+def test_the_scan_finds_codes_of_errors_and_of_warnings() -> None:
+    assert {"usage", "unit", "no-solution", "limits-narrower-than-u"} <= set(CODES)
+
+
+@pytest.mark.parametrize("code", CODES)
+def test_every_code_is_explained(code: str) -> None:
+    assert lookup(code) is not None
+
+
+@pytest.mark.parametrize("name", [*FAULTS, *TOPOLOGIES, *IC_TERMS, *QUANTITIES])
+def test_every_fault_topology_ic_term_and_quantity_is_explained(name: str) -> None:
+    assert lookup(name) is not None
