@@ -1,0 +1,24 @@
+"""The line of a self-test."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class SelfCheck:
+    """One thing that benchtool found out about itself on this machine.
+
+    Attributes:
+        name: What was tried.
+        found: The figure found, unit 1.
+        limit: The figure it is held against, unit 1.
+        ok: Whether it holds.
+        text: What was done and what came out, one sentence.
+    """
+
+    name: str
+    found: float
+    limit: float
+    ok: bool
+    text: str
