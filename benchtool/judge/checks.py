@@ -132,12 +132,10 @@ def _of_period(limit: StageLimit, period: Quantity | None) -> StageLimit | None:
 def _nothing(limit: StageLimit, seen: Observations) -> Check:
     """Return the check of a quantity with neither value nor bound.
 
-    A sound record that is merely too short, or shows another part of the cycle, leaves it
-    undecided: a further record settles it.
+    The reason says whether a further record would settle it.
     """
-    verdict: VerdictName = "undecided" if seen.sound else "unusable"
     reason = explain_nothing(limit.quantity, sound=seen.sound, between=seen.between_states)
-    return _without_decision(limit, None, verdict, reason)
+    return _without_decision(limit, None, "unusable", reason)
 
 
 def _no_limit(limit: StageLimit) -> str:

@@ -188,7 +188,7 @@ def test_the_frequency_of_a_dead_board_fails_on_its_upper_bound() -> None:
 def test_cut_intervals_stand_in_where_timing_has_nothing() -> None:
     limits = [_limit(), _limit("t_low"), _limit("frequency", 0.038, 0.042, unit="Hz")]
     checks = judge_stage(_stage(), limits, timing=None, intervals=_cut("high", 40.0, "both"))
-    assert [check.verdict for check in checks] == ["fail", "undecided", "fail"]
+    assert [check.verdict for check in checks] == ["fail", "unusable", "fail"]
     assert checks[0].measured == Bound(unit="s", at_least=40.0)
     assert checks[2].measured == Bound(unit="Hz", at_most=1 / 40.0)
     assert worst(check.verdict for check in checks) == "fail"
@@ -242,7 +242,7 @@ def test_a_flat_record_longer_than_the_limits_is_a_fail() -> None:
 
 def test_a_flat_high_record_of_a_good_length_fails_nothing() -> None:
     """13 s high is longer than a low time may be, and says nothing of the low time."""
-    assert _flat(13.0, "high") == ["undecided", "undecided", "undecided"]
+    assert _flat(13.0, "high") == ["undecided", "unusable", "undecided"]
 
 
 def test_a_record_flat_between_the_states_is_unusable_however_long() -> None:
@@ -264,11 +264,11 @@ def test_a_flat_low_record_fails_the_high_time_once_it_outlasts_the_low_time() -
 
 def test_without_a_limit_on_the_state_seen_the_period_decides() -> None:
     assert _flat(30.0, "low", (_limit(), _limit("period", 22.0, 28.0))) == ["fail", "fail"]
-    assert _flat(30.0, "low", (_limit(),)) == ["undecided"]
+    assert _flat(30.0, "low", (_limit(),)) == ["unusable"]
 
 
 def test_a_flat_one_shot_fails_only_where_it_is_stuck_active() -> None:
-    assert _flat(600.0, "low", (_limit(),), "one-shot") == ["undecided"]
+    assert _flat(600.0, "low", (_limit(),), "one-shot") == ["unusable"]
     assert _flat(600.0, "high", (_limit(),), "one-shot") == ["fail"]
 
 
@@ -279,10 +279,10 @@ def test_nothing_at_all_is_unusable() -> None:
     assert check.reason == "The record holds nothing about the duty."
 
 
-def test_a_sound_record_that_does_not_show_a_quantity_leaves_it_undecided() -> None:
+def test_a_quantity_that_a_sound_record_does_not_show_says_what_would() -> None:
     steady = Timing(t_high=_seconds(14.0), t_low=_seconds(10.6))
     check = _judge_one(_limit("first_high"), timing=steady)
-    assert check.verdict == "undecided"
+    assert check.verdict == "unusable"
     assert "a longer one, or one that shows it, would settle it" in check.reason
 
 
@@ -300,11 +300,11 @@ def test_a_jitter_limit_in_percent_is_of_the_measured_mean_period() -> None:
     assert _judge_one(limit, timing=timing, jitter=_jitter(0.1)).verdict == "fail"
 
 
-def test_a_jitter_share_without_a_period_is_undecided() -> None:
+def test_a_jitter_share_without_a_period_is_unusable() -> None:
     limit = _limit("jitter_period", None, 0.002, unit="1", relative=True)
     one_high = Timing(t_high=_seconds(14.0), period=Bound(unit="s", at_least=20.0))
     check = _judge_one(limit, timing=one_high, jitter=_jitter(0.01))
-    assert check.verdict == "undecided"
+    assert check.verdict == "unusable"
     assert check.measured is None
 
 
