@@ -4,16 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterable
 
-from benchtool.model.result import VerdictName
-
-WORST_FIRST: tuple[VerdictName, ...] = (
-    "fail",
-    "unusable",
-    "undecided",
-    "conditional-fail",
-    "conditional-pass",
-    "pass",
-)
+from benchtool.model.result import WORST_FIRST, VerdictName
 
 
 def worst(names: Iterable[VerdictName]) -> VerdictName | None:

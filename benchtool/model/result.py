@@ -14,6 +14,16 @@ VerdictName = Literal[
     "pass", "conditional-pass", "conditional-fail", "undecided", "fail", "unusable"
 ]
 
+WORST_FIRST: tuple[VerdictName, ...] = (
+    "fail",
+    "unusable",
+    "undecided",
+    "conditional-fail",
+    "conditional-pass",
+    "pass",
+)
+"""Verdicts in the order in which one outweighs another."""
+
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class PartEstimate:

@@ -1,0 +1,1 @@
+"""Shows an analysis: on screen, as a page, as JSON. Computes nothing."""
