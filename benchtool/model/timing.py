@@ -81,6 +81,7 @@ class Edges:
         end_known: Whether the record's end is stated.
         grid_s: What is left of the grid in resolved times, as the grid step that would give the
             same error; 0 where edges hold enough samples.
+        n_runts: Pulses that cross the mid level and return without reaching the other state.
         warnings: What was seen on the way.
     """
 
@@ -94,6 +95,7 @@ class Edges:
     stretch_u_rel: float = 0.0
     end_known: bool = True
     grid_s: float = 0.0
+    n_runts: int = 0
     warnings: tuple[Notice, ...] = ()
 
     def __post_init__(self) -> None:

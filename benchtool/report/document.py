@@ -139,7 +139,7 @@ def _result(item: StageResult, parts: tuple[str, ...], several: bool) -> Json:
     made: Json = {"source": item.source} if several else {}
     made["stage"] = item.stage
     for name in parts:
-        if name in _MAKERS and (name != "trace" or item.trace is not None):
+        if name in _MAKERS and (item.trace is not None or name not in _OF_TRACE):
             made[name] = _MAKERS[name](item)
     if item.changes:
         made["changes"] = [_change(change) for change in item.changes]
@@ -299,6 +299,7 @@ _MAKERS: dict[str, Callable[[StageResult], Any]] = {
 
 _LOOKED = ("trace", "levels", "intervals")
 _MEASURED = (*_LOOKED, "timing", "jitter", "stability")
+_OF_TRACE = {*_LOOKED, "jitter", "stability"}  # plain figures have none of these
 _PARTS: dict[str, tuple[str, ...]] = {
     "look": _LOOKED,
     "measure": _MEASURED,

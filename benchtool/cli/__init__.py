@@ -1,0 +1,1 @@
+"""The command line: a table of verbs, one module each. Only this room prints and exits."""

@@ -1,0 +1,281 @@
+"""Time from a column of stamps: even or not, its step, its holes, its restarts.
+
+Stamps arrive in blocks, as the file gives them, and are never held as a whole: of each block
+only the chord between its first and last stamp is kept, and how far the stamps between lie
+from it. If all chord ends lie on one straight line the column is even.
+"""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass, field
+from itertools import pairwise
+
+import numpy as np
+from numpy.typing import NDArray
+
+from benchtool.errors import MalformedCaptureError
+from benchtool.formats.grid import middle
+from benchtool.model.capture import FloatArray
+
+_EVEN_SHARE = 0.8  # of the first steps must agree for the column to count as even
+_SLACK = 0.01  # of a step: stamps that near to the grid lose nothing by being put on it
+_RESTART = 0.05  # a step back into this part of the segment is a restart
+_MOST_BACKWARDS = 0.05  # of all rows
+_HELD = 2  # rows kept back, so that a backward step is judged with its neighbours in sight
+
+IntArray = NDArray[np.int64]
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Steps:
+    """What the first stamps of a column say of its steps, in the column's own unit.
+
+    Attributes:
+        typical: Median step.
+        resolution: Last printed digit.
+        even: Whether the steps agree to within the printed digits.
+    """
+
+    typical: float
+    resolution: float
+    even: bool
+
+    @property
+    def coarse(self) -> bool:
+        """Whether the digits are too few to tell neighbouring stamps apart."""
+        return self.typical < 1.5 * self.resolution
+
+    @property
+    def gap(self) -> float:
+        """The step above which rows are missing."""
+        return max(1.5 * self.typical, self.typical + 1.5 * self.resolution)
+
+
+def examine_steps(stamps: FloatArray, resolution: float) -> Steps:
+    """Look at the first stamps of a column.
+
+    Args:
+        stamps: The first rows, shape (n,), NaN allowed.
+        resolution: Last printed digit in the same unit, 0 where unknown.
+    """
+    steps = np.diff(stamps[np.isfinite(stamps)])
+    steps = steps[steps >= 0]
+    if steps.size == 0:
+        return Steps(typical=0.0, resolution=resolution, even=False)
+    moving = steps if 2 * np.count_nonzero(steps) < steps.size else steps[steps > 0]
+    typical = middle(moving)
+    if typical < 1.5 * resolution:
+        typical = middle(steps)
+    near = np.abs(steps - typical) <= 1.01 * resolution + 0.02 * typical
+    even = typical + resolution > 0 and np.count_nonzero(near) >= _EVEN_SHARE * steps.size
+    return Steps(typical=typical, resolution=resolution, even=bool(even))
+
+
+@dataclass(slots=True)
+class Piece:
+    """A run of rows without a hole or restart; rows are counted over the rows kept."""
+
+    first: int
+    first_t: float
+    restarts: bool
+    chords: list[tuple[int, float, int, float]] = field(default_factory=list)
+    sag: float = 0.0
+
+    @property
+    def stop(self) -> int:
+        """One past its last row."""
+        return self.chords[-1][2] + 1
+
+    @property
+    def last_t(self) -> float:
+        """Its last stamp."""
+        return self.chords[-1][3]
+
+
+class ClockScan:
+    """Takes a column of stamps block by block and finds its pieces and unusable rows.
+
+    Args:
+        steps: What the first stamps say.
+        source: File name, for errors.
+    """
+
+    def __init__(self, steps: Steps, source: str) -> None:
+        self.steps = steps
+        self.pieces: list[Piece] = []
+        self.n_unreadable = 0
+        self.n_backwards = 0
+        self.n_repeated = 0
+        self._source = source
+        self._dropped: list[IntArray] = []
+        self._n_fed = 0
+        self._n_kept = 0
+        self._last: float | None = None
+        self._origin: float | None = None
+        self._peak = -math.inf
+        self._held_rows: IntArray = np.empty(0, np.int64)
+        self._held: FloatArray = np.empty(0)
+
+    @property
+    def dropped(self) -> IntArray:
+        """Rows that take no part, in order."""
+        return np.sort(np.concatenate([np.empty(0, np.int64), *self._dropped]))
+
+    def feed(self, stamps: FloatArray) -> None:
+        """Take the next stamps, NaN where a row has none."""
+        readable = np.isfinite(stamps)
+        rows = np.arange(self._n_fed, self._n_fed + stamps.size)
+        self._n_fed += stamps.size
+        self.n_unreadable += self._drop(rows[~readable])
+        rows = np.concatenate([self._held_rows, rows[readable]])
+        stamps = np.concatenate([self._held, stamps[readable]])
+        cut = max(0, rows.size - _HELD)
+        self._held_rows, self._held = rows[cut:], stamps[cut:]
+        self._take(rows[:cut], stamps[:cut], self._held)
+
+    def finish(self) -> None:
+        """Take what was held back.
+
+        Raises:
+            MalformedCaptureError: If more than a few rows step backwards.
+        """
+        self._take(self._held_rows, self._held, np.empty(0))
+        if self.n_backwards > max(_MOST_BACKWARDS * self._n_fed, 1):
+            raise self._disorder()
+
+    def _drop(self, rows: IntArray) -> int:
+        if rows.size:
+            self._dropped.append(rows)
+        return int(rows.size)
+
+    def _take(self, rows: IntArray, stamps: FloatArray, ahead: FloatArray) -> None:
+        if not rows.size:
+            return
+        if self._origin is None:
+            self._origin = float(stamps[0])
+        rows, stamps = self._without_backwards(rows, stamps, ahead)
+        rows, stamps = self._without_repeats(rows, stamps)
+        if rows.size:
+            self._lay(stamps)
+
+    def _steps_of(self, stamps: FloatArray) -> FloatArray:
+        """Return the step before each stamp, 0 before the very first."""
+        before = stamps[0] if self._last is None else self._last
+        return np.diff(stamps, prepend=before)
+
+    def _without_backwards(
+        self, rows: IntArray, stamps: FloatArray, ahead: FloatArray
+    ) -> tuple[IntArray, FloatArray]:
+        """Drop single rows whose stamp is out of order; restarts stay."""
+        for _ in range(8):
+            later = np.concatenate([stamps, ahead])
+            back = np.flatnonzero(self._steps_of(later)[: rows.size + 1] < 0)
+            back = back[~self._is_restart(later, back)]
+            wrong = np.array(sorted({self._culprit(later, int(i)) for i in back}), np.int64)
+            wrong = wrong[(wrong >= 0) & (wrong < rows.size)]
+            if not wrong.size:
+                return rows, stamps
+            if self.n_backwards > _MOST_BACKWARDS * self._n_fed + 50:
+                raise self._disorder()
+            self.n_backwards += self._drop(rows[wrong])
+            rows, stamps = np.delete(rows, wrong), np.delete(stamps, wrong)
+            if not rows.size:
+                return rows, stamps
+        raise self._disorder()
+
+    def _is_restart(self, stamps: FloatArray, back: IntArray) -> NDArray[np.bool_]:
+        assert self._origin is not None
+        peak = np.maximum(np.maximum.accumulate(stamps), self._peak)[np.maximum(back - 1, 0)]
+        fall = self._steps_of(stamps)[back]
+        before, after = stamps[back] - fall, stamps[np.minimum(back + 1, stamps.size - 1)]
+        earlier = np.where(back >= 2, stamps[np.maximum(back - 2, 0)], before)
+        if self._last is not None:
+            earlier[back == 1] = self._last
+        length = peak - self._origin
+        near = self._origin + np.maximum(_RESTART * length, 2 * self.steps.resolution)
+        fell_far = (fall < -0.5 * length) | (stamps[back] <= self._origin)
+        leapt = stamps[back] >= earlier  # the row before leapt ahead, and time goes on here
+        return (stamps[back] <= near) & fell_far & (after < before) & ~leapt
+
+    def _culprit(self, stamps: FloatArray, i: int) -> int:
+        """Say which of the two rows around the backward step at ``i`` is out of order."""
+        before = stamps[i - 2] if i >= 2 else self._last
+        if i >= 1 and before is not None and stamps[i] >= before:
+            return i - 1  # the row before leapt ahead
+        return i
+
+    def _without_repeats(self, rows: IntArray, stamps: FloatArray) -> tuple[IntArray, FloatArray]:
+        """Drop rows that repeat a stamp, unless the digits are too few to tell stamps apart."""
+        if not rows.size:
+            return rows, stamps
+        repeated = self._steps_of(stamps) == 0
+        if self._last is None:
+            repeated[0] = False
+        self.n_repeated += int(np.count_nonzero(repeated))
+        if self.steps.even and self.steps.coarse:
+            return rows, stamps
+        self._drop(rows[repeated])
+        return rows[~repeated], stamps[~repeated]
+
+    def _lay(self, stamps: FloatArray) -> None:
+        """Append the stamps to the pieces."""
+        steps = self._steps_of(stamps)
+        back = steps < 0
+        breaks = back | (steps > self.steps.gap) if self.steps.even else back
+        edges = [0, *np.flatnonzero(breaks).tolist(), stamps.size]
+        for k, (start, stop) in enumerate(pairwise(edges)):
+            if start < stop:
+                opens = k > 0 or not self.pieces
+                self._extend(stamps[start:stop], opens=opens, restarts=bool(back[start]))
+        self._last = float(stamps[-1])
+        self._peak = max(self._peak, float(np.max(stamps)))
+
+    def _extend(self, stamps: FloatArray, *, opens: bool, restarts: bool) -> None:
+        first, last = float(stamps[0]), float(stamps[-1])
+        if opens:
+            self.pieces.append(Piece(first=self._n_kept, first_t=first, restarts=restarts))
+        piece = self.pieces[-1]
+        start, stop = self._n_kept, self._n_kept + stamps.size - 1
+        piece.chords.append((start, first, stop, last))
+        if stamps.size > 2:
+            chord = first + np.arange(stamps.size) * ((last - first) / (stamps.size - 1))
+            piece.sag = max(piece.sag, float(np.max(np.abs(stamps - chord))))
+        self._n_kept = stop + 1
+
+    def _disorder(self) -> MalformedCaptureError:
+        return MalformedCaptureError(
+            f"the time column of {self._source} runs backwards in too many rows",
+            hint="Sort the rows by time, or delete the time column and give --interval.",
+            path=self._source,
+            code="time-disorder",
+        )
+
+    @property
+    def mean_step(self) -> float:
+        """Mean step over all pieces, in the column's unit; 0 where no piece has two rows."""
+        n_steps = sum(piece.stop - piece.first - 1 for piece in self.pieces)
+        span = sum(piece.last_t - piece.first_t for piece in self.pieces)
+        return span / n_steps if n_steps else 0.0
+
+    @property
+    def longest(self) -> float:
+        """Length of the longest piece, in the column's unit."""
+        return max(piece.last_t - piece.first_t for piece in self.pieces)
+
+    def is_even(self) -> bool:
+        """Whether all stamps lie on an even grid to within the printed digits."""
+        step = self.mean_step
+        if not (self.steps.even and step > 0):
+            return False
+        largest = max(max(abs(p.first_t), abs(p.last_t)) for p in self.pieces)
+        near = max(1.05 * self.steps.resolution, _SLACK * step) + 8 * math.ulp(largest)
+        return all(
+            piece.sag <= near
+            and all(
+                abs(t - piece.first_t - (row - piece.first) * step) <= near
+                for chord in piece.chords
+                for row, t in (chord[:2], chord[2:])
+            )
+            for piece in self.pieces
+        )

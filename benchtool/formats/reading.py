@@ -1,0 +1,99 @@
+"""From a file name to a capture: whose structure is it, and let that format read it."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from dataclasses import replace
+from pathlib import Path
+from typing import cast
+
+from benchtool.errors import AmbiguousStructureError, UnknownStructureError
+from benchtool.formats.claim import Claim, Format
+from benchtool.formats.content import IN_MEMORY_BYTES, Content, open_content
+from benchtool.model.capture import Capture, ReadOptions
+from benchtool.plugins import Registry
+
+FORMATS = Registry(
+    group="benchtool.formats",
+    ours={
+        "text": "benchtool.formats.text:FORMAT",
+        "vcd": "benchtool.formats.vcd:FORMAT",
+        "npz": "benchtool.formats.npz:FORMAT",
+        "wav": "benchtool.formats.wav:FORMAT",
+    },
+)
+
+_DEFAULTS = ReadOptions()
+
+
+def read_capture(
+    source: str | Path,
+    options: ReadOptions = _DEFAULTS,
+    *,
+    in_memory_bytes: int = IN_MEMORY_BYTES,
+) -> Capture:
+    """Read a capture file.
+
+    Args:
+        source: Path of the file, or ``-`` for standard input.
+        options: What the user overrules about the file's structure.
+        in_memory_bytes: A text file up to this size is decoded once and held; a larger one is
+            walked in blocks each time its samples are asked for.
+
+    Returns:
+        The capture, with the evidence for its structure and a notice for all that was assumed.
+
+    Raises:
+        InputError: The file cannot be opened.
+        UnknownStructureError: No format claims it.
+        AmbiguousStructureError: Two readings are sound; the hint names the option.
+        MalformedCaptureError: The file is damaged or holds nothing to measure.
+    """
+    content = open_content(source, in_memory_bytes)
+    capture = choose_format(content, options).read(content, options)
+    return replace(
+        capture,
+        warnings=(*content.warnings, *capture.warnings),
+        structure=(*content.structure, *capture.structure),
+    )
+
+
+def choose_format(content: Content, options: ReadOptions) -> Format:
+    """Return the format that claims ``content``, or the one that the user named."""
+    if options.format is not None:
+        return cast(Format, FORMATS.load(options.format))
+    head, tried = content.head(), list[str]()
+    for each in (FORMATS.each_of_ours, FORMATS.each_outsider):
+        claims = _claims(each(), head, content.suffix, tried)
+        if claims:
+            return _highest(claims, content.source)
+    raise UnknownStructureError(
+        f"{content.source} is no capture that any format recognises (tried: {', '.join(tried)})",
+        hint="If you know the structure, name it with --format; "
+        "otherwise export the capture as delimited text.",
+    )
+
+
+def _claims(
+    candidates: Iterator[tuple[str, object]], head: bytes, suffix: str, tried: list[str]
+) -> list[tuple[Claim, Format]]:
+    claims = []
+    for name, loaded in candidates:
+        format_ = cast(Format, loaded)
+        tried.append(name)
+        claim = format_.sniff(head, suffix)
+        if claim > Claim.NO:
+            claims.append((claim, format_))
+    return claims
+
+
+def _highest(claims: list[tuple[Claim, Format]], source: str) -> Format:
+    top = max(claim for claim, _ in claims)
+    winners = [format_ for claim, format_ in claims if claim == top]
+    if len(winners) == 1:
+        return winners[0]
+    names = " and ".join(format_.name for format_ in winners)
+    raise AmbiguousStructureError(
+        f"{source} is claimed by {names} alike",
+        hint=f"Say which it is with --format {winners[0].name} or --format {winners[1].name}.",
+    )

@@ -1,0 +1,104 @@
+"""What a cell of delimited text is, and the number in it."""
+
+from __future__ import annotations
+
+import math
+import re
+from typing import Literal
+
+Kind = Literal["N", "S", "W", "M", "E", "T"]
+"""Number, stamp, state word, mark of a missing value, empty, other text."""
+
+_EXPONENT = r"(?:[eEdD][+-]?\d+)?"
+_POINT = re.compile(rf"[+-]?(?:\d+\.?\d*|\.\d+){_EXPONENT}")
+_COMMA = re.compile(rf"[+-]?(?:\d+,?\d*|,\d+){_EXPONENT}")
+_GROUPED_BY_COMMA = re.compile(r"[+-]?[1-9]\d{0,2}(?:,\d{3})+(?:\.\d*)?")
+_GROUPED_BY_POINT = re.compile(r"[+-]?[1-9]\d{0,2}(?:\.\d{3})+(?:,\d*)?")
+_GROUPED = re.compile(r"[+-]?[1-9]\d{0,2}(?:,\d{3})+")
+_BLANKS = " \u00a0\u202f'’"  # that part thousands where neither comma nor point does
+_SPACED = re.compile(rf"[+-]?\d{{1,3}}(?:[{_BLANKS}]\d{{3}})+(?:[.,]\d*)?")
+_DROP_BLANKS = str.maketrans("", "", _BLANKS)
+_DATE = r"(?:\d{4}[-/.]\d{1,2}[-/.]\d{1,2}|\d{1,2}[-/.]\d{1,2}[-/.](?:\d{4}|\d{2}))"
+_CLOCK = r"\d{1,4}:\d{2}(?::\d{2})?(?:[.,]\d+)?(?: ?[aApP][mM])?"
+_ZONE = r"(?: ?Z| ?[+-]\d{2}:?\d{2}| ?UTC)?"
+_STAMP = re.compile(
+    rf"{_DATE}(?:[T ]{_CLOCK}{_ZONE})?|{_CLOCK}{_ZONE}|\d{{8}}T\d{{6}}(?:[.,]\d+)?Z?"
+)
+
+_RISES = frozenset({"rising", "rise", "posedge", "up", "r", "↑", "0->1", "0→1"})
+_FALLS = frozenset({"falling", "fall", "negedge", "down", "f", "↓", "1->0", "1→0"})
+EDGE_WORDS = _RISES | _FALLS
+HIGH_WORDS = _RISES | {"1", "high", "h", "hi", "true", "on", "set"}
+LOW_WORDS = _FALLS | {"0", "low", "l", "lo", "false", "off", "clear"}
+UNKNOWN_WORDS = frozenset({"x", "z", "u", "unknown"})
+_STATE_WORDS = (HIGH_WORDS | LOW_WORDS | UNKNOWN_WORDS) - {"0", "1"}
+_MISSING = frozenset(
+    {"nan", "inf", "-inf", "+inf", "infinity", "-infinity", "-", "--", "---", "----", "n/a", "na",
+     "#n/a", "null", "none", "nil", "*", "**", "***", "?", "overflow", "ovr", "-nan", "+nan",
+     "1.#inf", "-1.#inf", "1.#qnan", "-1.#ind", "#num!", "#div/0!", "missing", "invalid"}
+)  # fmt: skip
+
+
+def kind_of(cell: str, decimal: str) -> Kind:
+    """Return what a cell, stripped of blanks and quotes, is."""
+    if not cell:
+        return "E"
+    if is_number(cell, decimal):
+        return "N"
+    word = cell.lower()
+    if word in _STATE_WORDS:
+        return "W"
+    if word in _MISSING:
+        return "M"
+    return "S" if _STAMP.fullmatch(cell) else "T"
+
+
+def is_number(cell: str, decimal: str) -> bool:
+    """Say whether a cell is a number under the given decimal mark."""
+    if cell[0] == "\u2212":
+        cell = "-" + cell[1:]
+    if _SPACED.fullmatch(cell):
+        cell = cell.translate(_DROP_BLANKS)
+    if decimal == ".":
+        return bool(_POINT.fullmatch(cell) or _GROUPED_BY_COMMA.fullmatch(cell))
+    if "," in cell or "." not in cell:
+        return bool(_COMMA.fullmatch(cell) or _GROUPED_BY_POINT.fullmatch(cell))
+    return bool(_GROUPED_BY_POINT.fullmatch(cell))
+
+
+def is_grouped(cell: str) -> bool:
+    """Say whether a cell reads both as ``1,234`` thousand and as a decimal fraction."""
+    return bool(_GROUPED.fullmatch(cell)) and cell.count(",") == 1
+
+
+def number(cell: str, decimal: str) -> float:
+    """Return the number in a cell, NaN where there is none."""
+    text = cell.strip().strip('"').strip()
+    if not text or not is_number(text, decimal):
+        return math.nan
+    return float(plain(text, decimal))
+
+
+def plain(text: str, decimal: str) -> str:
+    """Return a number as ``float`` takes it: a point, no groups, an E."""
+    groups, mark = (".", ",") if decimal == "," else (",", ".")
+    text = text.replace(groups, "").replace(mark, ".")
+    text = text.translate(_DROP_BLANKS)
+    return text.replace("\u2212", "-").replace("D", "E").replace("d", "e")
+
+
+def last_digit(cell: str, decimal: str) -> int | None:
+    """Return the power of ten of the last printed digit, None where there is no number."""
+    text = cell.strip().strip('"').strip()
+    if not text or not is_number(text, decimal):
+        return None
+    mantissa, _, exponent = plain(text, decimal).lower().partition("e")
+    return int(exponent or 0) - len(mantissa.partition(".")[2])
+
+
+def significant_digits(cell: str, decimal: str) -> int:
+    """Return how many digits a number carries, leading zeros left out."""
+    if not is_number(cell, decimal):
+        return 0
+    mantissa = plain(cell, decimal).lower().partition("e")[0]
+    return len(mantissa.lstrip("+-0.").replace(".", ""))

@@ -1,0 +1,117 @@
+"""Readings of a text that do equally well: settle them, or refuse the file."""
+
+from __future__ import annotations
+
+from collections import Counter
+
+from benchtool.errors import AmbiguousStructureError
+from benchtool.formats.text.cells import is_grouped, kind_of
+from benchtool.formats.text.layout import COMMENT, Layout
+from benchtool.model.capture import ReadOptions
+
+
+def single_best(found: list[tuple[int, Layout]], options: ReadOptions, source: str) -> Layout:
+    """Return the layout with most rows, refusing where two do equally well."""
+    top = found[0][0]
+    rivals = [layout for n, layout in found if n == top]
+    best = rivals[0]
+    for other in rivals[1:]:
+        best = _settle(best, other, source)
+    return _checked_groups(best, options, source)
+
+
+def _settle(a: Layout, b: Layout, source: str) -> Layout:
+    if a.delimiter == b.delimiter:
+        if _same_numbers(a) or not _all_grouped(a):
+            return a if _same_numbers(a) else _by_decimal(a, b)
+        raise _ambiguous_groups(a, source)
+    if "" in (a.delimiter, b.delimiter):
+        none, some = (b, a) if a.delimiter else (a, b)
+        return none if some.n_fields == 1 else some  # a decimal comma is looked for after this
+    names = " or ".join(repr(layout.delimiter or "none") for layout in (a, b))
+    raise AmbiguousStructureError(
+        f"the lines of {source} fall into columns under more than one reading "
+        f"(delimiter {names}, decimal mark {a.decimal!r} or {b.decimal!r})",
+        hint="Say which with --delimiter and --decimal.",
+    )
+
+
+def _by_decimal(a: Layout, b: Layout) -> Layout:
+    """Of a point and a comma reading of the same cells, take the one with fewer groups."""
+    point, comma = (a, b) if a.decimal == "." else (b, a)
+    has_comma = any("," in row[i] for row in point.rows for i in point.fields)
+    return comma if has_comma and not _mixed_groups(point) else point
+
+
+def _mixed_groups(layout: Layout) -> bool:
+    """Say whether some cell has both marks, comma first: the comma groups thousands."""
+    cells = (row[i] for row in layout.rows for i in layout.fields)
+    return any(0 <= cell.find(",") < cell.find(".") for cell in cells)
+
+
+def _same_numbers(layout: Layout) -> bool:
+    """Say whether no number has a mark, so that both readings are the same."""
+    return not any("," in row[i] or "." in row[i] for row in layout.rows for i in layout.fields)
+
+
+def _all_grouped(layout: Layout) -> bool:
+    cells = [row[i] for row in layout.rows for i in layout.fields if "," in row[i]]
+    return bool(cells) and all(is_grouped(cell) for cell in cells)
+
+
+def _checked_groups(layout: Layout, options: ReadOptions, source: str) -> Layout:
+    if options.decimal is None and layout.delimiter != "," and _all_grouped(layout):
+        raise _ambiguous_groups(layout, source)
+    return layout
+
+
+def _ambiguous_groups(layout: Layout, source: str) -> AmbiguousStructureError:
+    cell = next(row[i] for row in layout.rows for i in layout.fields if "," in row[i])
+    return AmbiguousStructureError(
+        f"{cell!r} in {source} may be a thousand or a decimal fraction",
+        hint="Say which with --decimal , (a fraction) or --decimal . (thousands).",
+    )
+
+
+def refuse_decimal_comma(
+    layout: Layout, lines: list[str], options: ReadOptions, source: str
+) -> None:
+    """Refuse a comma that may be both the delimiter and the decimal mark."""
+    if layout.delimiter != "," or layout.decimal == "," or options.delimiter or options.decimal:
+        return
+    if any("." in cell or '"' in cell for row in layout.rows for cell in row):
+        return
+    if _header_width(lines, layout) == layout.n_fields or not _looks_paired(lines, layout):
+        return
+    raise AmbiguousStructureError(
+        f"the commas of {source} may be delimiters, decimal marks or both "
+        f"(row {','.join(layout.rows[0])!r})",
+        hint="Give --delimiter , --decimal . if they only delimit, --delimiter , --decimal , "
+        "if they are both, --delimiter none --decimal , for a single column.",
+    )
+
+
+def _header_width(lines: list[str], layout: Layout) -> int:
+    for line in reversed(lines[: layout.start]):
+        cells = layout.split(COMMENT.sub("", line, count=1))
+        if any(cells):
+            while cells and not cells[-1]:
+                cells.pop()
+            return len(cells) if all(kind_of(c, ".") in "TWE" for c in cells) else 0
+    return 0
+
+
+def _looks_paired(lines: list[str], layout: Layout) -> bool:
+    """Say whether every second cell can be the digits after a decimal comma."""
+    widths = Counter(line.count(",") + 1 for line in lines[layout.start :] if line.strip())
+    ragged = sum(n for width, n in widths.items() if width != layout.n_fields)
+    if ragged > 0.2 * sum(widths.values()):
+        return True
+    if layout.n_fields % 2:
+        return False
+    if 2 * _header_width(lines, layout) == layout.n_fields:
+        return True
+    fractions = [row[i] for row in layout.rows for i in range(1, layout.n_fields, 2)]
+    return all(f.isdigit() for f in fractions) and any(
+        len(f) > 1 and f.startswith("0") for f in fractions
+    )

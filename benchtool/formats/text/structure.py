@@ -1,0 +1,277 @@
+"""All that the head and the tail of a delimited text tell of its structure."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass, field
+
+import numpy as np
+
+from benchtool.errors import AmbiguousStructureError, CaptureError, MalformedCaptureError
+from benchtool.formats.content import Content
+from benchtool.formats.text.cells import HIGH_WORDS, LOW_WORDS, plain
+from benchtool.formats.text.clockcells import ClockCells, clock_cells
+from benchtool.formats.text.columns import ClockColumn, Columns, assign_columns
+from benchtool.formats.text.decoding import Decoder, Wanted
+from benchtool.formats.text.encoding import Encoding, find_encoding, narrowed
+from benchtool.formats.text.ending import find_cut, last_lines
+from benchtool.formats.text.heading import Heading, read_heading
+from benchtool.formats.text.layout import Layout, is_comment
+from benchtool.formats.text.metadata import Metadata, Stated, read_metadata
+from benchtool.formats.text.readings import find_layout
+from benchtool.formats.text.timeunit import FoundUnit, find_time_unit, stated_interval
+from benchtool.formats.text.walking import DataRows
+from benchtool.formats.text.words import TimeUnit
+from benchtool.model.capture import FloatArray, ReadOptions
+from benchtool.model.quantity import Notice
+
+_SIDE_LINES = 200
+_TAIL_ROWS = 64
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class Structure:
+    """What was found before the first walk over the rows.
+
+    Attributes:
+        rows: The data rows and their decoder: clocks first, then channels.
+        encoding: Encoding of the file.
+        layout: Delimiter, decimal mark, fields.
+        heading: Names and units.
+        metadata: What the lines around the data say.
+        columns: Clocks and channels.
+        cells: How each clock column is decoded.
+        units: Unit of each clock column, and its evidence.
+        stated: Sample interval that the user or the file states.
+        warnings: What was assumed.
+    """
+
+    rows: DataRows
+    encoding: Encoding
+    layout: Layout = field(repr=False)
+    heading: Heading
+    metadata: Metadata
+    columns: Columns
+    cells: tuple[ClockCells, ...]
+    units: tuple[FoundUnit, ...]
+    stated: Stated | None
+    warnings: tuple[Notice, ...]
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class _Text:
+    """The file as text: its first and last lines."""
+
+    content: Content
+    encoding: Encoding
+    codec: str
+    carriage: bool
+    n_mark: int
+    lines: list[str]
+    last: list[str]
+
+
+def find_structure(content: Content, options: ReadOptions) -> Structure:
+    """Find the structure of a delimited text.
+
+    Raises:
+        AmbiguousStructureError: If two readings are sound, or none gives time.
+        MalformedCaptureError: If there are no rows of numbers.
+    """
+    text = _open_text(content)
+    layout = find_layout(text.lines, options, content.source)
+    heading = read_heading(text.lines, layout)
+    metadata = read_metadata(_around(text.lines, layout, heading), layout)
+    known = bool(metadata.intervals) or options.interval_s is not None
+    columns = assign_columns(
+        layout, heading, stated=known, unit_given=options.time_unit is not None
+    )
+    _refuse_without_values(columns, content.source)
+    counted = not columns.clocks or any(c.kind == "index" for c in columns.clocks)
+    stated = stated_interval((*metadata.intervals, *columns.intervals), options, needed=counted)
+    if counted and stated is None:
+        raise _no_time(content.source, columns.disordered)
+    cells = tuple(_cells_of(clock, layout, text) for clock in columns.clocks)
+    units = tuple(_unit_of(clock, metadata, options, stated) for clock in columns.clocks)
+    stop, cut = find_cut(text.content, layout, text.last)
+    return Structure(
+        rows=_data_rows(text, layout, columns, cells, stop),
+        encoding=text.encoding,
+        layout=layout,
+        heading=heading,
+        metadata=metadata,
+        columns=columns,
+        cells=cells,
+        units=units,
+        stated=stated,
+        warnings=(*cut, *_assumptions(units, stated, counted=counted)),
+    )
+
+
+def _open_text(content: Content) -> _Text:
+    encoding = find_encoding(content.head())
+    narrow = narrowed(content, encoding)
+    head = narrow.head()
+    codec = "utf-8" if encoding.is_wide else encoding.name
+    codec = "utf-8" if codec == "ascii" else codec
+    n_mark = 0 if encoding.is_wide else encoding.n_mark
+    carriage = b"\n" not in head and b"\r" in head
+    text = head[n_mark:].decode(codec, errors="replace")
+    text = text.replace("\r", "\n" if carriage else "").rstrip("\0")
+    lines = text.split("\n")
+    if narrow.size > len(head) or not lines[-1]:
+        lines.pop()  # a line that goes on beyond the head, or the nothing after the last
+    return _Text(
+        content=narrow,
+        encoding=encoding,
+        codec=codec,
+        carriage=carriage,
+        n_mark=n_mark,
+        lines=lines,
+        last=last_lines(narrow, codec, carriage=carriage),
+    )
+
+
+def _around(lines: list[str], layout: Layout, heading: Heading) -> list[str]:
+    """Return the lines around the data: before them, comments among them, cells beside them."""
+    before = [line for i, line in enumerate(lines[: layout.start]) if i not in heading.rows]
+    among, side = [], []
+    beside = [i for i, kind in enumerate(layout.kinds) if kind not in "NSW"]
+    for line in lines[layout.start : layout.start + _SIDE_LINES]:
+        if is_comment(line):
+            among.append(line)
+        elif beside and len(cells := layout.split(line)) == layout.n_fields:
+            side.append((layout.delimiter or ",").join(cells[i] for i in beside))
+    return [*before, *among, *side]
+
+
+def _refuse_without_values(columns: Columns, source: str) -> None:
+    if columns.values:
+        return
+    raise MalformedCaptureError(
+        f"{source} has a time column but no column of values",
+        hint="Export the channel's values with the time.",
+        path=source,
+        code="no-values",
+    )
+
+
+def _no_time(source: str, disordered: tuple[str, ...]) -> CaptureError:
+    if disordered:
+        return MalformedCaptureError(
+            f"the time column {disordered[0]!r} of {source} does not go forward",
+            hint="Sort the rows by time, or give --interval to count rows instead.",
+            path=source,
+            code="time-disorder",
+        )
+    return AmbiguousStructureError(
+        f"{source} has no time column and states no sample interval or rate",
+        hint="Give --interval (such as 5us) or --rate (such as 200k); if its first column is "
+        "time, say in which unit with --time-unit.",
+        code="no-time",
+    )
+
+
+def _cells_of(clock: ClockColumn, layout: Layout, text: _Text) -> ClockCells:
+    """Look at a clock's cells in the first and the last rows."""
+    cells = [_joined(row, clock) for row in layout.rows]
+    for line in text.last[1:-1][-_TAIL_ROWS:]:
+        row = layout.split(line)
+        if len(row) == layout.n_fields:
+            cells.append(_joined(row, clock))
+    return clock_cells(clock, cells, layout.decimal)
+
+
+def _joined(row: Sequence[str], clock: ClockColumn) -> str:
+    cell = row[clock.column.field]
+    return cell if clock.date is None else f"{row[clock.date]} {cell}"
+
+
+def _unit_of(
+    clock: ClockColumn, metadata: Metadata, options: ReadOptions, stated: Stated | None
+) -> FoundUnit:
+    if clock.kind == "index":
+        assert stated is not None
+        unit = TimeUnit(name="samples", times=stated.value)
+        return FoundUnit(unit=unit, evidence=f"{clock.evidence}; interval from {stated.evidence}")
+    return find_time_unit(clock, metadata, options, stated.value if stated else None)
+
+
+def _assumptions(
+    units: tuple[FoundUnit, ...], stated: Stated | None, *, counted: bool
+) -> tuple[Notice, ...]:
+    notices = [notice for found in units[:1] for notice in found.warnings]
+    if counted and stated is not None and stated.assumed_unit:
+        notices.append(
+            Notice(
+                code="assumed-time-unit",
+                text=f"the sample interval is stated without a unit ({stated.evidence}): "
+                f"{stated.value:.6g} s are assumed (--interval)",
+            )
+        )
+    return tuple(notices)
+
+
+def _data_rows(
+    text: _Text,
+    layout: Layout,
+    columns: Columns,
+    cells: tuple[ClockCells, ...],
+    stop: int,
+) -> DataRows:
+    wanted = [
+        *(c.wanted for c in cells),
+        *(Wanted(field=c.field, convert=states if c.kind == "W" else None) for c in columns.values),
+    ]
+    decoder = Decoder(
+        layout=layout,
+        wanted=tuple(wanted),
+        carriage=text.carriage,
+        codec=text.codec,
+        n_clocks=len(cells),
+        may_be_short=len(columns.clocks) > 1,
+    )
+    return DataRows(
+        content=text.content,
+        decoder=decoder,
+        start=_offset(text, layout.start),
+        stop=stop,
+        first_line=layout.start + 1,
+    )
+
+
+def _offset(text: _Text, line: int) -> int:
+    """Return the byte offset of a line of the head."""
+    head, mark = text.content.head(), b"\r" if text.carriage else b"\n"
+    at = text.n_mark
+    for _ in range(line):
+        at = head.index(mark, at) + 1
+    return at
+
+
+def states(cells: Sequence[str]) -> FloatArray:
+    """Return 1 for words of high, 0 for words of low, NaN for all else."""
+    return np.array([_state(cell.lower()) for cell in cells])
+
+
+def _state(word: str) -> float:
+    if word in HIGH_WORDS:
+        return 1.0
+    return 0.0 if word in LOW_WORDS else float("nan")
+
+
+def epoch_ns(structure: Structure) -> int | None:
+    """Return the first stamp in nanoseconds since 1970, where the time column is absolute."""
+    if not structure.cells:
+        return None
+    if structure.cells[0].start_ns is not None:
+        return structure.cells[0].start_ns
+    clock, unit = structure.columns.clocks[0], structure.units[0].unit
+    first = next((v for v in clock.column.head if np.isfinite(v)), 0.0)
+    if clock.kind != "number" or not 1e9 <= unit.seconds(float(first)) < 4e9:
+        return None
+    from decimal import Decimal
+
+    cell = structure.layout.rows[0][clock.column.field]
+    seconds = Decimal(plain(cell, structure.layout.decimal)) / Decimal(int(unit.over))
+    return int(seconds * Decimal(int(unit.times)) * 1_000_000_000)

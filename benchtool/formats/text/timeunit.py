@@ -1,0 +1,133 @@
+"""The unit of a time column: never guessed silently."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+import numpy as np
+
+from benchtool.errors import AmbiguousStructureError
+from benchtool.formats.text import words
+from benchtool.formats.text.columns import ClockColumn
+from benchtool.formats.text.metadata import Metadata, Stated
+from benchtool.formats.text.words import SECOND, TIME_UNITS, TimeUnit
+from benchtool.model.capture import FloatArray, ReadOptions
+from benchtool.model.quantity import Notice
+
+_EPOCHS = ((1e9, "s"), (1e12, "ms"), (1e15, "us"), (1e18, "ns"))  # 2001-09-09 to 2096-10-02
+_EPOCH_SPAN = 4.0
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class FoundUnit:
+    """A unit of time and what it was found from."""
+
+    unit: TimeUnit
+    evidence: str
+    warnings: tuple[Notice, ...] = ()
+
+
+def find_time_unit(
+    clock: ClockColumn, metadata: Metadata, options: ReadOptions, stated_s: float | None
+) -> FoundUnit:
+    """Return the unit of a time column.
+
+    Raises:
+        AmbiguousStructureError: If the file names a unit that is none of time.
+    """
+    if clock.kind == "stamp":
+        return FoundUnit(unit=SECOND, evidence="calendar stamps")
+    if options.time_unit is not None:
+        return FoundUnit(unit=named_unit(options.time_unit), evidence="--time-unit")
+    column = clock.column
+    unit = words.time_unit(column.unit) if column.unit else _in_name(column.name)
+    if unit is not None:
+        return FoundUnit(unit=unit, evidence=f"header {column.raw!r}")
+    if column.unit:
+        raise AmbiguousStructureError(
+            f"the time column {column.raw!r} has a unit that is none of time: {column.unit!r}",
+            hint="Name the unit with --time-unit s, ms, us or ns.",
+        )
+    if metadata.time_unit is not None:
+        return FoundUnit(unit=metadata.time_unit[0], evidence=metadata.time_unit[1])
+    return _by_interval(column.head, stated_s) or _by_epoch(column.head) or _assumed(clock)
+
+
+def named_unit(name: str) -> TimeUnit:
+    """Return the unit that the user names.
+
+    Raises:
+        AmbiguousStructureError: If there is none of that name.
+    """
+    unit = words.time_unit(name)
+    if unit is None:
+        raise AmbiguousStructureError(
+            f"{name!r} is no unit of time", hint="Use --time-unit s, ms, us, ns or ps."
+        )
+    return unit
+
+
+def _in_name(name: str) -> TimeUnit | None:
+    parts = words.normal(name).split()
+    known = [TIME_UNITS[p] for p in parts if p in TIME_UNITS and (len(p) > 1 or len(parts) == 1)]
+    return known[-1] if known else None
+
+
+def _by_interval(head: FloatArray, stated_s: float | None) -> FoundUnit | None:
+    """Find the unit in which the steps of the column are the stated interval."""
+    steps = np.diff(head[np.isfinite(head)])
+    if stated_s is None or not steps.size or not (step := float(np.mean(steps))) > 0:
+        return None
+    for name in ("s", "ms", "us", "ns", "ps"):
+        unit = TIME_UNITS[name]
+        if abs(unit.seconds(step) / stated_s - 1) < 0.01:
+            evidence = f"in {name} the steps are the stated interval {stated_s:.6g} s"
+            return FoundUnit(unit=unit, evidence=evidence)
+    return None
+
+
+def _by_epoch(head: FloatArray) -> FoundUnit | None:
+    told = head[np.isfinite(head)]
+    for least, name in _EPOCHS:
+        if told.size and least <= told[0] < _EPOCH_SPAN * least:
+            evidence = f"{told[0]:.0f} {name} since 1970 is a date of this century"
+            return FoundUnit(unit=TIME_UNITS[name], evidence=evidence)
+    return None
+
+
+def _assumed(clock: ClockColumn) -> FoundUnit:
+    notice = Notice(
+        code="assumed-time-unit",
+        text=f"the file gives no unit for its time column ({clock.column.title}): seconds are "
+        "assumed; another unit scales every time (--time-unit)",
+    )
+    return FoundUnit(unit=SECOND, evidence="assumed, no unit in the file", warnings=(notice,))
+
+
+def stated_interval(
+    statements: Sequence[Stated], options: ReadOptions, *, needed: bool
+) -> Stated | None:
+    """Return the sample interval that the user or the file states.
+
+    Args:
+        statements: What the file states.
+        options: What the user states.
+        needed: Whether there is no time column to decide between two statements.
+
+    Raises:
+        AmbiguousStructureError: If the file states two that differ and one is needed.
+    """
+    if options.interval_s is not None:
+        return Stated(value=options.interval_s, evidence="--interval or --rate")
+    if not statements:
+        return None
+    values = [stated.value for stated in statements]
+    if max(values) <= 1.01 * min(values):
+        return min(statements, key=lambda stated: stated.assumed_unit)
+    if not needed:
+        return None
+    raise AmbiguousStructureError(
+        f"the file states two sample intervals: {min(values):.6g} s and {max(values):.6g} s",
+        hint="Say which with --interval.",
+    )

@@ -1,0 +1,231 @@
+"""What one trace shows: levels, edges, intervals, and the figures made of them."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+from itertools import pairwise
+from typing import Any
+
+from benchtool.diagnose import find_findings, flat_length, flat_state
+from benchtool.model.capture import LogicTrace, Trace, UniformTime, Waveform
+from benchtool.model.design import Design
+from benchtool.model.options import MeasureOptions
+from benchtool.model.quantity import Bound, Measured, Notice, Quantity
+from benchtool.model.result import Flat, Gap, IntervalCounts, StageResult, TraceFacts
+from benchtool.model.timing import Edges, Intervals, Jitter, Levels, Timing
+from benchtool.targets import Target
+from benchtool.timing import (
+    find_edges,
+    find_intervals,
+    find_levels,
+    find_turning_points,
+    make_overview,
+    measure_delay,
+    measure_jitter,
+    measure_stability,
+    measure_timing,
+    require_intervals,
+    require_states,
+)
+
+DEFAULT_TIMEBASE_REL = 50e-6
+DEFAULT_JITTER_REL = 1e-3
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Settings:
+    """What a measurement needs to know besides the trace, each settled once.
+
+    Attributes:
+        timebase_rel: Half-width of the timebase error, relative.
+        timebase_from: Where that figure comes from, in a word or two.
+        jitter_rel: Assumed jitter where one interval is all there is, relative half-width.
+        options: What the user overrules.
+    """
+
+    timebase_rel: float
+    timebase_from: str
+    jitter_rel: float
+    options: MeasureOptions
+
+
+def settle(options: MeasureOptions, design: Design | None) -> Settings:
+    """Return the settings: an option wins, then the design, then the default."""
+    instrument = design.instrument if design else None
+    stated = instrument.timebase_rel if instrument else None
+    if options.timebase_rel is not None:
+        timebase_rel, source = options.timebase_rel, "option --timebase"
+    elif stated is not None:
+        timebase_rel, source = stated, "[instrument] of the design"
+    else:
+        timebase_rel, source = DEFAULT_TIMEBASE_REL, "default"
+    assumed = instrument.jitter_rel if instrument else None
+    jitter_rel = next(
+        (x for x in (options.jitter_rel, assumed) if x is not None), DEFAULT_JITTER_REL
+    )
+    return Settings(
+        timebase_rel=timebase_rel, timebase_from=source, jitter_rel=jitter_rel, options=options
+    )
+
+
+def observe(
+    target: Target, settings: Settings, design: Design | None = None, *, required: bool = False
+) -> StageResult:
+    """Take one trace from its samples to its figures; a dead trace gives bounds.
+
+    Args:
+        target: The trace, its role and its stage.
+        settings: As settled for this run.
+        design: Gives the supply, by which a flat trace is high or low.
+        required: Whether a trace without one complete interval is an error.
+
+    Raises:
+        MeasurementError: Where ``required``: ``flat-trace``, ``noise-only``, ``no-interval`` or
+            ``under-sampled``.
+    """
+    trace, stage = target.trace, target.stage
+    levels = _levels(target.trace, settings)
+    if required and levels is not None:
+        require_states(levels)
+    edges = _edges(target, levels)
+    active = settings.options.active or (stage.active if stage else "high")
+    intervals = find_intervals(edges, active=active)
+    timing = _timing(target, edges, intervals, settings)
+    if required and not isinstance(timing.delay, Measured):  # a delay needs no second edge
+        require_intervals(intervals, edges)
+    jitter = measure_jitter(intervals, edges)
+    supply_v = design.supply.nominal if design else None
+    return StageResult(
+        source=0,
+        stage=stage.name if stage else None,
+        design=stage,
+        trace=_facts(target, edges),
+        levels=levels,
+        intervals=_counts(intervals),
+        timing=timing,
+        jitter=jitter,
+        stability=measure_stability(intervals),
+        findings=find_findings(
+            levels,
+            edges,
+            intervals,
+            timing,
+            supply_v=supply_v,
+            topology=stage.topology if stage else None,
+        ),
+        warnings=_warnings(target, edges, intervals, timing, jitter),
+        overview=make_overview(trace, edges, intervals),
+        series=intervals,
+        flat=_flat(levels, edges, supply_v),
+    )
+
+
+def _timing(target: Target, edges: Edges, intervals: Intervals, settings: Settings) -> Timing:
+    timing = measure_timing(
+        intervals, edges, timebase_rel=settings.timebase_rel, jitter_rel=settings.jitter_rel
+    )
+    topology = target.stage.topology if target.stage else None
+    if topology == "power-on":
+        return replace(timing, **_power_on_delay(target, edges, timing, settings))
+    if topology == "one-shot" and target.trigger is not None:
+        return replace(timing, delay=_delay(target.trigger, edges, settings))
+    return timing
+
+
+def _power_on_delay(
+    target: Target, edges: Edges, timing: Timing, settings: Settings
+) -> dict[str, Any]:
+    """Return the delay after the supply came up; without its trace, a single whole high time."""
+    if target.supply is not None:
+        return {"delay": _delay(target.supply, edges, settings)}
+    if not isinstance(timing.t_high, Measured):
+        return {}
+    notice = Notice(
+        code="assumed-delay-from-output",
+        text="no trace shows the supply coming up: the delay is taken as the output's high time",
+    )
+    return {"delay": timing.t_high, "warnings": (*timing.warnings, notice)}
+
+
+def _delay(start: Trace, answer: Edges, settings: Settings) -> Quantity | None:
+    """Return the time from a trace's first edge to the answer, a bound where none comes."""
+    begun = find_edges(start, _levels(start, settings))
+    found = measure_delay(
+        begun, answer, timebase_rel=settings.timebase_rel, jitter_rel=settings.jitter_rel
+    )
+    if found is not None or not begun.times_s.size or not answer.runs:
+        return found
+    waited_s = answer.runs[-1].end_s - float(begun.times_s[0])
+    return Bound(unit="s", at_least=waited_s) if waited_s > 0 else None
+
+
+def _levels(trace: Trace, settings: Settings) -> Levels | None:
+    if isinstance(trace, LogicTrace):
+        return None
+    return find_levels(trace, level_v=settings.options.level_v)
+
+
+def _edges(target: Target, levels: Levels | None) -> Edges:
+    if isinstance(target.trace, Waveform) and levels is not None and target.role == "capacitor":
+        return find_turning_points(target.trace, levels)
+    return find_edges(target.trace, levels)
+
+
+def _warnings(
+    target: Target, edges: Edges, intervals: Intervals, timing: Timing, jitter: Jitter
+) -> tuple[Notice, ...]:
+    found = (edges.warnings, intervals.warnings, timing.warnings, jitter.warnings)
+    return tuple(dict.fromkeys((*target.warnings, *(item for some in found for item in some))))
+
+
+def _counts(intervals: Intervals) -> IntervalCounts:
+    return IntervalCounts(
+        high=intervals.high_s.size,
+        low=intervals.low_s.size,
+        period=intervals.period_s.size,
+        dropped=intervals.dropped,
+    )
+
+
+def _flat(levels: Levels | None, edges: Edges, supply_v: float | None) -> Flat | None:
+    length_s = flat_length(edges)
+    if length_s is None:
+        return None
+    return Flat(length_s=length_s, state=flat_state(levels, edges, supply_v))
+
+
+def _facts(target: Target, edges: Edges) -> TraceFacts:
+    trace = target.trace
+    interval_s = _interval(trace)
+    return TraceFacts(
+        channel=trace.channel,
+        role=target.role,
+        kind="logic" if not isinstance(trace, Waveform) or trace.is_logic else "waveform",
+        samples=trace.samples.size if isinstance(trace, Waveform) else None,
+        sample_interval_s=interval_s,
+        tick_s=_tick(trace),
+        start_s=edges.runs[0].start_s if edges.runs else 0.0,
+        duration_s=_duration(edges, interval_s),
+        gaps=tuple(
+            Gap(start_s=before.end_s, end_s=after.start_s)
+            for before, after in pairwise(edges.runs)
+            if after.start_s > before.end_s
+        ),
+    )
+
+
+def _interval(trace: Trace) -> float | None:
+    if isinstance(trace, Waveform) and isinstance(trace.time, UniformTime):
+        return trace.time.dt_s
+    return None
+
+
+def _tick(trace: Trace) -> float | None:
+    if isinstance(trace, LogicTrace):
+        return trace.tick_s or None
+    return _interval(trace) if trace.is_logic else None
+
+
+def _duration(edges: Edges, interval_s: float | None) -> float:
+    """Return N·dt: each run ends one interval after its last sample."""
+    return sum(run.end_s - run.start_s + (interval_s or 0.0) for run in edges.runs)

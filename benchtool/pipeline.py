@@ -1,0 +1,210 @@
+"""The whole way of the data, each verb stopping where its question is answered.
+
+::
+
+    format -> Capture -> Levels -> Edges -> Intervals -> Timing -> Solution -> Verdict
+
+``observation`` goes as far as Timing, ``assessment`` from there.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from dataclasses import replace
+from pathlib import Path
+
+from benchtool.assessment import NOTHING_KNOWN, judge_result, solve_plain, solve_stage
+from benchtool.comparison import compare_timing
+from benchtool.formats import read_capture
+from benchtool.judge import worst
+from benchtool.model.capture import Capture
+from benchtool.model.design import Band, Design, Ic, TopologyName
+from benchtool.model.options import MeasureOptions
+from benchtool.model.quantity import Notice
+from benchtool.model.result import Analysis, Source, StageResult
+from benchtool.model.timing import Timing
+from benchtool.observation import observe, settle
+from benchtool.targets import Target, choose_stages, choose_targets
+from benchtool.timing import find_roles
+
+FilePath = str | Path
+DEFAULTS = MeasureOptions()
+
+
+def look(sources: Sequence[FilePath], *, options: MeasureOptions = DEFAULTS) -> Analysis:
+    """Say what captures hold: structure with its evidence, traces, roles, levels."""
+    settings = settle(options, None)
+    captures = [read_capture(source, options.read) for source in sources]
+    results = tuple(
+        replace(observe(Target(trace=trace, role=role), settings), source=number)
+        for number, capture in enumerate(captures)
+        for trace, role in zip(capture.traces, find_roles(capture), strict=True)
+    )
+    return Analysis(
+        command="look",
+        sources=tuple(_source(capture) for capture in captures),
+        results=results,
+        warnings=_warnings(captures),
+    )
+
+
+def measure(
+    source: FilePath, *, baseline: FilePath | None = None, options: MeasureOptions = DEFAULTS
+) -> Analysis:
+    """Measure the timing of a capture, and its change against a baseline where one is given.
+
+    Raises:
+        MeasurementError: If one holds no complete interval; the message gives the bound.
+    """
+    analysis = _observe_all(source, None, None, options, "measure")
+    if baseline is None:
+        return analysis
+    earlier = _observe_all(baseline, None, None, options, "measure")
+    now, before = analysis.results[0], earlier.results[0]
+    changes = compare_timing(now.timing or Timing(), before.timing or Timing())
+    return replace(
+        analysis,
+        sources=(*analysis.sources, replace(earlier.sources[0], role="baseline")),
+        results=(replace(now, changes=changes),),
+        warnings=tuple(dict.fromkeys((*analysis.warnings, *earlier.warnings))),
+    )
+
+
+def solve(
+    source: FilePath | Timing,
+    design: FilePath | Design,
+    *,
+    stage: str | None = None,
+    known: Mapping[str, float] = NOTHING_KNOWN,
+    options: MeasureOptions = DEFAULTS,
+) -> Analysis:
+    """Solve for the products of a designed circuit; ``source`` may be plain figures."""
+    intent = _settled_design(design, options)
+    analysis = _times(source, intent, stage, options)
+    return replace(
+        analysis,
+        results=tuple(solve_stage(item, intent, known=known) for item in analysis.results),
+    )
+
+
+def solve_topology(
+    source: FilePath | Timing,
+    topology: TopologyName,
+    *,
+    ic: Ic | None = None,
+    supply_v: float | None = None,
+    known: Mapping[str, float] = NOTHING_KNOWN,
+    options: MeasureOptions = DEFAULTS,
+) -> Analysis:
+    """Solve for the products where there is no design; ``source`` may be plain figures."""
+    analysis = _times(source, None, None, options)
+    solved = solve_plain(analysis.results[0], topology, ic=ic, supply_v=supply_v, known=known)
+    return replace(analysis, results=(solved,))
+
+
+def analyse(
+    source: FilePath,
+    design: FilePath | Design,
+    *,
+    stage: str | None = None,
+    options: MeasureOptions = DEFAULTS,
+) -> Analysis:
+    """Take a capture the whole way, to a verdict against its design.
+
+    Args:
+        source: The capture file, or ``-`` for standard input.
+        design: The design file, or the design.
+        stage: Judge this stage alone.
+        options: What is overruled.
+
+    Returns:
+        One result a stage; the verdict is the worst of them. A board that fails, or that is
+        dead, is a result and not an error.
+
+    Raises:
+        BenchtoolError: As the tree in ``benchtool.errors`` says.
+    """
+    intent = _settled_design(design, options)
+    settings = settle(options, intent)
+    analysis = _observe_all(source, intent, stage, options, "judge")
+    results = tuple(judge_result(item, intent, settings) for item in analysis.results)
+    verdict = worst(item.verdict for item in results if item.verdict)
+    return replace(analysis, results=results, verdict=verdict, rule=intent.rule)
+
+
+def _times(
+    source: FilePath | Timing, design: Design | None, stage: str | None, options: MeasureOptions
+) -> Analysis:
+    """Return the times to solve: measured, or as given."""
+    if isinstance(source, Timing):
+        return _given(source, design, stage)
+    return _observe_all(source, design, stage, options, "solve")
+
+
+def _given(timing: Timing, design: Design | None, stage: str | None) -> Analysis:
+    chosen = choose_stages(design, stage)[0] if design else None
+    result = StageResult(
+        source=0,
+        stage=chosen.name if chosen else None,
+        design=chosen,
+        trace=None,
+        timing=timing,
+        warnings=timing.warnings,
+    )
+    return Analysis(command="solve", sources=(), results=(result,), design=design)
+
+
+def _observe_all(
+    source: FilePath,
+    design: Design | None,
+    stage: str | None,
+    options: MeasureOptions,
+    command: str,
+) -> Analysis:
+    capture = read_capture(source, options.read)
+    settings = settle(options, design)
+    targets = choose_targets(
+        capture, find_roles(capture), channel=options.read.channel, design=design, stage=stage
+    )
+    return Analysis(
+        command=command,
+        sources=(_source(capture),),
+        results=tuple(
+            observe(target, settings, design, required=command != "judge") for target in targets
+        ),
+        design=design,
+        timebase_rel=settings.timebase_rel,
+        timebase_from=settings.timebase_from,
+        warnings=_warnings([capture]),
+    )
+
+
+def _settled_design(design: FilePath | Design, options: MeasureOptions) -> Design:
+    """Return the design with probe and temperature as the user overrules them."""
+    if not isinstance(design, Design):
+        from benchtool.designs import load_design
+
+        design = load_design(design)
+    if options.probe is not None:
+        design = replace(design, probe=options.probe)
+    if options.temperature_c is not None:
+        at = options.temperature_c
+        design = replace(design, temperature=Band(nominal=at, lower=at, upper=at))
+    return design
+
+
+def _source(capture: Capture) -> Source:
+    origin = capture.origin
+    return Source(
+        role="main",
+        name=origin.source,
+        sha256=origin.sha256,
+        format=origin.format,
+        structure=capture.structure,
+        start_ns=origin.start_ns,
+        instrument=origin.instrument,
+    )
+
+
+def _warnings(captures: Sequence[Capture]) -> tuple[Notice, ...]:
+    return tuple(dict.fromkeys(notice for item in captures for notice in item.warnings))

@@ -1,0 +1,189 @@
+"""Which trace is measured for which stage."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+from benchtool.errors import UsageError
+from benchtool.model.capture import Capture, Role, Trace
+from benchtool.model.design import Design, Stage
+from benchtool.model.quantity import Notice
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class Target:
+    """A trace to measure, the stage it belongs to, and the traces that go with it."""
+
+    trace: Trace
+    role: Role
+    stage: Stage | None = None
+    trigger: Trace | None = None
+    supply: Trace | None = None
+    warnings: tuple[Notice, ...] = ()
+
+
+def choose_targets(
+    capture: Capture,
+    roles: Sequence[Role],
+    *,
+    channel: str | None = None,
+    design: Design | None = None,
+    stage: str | None = None,
+) -> tuple[Target, ...]:
+    """Return what is to be measured: a trace for each stage, or the one trace without a design.
+
+    Args:
+        capture: The capture.
+        roles: Role of each of its traces.
+        channel: Name or number, from 1, of the trace that the user chose.
+        design: The design, where there is one.
+        stage: Name of the one stage to measure.
+
+    Raises:
+        UsageError: If a name is unknown, or several traces could be meant
+            (``choose-channel``, ``no-such-channel``, ``no-such-stage``).
+    """
+    if design is None:
+        return (_target(capture, roles, _pick(capture, roles, channel)),)
+    stages = choose_stages(design, stage)
+    if channel is not None and len(stages) > 1:
+        raise UsageError(
+            f"--channel names one trace and {design.source} has {len(stages)} stages",
+            hint=f"Add --stage: {', '.join(item.name for item in stages)}.",
+        )
+    return tuple(
+        _stage_target(capture, roles, item, channel, alone=len(stages) == 1) for item in stages
+    )
+
+
+def find_channel(capture: Capture, name: str) -> int:
+    """Return the index of the trace called ``name``, or of number ``name`` counted from 1.
+
+    Raises:
+        UsageError: If there is none (``no-such-channel``); the hint lists those there are.
+    """
+    names = [trace.channel for trace in capture.traces]
+    if name in names:
+        return names.index(name)
+    folded = [item.casefold() for item in names]
+    if folded.count(name.casefold()) == 1:
+        return folded.index(name.casefold())
+    if name.isdecimal() and 1 <= int(name) <= len(names):
+        return int(name) - 1
+    raise UsageError(
+        f"{capture.origin.source} has no channel {name!r}",
+        hint=f"It has: {', '.join(names[:16])}.",
+        code="no-such-channel",
+    )
+
+
+def choose_stages(design: Design, name: str | None) -> tuple[Stage, ...]:
+    """Return all stages, or the one called ``name``.
+
+    Raises:
+        UsageError: If there is none of that name (``no-such-stage``).
+    """
+    if name is None:
+        return design.stages
+    chosen = tuple(item for item in design.stages if item.name == name)
+    if not chosen:
+        known = ", ".join(item.name for item in design.stages)
+        raise UsageError(
+            f"{design.source} has no stage {name!r}", hint=f"It has: {known}.", code="no-such-stage"
+        )
+    return chosen
+
+
+def _stage_target(
+    capture: Capture, roles: Sequence[Role], stage: Stage, channel: str | None, *, alone: bool
+) -> Target:
+    wanted = channel if channel is not None else _named(capture, stage)
+    try:
+        index = (
+            _pick(capture, roles, wanted)
+            if wanted is not None or alone
+            else _several(capture, stage)
+        )
+        return _target(capture, roles, index, stage)
+    except UsageError:
+        # a lone output is taken whatever the instrument called it, but never without a word
+        if channel is not None or not alone or not _lone_output(roles):
+            raise
+    index = _pick(capture, roles, None)
+    found = capture.traces[index].channel
+    notice = Notice(
+        code="assumed-channel",
+        text=f"the design names {wanted!r}, the capture does not; {found!r} was measured",
+    )
+    return _target(capture, roles, index, stage, (notice,))
+
+
+def _named(capture: Capture, stage: Stage) -> str | None:
+    """Return the first trace that the design names and the capture has, else the first named."""
+    named = [name for name in (stage.channel, stage.capacitor) if name]
+    have = [trace.channel.casefold() for trace in capture.traces]
+    there = [name for name in named if name.casefold() in have]
+    return next(iter((*there, *named)), None)
+
+
+def _several(capture: Capture, stage: Stage) -> int:
+    raise UsageError(
+        f"stage {stage.name} names no channel and the design has several stages",
+        hint=f'Write channel = "{capture.traces[0].channel}" into the design, or give --stage.',
+        code="choose-channel",
+    )
+
+
+def _lone_output(roles: Sequence[Role]) -> bool:
+    return roles.count("output") == 1 or len(roles) == 1
+
+
+def _pick(capture: Capture, roles: Sequence[Role], channel: str | None) -> int:
+    """Return the chosen trace, the only output, the only capacitor node, or the only trace."""
+    if channel is not None:
+        return find_channel(capture, channel)
+    for role in ("output", "capacitor"):
+        found = [i for i, item in enumerate(roles) if item == role]
+        if len(found) == 1:
+            return found[0]
+        if found:
+            break
+    if len(roles) == 1:
+        return 0
+    names = ", ".join(
+        f"{trace.channel} ({role})"
+        for trace, role in zip(capture.traces[:16], roles[:16], strict=True)
+    )
+    raise UsageError(
+        f"{capture.origin.source} holds {len(roles)} traces and several could be meant",
+        hint=f"Give --channel: {names}.",
+        code="choose-channel",
+    )
+
+
+def _target(
+    capture: Capture,
+    roles: Sequence[Role],
+    index: int,
+    stage: Stage | None = None,
+    warnings: tuple[Notice, ...] = (),
+) -> Target:
+    trigger = _companion(capture, roles, "trigger", stage.trigger if stage else None)
+    return Target(
+        trace=capture.traces[index],
+        role=roles[index],
+        stage=stage,
+        trigger=trigger,
+        supply=_companion(capture, roles, "supply", None),
+        warnings=warnings,
+    )
+
+
+def _companion(
+    capture: Capture, roles: Sequence[Role], role: Role, name: str | None
+) -> Trace | None:
+    if name is not None:
+        return capture.traces[find_channel(capture, name)]
+    found = [trace for trace, item in zip(capture.traces, roles, strict=True) if item == role]
+    return found[0] if len(found) == 1 else None

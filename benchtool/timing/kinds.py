@@ -1,0 +1,91 @@
+"""What kind of trace it is: two states, flat, noise, or a capacitor node."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from benchtool.model.capture import FloatArray
+from benchtool.model.timing import LevelKind, Levels
+from benchtool.timing.plateaus import curved_noise, local_noise
+from benchtool.timing.survey import Survey
+
+_LEAST_SPACING = 0.35  # of the range
+_LEAST_SNR = 6.0
+_OUTER, _MOST_BETWEEN = 0.2, 0.30
+_INNER, _MOST_STEEP = 0.4, 0.05  # a state may wander far, as long as edges between are steep
+_MOST_TOGGLING = 0.30  # transitions per sample, where two adjacent codes are all there is
+_LEAST_BARE_V = 1.0  # two values this far apart, of unknown step, are no neighbouring codes
+LEAST_CODES = 3.5
+
+
+def is_two_state(survey: Survey, values: FloatArray, levels: Levels) -> bool:
+    """Tell whether two levels exist: well apart, and with few samples between them.
+
+    Args:
+        survey: What one pass over the samples kept.
+        values: The kept samples in volts.
+        levels: The candidate levels.
+    """
+    spacing = levels.high_v - levels.low_v
+    codes = np.unique(values)
+    if codes.size == 2:
+        least_v = LEAST_CODES * survey.step_v if survey.step_v else _LEAST_BARE_V
+        return spacing > least_v or _is_wave(survey)
+    between = _share_between(values, levels, _OUTER) + _share_beyond(values, levels)
+    steep = _share_between(values, levels, _INNER) <= _MOST_STEEP
+    return bool(
+        spacing >= _LEAST_SPACING * (survey.greatest - survey.least)
+        and spacing >= _LEAST_SNR * levels.noise_v
+        and spacing >= LEAST_CODES * survey.step_v
+        and (between <= _MOST_BETWEEN or steep)
+    )
+
+
+def _share_beyond(values: FloatArray, levels: Levels) -> float:
+    """Return the share of samples that lie clear outside both states."""
+    margin = _OUTER * (levels.high_v - levels.low_v)
+    outside = (values < levels.low_v - margin) | (values > levels.high_v + margin)
+    return float(np.mean(outside))
+
+
+def _share_between(values: FloatArray, levels: Levels, fraction: float) -> float:
+    """Return the share of samples further than a fraction of the amplitude from both states."""
+    margin = fraction * (levels.high_v - levels.low_v)
+    inside = (values > levels.low_v + margin) & (values < levels.high_v - margin)
+    return float(np.mean(inside))
+
+
+def _is_wave(survey: Survey) -> bool:
+    """Tell a wave from a code that toggles: a wave changes rarely."""
+    middle = (survey.least + survey.greatest) / 2
+    changes = sum(int(np.count_nonzero(np.diff(run > middle))) for run in survey.runs)
+    return changes < _MOST_TOGGLING * sum(run.size for run in survey.runs)
+
+
+def kind_without_states(survey: Survey, values: FloatArray) -> LevelKind:
+    """Tell a capacitor node from a flat trace and from noise.
+
+    Args:
+        survey: What one pass over the samples kept.
+        values: The kept samples in volts.
+    """
+    noise_v = min(local_noise(survey.runs), curved_noise(survey.runs))
+    spread = float(np.std(values))
+    swing = float(np.quantile(values, 0.98) - np.quantile(values, 0.02))
+    smooth = swing >= 3 * _LEAST_SNR * noise_v and swing >= 8 * survey.step_v
+    if smooth and not _is_sinusoid(values):
+        return "node"
+    level = abs(float(np.median(values)))
+    steady = spread <= 0.1 * level or spread <= max(0.05, 2 * survey.step_v)
+    return "flat" if steady else "noise"
+
+
+def _is_sinusoid(values: FloatArray) -> bool:
+    """Tell a sine by its histogram: its ends hold over twice as many samples as its middle.
+
+    An exponential between a third and two thirds of its drive holds 1.125 times as many.
+    """
+    low, high = np.quantile(values, [0.005, 0.995])
+    count, _ = np.histogram(values, bins=10, range=(low, high))
+    middle = max(1.0, float(count[4:6].mean()))
+    return bool(min(count[0], count[-1]) > 2.2 * middle)

@@ -1,0 +1,253 @@
+"""State levels of a waveform and the reference levels between them (IEEE 181)."""
+
+from __future__ import annotations
+
+import math
+from dataclasses import replace
+
+import numpy as np
+
+from benchtool.errors import MeasurementError
+from benchtool.model.capture import FloatArray, Waveform
+from benchtool.model.quantity import Notice
+from benchtool.model.timing import LevelKind, Levels
+from benchtool.timing.kinds import LEAST_CODES, is_two_state, kind_without_states
+from benchtool.timing.plateaus import Plateau, curved_noise, find_plateau, local_noise
+from benchtool.timing.survey import Survey, survey_samples
+
+_BINS = 256
+_REFERENCE = 0.2  # lower reference at 20 %, upper at 80 % of the amplitude
+_INWARDS = 0.4  # as far as a wandering state may push a reference level
+
+
+def find_levels(waveform: Waveform, *, level_v: float | None = None) -> Levels:
+    """Find the state levels of a waveform.
+
+    Args:
+        waveform: The trace; missing samples are left out.
+        level_v: Mid reference level in volts where the user sets it; else half way.
+
+    Returns:
+        Levels of kind two-state, flat, noise or node; a node's levels are the ends of its range.
+
+    Raises:
+        MeasurementError: If no sample is present (``no-samples``), or if ``level_v`` lies
+            outside the two states (``level-outside``).
+
+    References:
+        IEEE 181-2011, state levels by the modes of the two halves of the histogram, reference
+        levels in percent of the amplitude (clause 5.2, number from memory).
+    """
+    survey = survey_samples(waveform)
+    if not survey.runs:
+        raise MeasurementError(
+            f"{waveform.channel} holds no sample: all values are missing",
+            hint="Choose another trace with --channel; `benchtool look FILE` lists them.",
+            code="no-samples",
+        )
+    levels = _missing(survey, _decide(waveform, survey))
+    return levels if level_v is None else _at_level(levels, level_v)
+
+
+def _decide(waveform: Waveform, survey: Survey) -> Levels:
+    if survey.greatest == survey.least:
+        return _one_level("flat", survey)
+    if waveform.is_logic:
+        return _logic_levels()
+    values = survey.values
+    levels = _two_levels(survey, values)
+    if is_two_state(survey, values, levels):
+        return levels
+    return _one_level(kind_without_states(survey, values), survey)
+
+
+def _two_levels(survey: Survey, values: FloatArray) -> Levels:
+    modes = _modes(values, survey)
+    spacing = modes[1] - modes[0]
+    resting = [find_plateau(survey.runs, mode, spacing * _REFERENCE) for mode in modes]
+    noise_v = local_noise([piece for plateau in resting for piece in plateau.pieces])
+    states = [
+        _state(plateau, mode, noise_v, survey.step_v, spacing / _BINS)
+        for plateau, mode in zip(resting, modes, strict=True)
+    ]
+    (low_v, u_low_v), (high_v, u_high_v) = states
+    lower, upper = _references(values, low_v, high_v)
+    clipped = _is_clipped(survey)
+    return Levels(
+        kind="two-state",
+        low_v=low_v,
+        high_v=high_v,
+        u_low_v=u_low_v,
+        u_high_v=u_high_v,
+        noise_v=noise_v,
+        lower_v=lower,
+        mid_v=(low_v + high_v) / 2,
+        upper_v=upper,
+        step_v=survey.step_v,
+        clipped=clipped,
+        warnings=_clipping(survey) if clipped else (),
+    )
+
+
+def _state(
+    plateau: Plateau, mode_v: float, noise_v: float, step_v: float, bin_v: float
+) -> tuple[float, float]:
+    """Return a state level and its standard uncertainty.
+
+    The samples around the mode are averaged, since bins and codes resolve too little. Noise
+    dithers the codes: the error of the mean of rounded samples falls with exp(-2π²σ²/LSB²),
+    the first harmonic of the rounding error. What still settles is taken as a rectangle.
+    """
+    values, level = plateau.values, mode_v
+    reach = max(4 * noise_v, 1.01 * step_v, bin_v)
+    near = values
+    for _ in range(3):
+        near = values[np.abs(values - level) <= reach]
+        if near.size == 0:
+            break
+        level = float(np.mean(near))
+    rounding = step_v / math.sqrt(12) * dither(noise_v, step_v)
+    settling = plateau.settling_v / math.sqrt(3)
+    noise = noise_v / math.sqrt(max(1, near.size))
+    return level, math.sqrt(noise**2 + rounding**2 + settling**2)
+
+
+def dither(noise_v: float, step_v: float) -> float:
+    """Return how much of the rounding error of a mean is left under noise, between 0 and 1."""
+    if not step_v:
+        return 0.0
+    own = max(0.0, (noise_v / step_v) ** 2 - 1 / 12)
+    return math.exp(-2 * math.pi**2 * own)
+
+
+def _modes(values: FloatArray, survey: Survey) -> tuple[float, float]:
+    """Return the mode of each half of the histogram between the extremes."""
+    span = survey.greatest - survey.least
+    bins = _BINS
+    if survey.step_v:
+        bins = int(min(bins, max(2, round(span / survey.step_v) + 1)))
+    margin = span / (bins - 1) / 2 if survey.step_v and bins < _BINS else 0.0
+    count, edge = np.histogram(
+        values, bins=bins, range=(survey.least - margin, survey.greatest + margin)
+    )
+    centre = (edge[1:] + edge[:-1]) / 2
+    half = bins // 2
+    low = centre[int(np.argmax(count[:half]))]
+    return float(low), float(centre[half + int(np.argmax(count[half:]))])
+
+
+def _references(values: FloatArray, low_v: float, high_v: float) -> tuple[float, float]:
+    """Return the reference levels, drawn inwards where a state wanders away from its mode."""
+    amplitude = high_v - low_v
+    middle = (low_v + high_v) / 2
+    below, above = values[values < middle], values[values > middle]
+    wander_low = np.quantile(below, 0.9) if below.size else low_v
+    wander_high = np.quantile(above, 0.1) if above.size else high_v
+    lower = low_v + amplitude * float(
+        np.clip((wander_low - low_v) / amplitude + 0.05, _REFERENCE, _INWARDS)
+    )
+    upper = high_v - amplitude * float(
+        np.clip((high_v - wander_high) / amplitude + 0.05, _REFERENCE, _INWARDS)
+    )
+    return lower, upper
+
+
+def _one_level(kind: LevelKind, survey: Survey) -> Levels:
+    values = survey.values
+    noise_v = min(local_noise(survey.runs), curved_noise(survey.runs))
+    if kind == "node":
+        return _node_levels(survey, values, noise_v)
+    mean = float(np.mean(values))
+    u = math.hypot(noise_v / math.sqrt(values.size), survey.step_v / math.sqrt(12))
+    return Levels(
+        kind=kind,
+        low_v=mean,
+        high_v=mean,
+        u_low_v=u,
+        u_high_v=u,
+        noise_v=float(np.std(values)) if kind == "noise" else noise_v,
+        lower_v=mean,
+        mid_v=mean,
+        upper_v=mean,
+        step_v=survey.step_v,
+    )
+
+
+def _node_levels(survey: Survey, values: FloatArray, noise_v: float) -> Levels:
+    low_v, high_v = (float(x) for x in np.quantile(values, [0.005, 0.995]))
+    swing = high_v - low_v
+    u = math.hypot(noise_v, survey.step_v / math.sqrt(12))
+    return Levels(
+        kind="node",
+        low_v=low_v,
+        high_v=high_v,
+        u_low_v=u,
+        u_high_v=u,
+        noise_v=noise_v,
+        lower_v=low_v + 0.3 * swing,
+        mid_v=(low_v + high_v) / 2,
+        upper_v=high_v - 0.3 * swing,
+        step_v=survey.step_v,
+    )
+
+
+def _logic_levels() -> Levels:
+    return Levels(
+        kind="two-state",
+        low_v=0.0,
+        high_v=1.0,
+        u_low_v=0.0,
+        u_high_v=0.0,
+        noise_v=0.0,
+        lower_v=0.4,
+        mid_v=0.5,
+        upper_v=0.6,
+        step_v=1.0,
+    )
+
+
+def _is_clipped(survey: Survey) -> bool:
+    """Tell whether samples sit at an end of the code range; a plain 0/1 trace is not clipped."""
+    if survey.code_low_v is None or survey.code_high_v is None:
+        return False
+    many_codes = survey.greatest - survey.least > LEAST_CODES * survey.step_v
+    return many_codes and (
+        survey.least <= survey.code_low_v or survey.greatest >= survey.code_high_v
+    )
+
+
+def _clipping(survey: Survey) -> tuple[Notice, ...]:
+    text = (
+        f"samples sit at the end of the code range ({survey.least:.4g} V to "
+        f"{survey.greatest:.4g} V): levels may lie beyond"
+    )
+    return (Notice(code="clipped", text=text),)
+
+
+def _missing(survey: Survey, levels: Levels) -> Levels:
+    if not survey.n_missing:
+        return levels
+    text = f"{survey.n_missing} of {survey.n} samples are missing and were left out"
+    notice = Notice(code="missing-samples", text=text)
+    return replace(levels, warnings=(*levels.warnings, notice))
+
+
+def _at_level(levels: Levels, level_v: float) -> Levels:
+    """Move the mid level, and the references in proportion."""
+    if levels.kind != "two-state":
+        return levels
+    if not levels.low_v < level_v < levels.high_v:
+        raise MeasurementError(
+            f"the level {level_v:g} V does not lie between the states {levels.low_v:.4g} V "
+            f"and {levels.high_v:.4g} V",
+            hint="Leave --level out, or give one between the two states.",
+            code="level-outside",
+        )
+    below = (levels.lower_v - levels.low_v) / (levels.mid_v - levels.low_v)
+    above = (levels.high_v - levels.upper_v) / (levels.high_v - levels.mid_v)
+    return replace(
+        levels,
+        lower_v=levels.low_v + below * (level_v - levels.low_v),
+        mid_v=level_v,
+        upper_v=levels.high_v - above * (levels.high_v - level_v),
+    )

@@ -1,0 +1,176 @@
+"""The samples of a waveform, walked block by block in gap-free pieces."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from benchtool.model.capture import FloatArray, Samples, Span, UniformTime, Waveform
+
+Codes = NDArray[Any]
+"""Samples as stored: integer codes, or floating volts."""
+
+Index = NDArray[np.int64]
+
+BRIDGE = 3
+"""Longest row of missing samples that is bridged by a straight line instead of split."""
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class Piece:
+    """Consecutive samples without a hole.
+
+    Attributes:
+        values: Codes or volts as stored, shape (n,).
+        first: Index of the first sample in the record.
+        times_s: Time of each sample where the record is stamped, shape (n,); else None.
+        span: The span that the piece lies in.
+        begins_run: Whether a hole or a new span lies before it.
+    """
+
+    values: Codes
+    first: int
+    times_s: FloatArray | None
+    span: Span
+    begins_run: bool
+
+
+def walk_pieces(waveform: Waveform) -> Iterator[Piece]:
+    """Yield the waveform in order, split at its spans and at rows of missing samples.
+
+    Args:
+        waveform: The trace; up to ``BRIDGE`` missing samples in a row are bridged.
+    """
+    for span in waveform.spans:
+        begins = True
+        for first, values, times_s in _walk_span(waveform, span):
+            for start, stop in _finite_runs(values):
+                yield Piece(
+                    values=values[start:stop],
+                    first=first + start,
+                    times_s=None if times_s is None else times_s[start:stop],
+                    span=span,
+                    begins_run=begins or start > 0,
+                )
+                begins = stop < values.size
+            begins = begins or (values.size > 0 and not _is_finite(values[-1]))
+
+
+def piece_times(waveform: Waveform, piece: Piece) -> FloatArray:
+    """Return the times of a piece's samples in seconds, shape (n,)."""
+    return times_at(waveform, piece, np.arange(piece.values.size))
+
+
+def times_at(waveform: Waveform, piece: Piece, positions: Index) -> FloatArray:
+    """Return the times of some samples of a piece, given by their positions in it."""
+    if piece.times_s is not None:
+        return piece.times_s[positions]
+    if not isinstance(waveform.time, UniformTime):
+        raise TypeError("a stamped waveform has a time for each sample of its pieces")
+    offset = piece.first - piece.span.start
+    return piece.span.start_s + (offset + positions).astype(np.float64) * waveform.time.dt_s
+
+
+def _walk_span(waveform: Waveform, span: Span) -> Iterator[tuple[int, Codes, FloatArray | None]]:
+    """Yield blocks whose holes are bridged and that never end inside a short hole."""
+    held: tuple[Codes, FloatArray | None] | None = None
+    first = span.start
+    for values, times_s in _paired_blocks(waveform, span):
+        joined, joined_s = _join(held, values, times_s)
+        keep = joined.size - _open_hole(joined)
+        held = (joined[keep:], None if joined_s is None else joined_s[keep:])
+        yield first, _bridged(joined[:keep]), None if joined_s is None else joined_s[:keep]
+        first += keep
+    if held is not None and held[0].size:
+        yield first, _bridged(held[0]), held[1]
+
+
+def _join(
+    held: tuple[Codes, FloatArray | None] | None,
+    values: Codes,
+    times_s: FloatArray | None,
+) -> tuple[Codes, FloatArray | None]:
+    if held is None or held[0].size == 0:
+        return values, times_s
+    stamps = None
+    if times_s is not None and held[1] is not None:
+        stamps = np.concatenate([held[1], times_s])
+    return np.concatenate([held[0], values]), stamps
+
+
+def _paired_blocks(waveform: Waveform, span: Span) -> Iterator[tuple[Codes, FloatArray | None]]:
+    values = waveform.samples.blocks(span.start, span.stop)
+    if isinstance(waveform.time, UniformTime):
+        for block in values:
+            yield block, None
+        return
+    stamps = _Reader(waveform.time.stamps, span)
+    for block in values:
+        yield block, stamps.take(block.size)
+
+
+class _Reader:
+    """Takes stamps in whatever lengths the sample blocks have."""
+
+    def __init__(self, stamps: Samples, span: Span) -> None:
+        self._blocks = stamps.blocks(span.start, span.stop)
+        self._rest: FloatArray = np.empty(0)
+
+    def take(self, n: int) -> FloatArray:
+        while self._rest.size < n:
+            block = next(self._blocks).astype(np.float64)
+            self._rest = np.concatenate([self._rest, block]) if self._rest.size else block
+        taken, self._rest = self._rest[:n], self._rest[n:]
+        return taken
+
+
+def _is_finite(value: np.generic) -> bool:
+    return bool(np.isfinite(value))
+
+
+def _has_holes(values: Codes) -> bool:
+    """Tell whether any sample is missing: one pass, since NaN and infinities survive a sum."""
+    if values.dtype.kind != "f" or values.size == 0:
+        return False
+    with np.errstate(all="ignore"):
+        return not _is_finite(values.min() + values.max())
+
+
+def _open_hole(values: Codes) -> int:
+    """Return how many samples at the end to hold back: a short hole and what stands before it."""
+    if values.dtype.kind != "f" or values.size == 0 or _is_finite(values[-1]):
+        return 0
+    tail = np.isfinite(values[-(BRIDGE + 1) :])
+    return int(tail.size - np.flatnonzero(tail)[-1]) if tail.any() else 0
+
+
+def _holes(missing: Codes) -> list[tuple[int, int]]:
+    ends = np.flatnonzero(np.diff(np.concatenate([[False], missing, [False]]).astype(np.int8)))
+    return [(int(a), int(b)) for a, b in ends.reshape(-1, 2)]
+
+
+def _bridged(values: Codes) -> Codes:
+    """Fill short holes between present samples by straight lines."""
+    if not _has_holes(values):
+        return values
+    missing = ~np.isfinite(values)
+    short = [
+        np.arange(a, b) for a, b in _holes(missing) if b - a <= BRIDGE and a > 0 and b < values.size
+    ]
+    if not short:
+        return values
+    where = np.concatenate(short)
+    present = np.flatnonzero(~missing)
+    filled = values.copy()
+    filled[where] = np.interp(where, present, values[present])
+    return filled
+
+
+def _finite_runs(values: Codes) -> list[tuple[int, int]]:
+    if not _has_holes(values):
+        return [(0, values.size)] if values.size else []
+    return _holes(np.isfinite(values))
