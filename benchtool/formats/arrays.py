@@ -6,11 +6,11 @@ import re
 from typing import Any
 
 import numpy as np
-from numpy.typing import NDArray
 
 from benchtool.errors import MalformedCaptureError
 from benchtool.formats.content import Content
 from benchtool.formats.foreign import Arrays, contradiction, foreign_traces, frozen
+from benchtool.model.arrays import NDArray
 from benchtool.model.capture import (
     ArraySamples,
     Capture,

@@ -12,11 +12,10 @@ from dataclasses import dataclass, field
 from itertools import pairwise
 
 import numpy as np
-from numpy.typing import NDArray
 
 from benchtool.errors import MalformedCaptureError
 from benchtool.formats.grid import middle
-from benchtool.model.capture import FloatArray
+from benchtool.model.arrays import FloatArray, NDArray
 
 _EVEN_SHARE = 0.8  # of the first steps must agree for the column to count as even
 _SLACK = 0.01  # of a step: stamps that near to the grid lose nothing by being put on it

@@ -6,7 +6,6 @@ from collections.abc import Mapping
 from typing import Any
 
 import numpy as np
-from numpy.typing import NDArray
 
 from benchtool.errors import AmbiguousStructureError, MalformedCaptureError
 from benchtool.formats.clock import ClockScan, examine_steps
@@ -17,9 +16,9 @@ from benchtool.formats.text.metadata import split_unit
 from benchtool.formats.text.timebase import ShiftedStamps, Timebase, settle_time
 from benchtool.formats.text.timeunit import named_unit
 from benchtool.formats.text.words import SECOND, TimeUnit
+from benchtool.model.arrays import FloatArray, NDArray
 from benchtool.model.capture import (
     ArraySamples,
-    FloatArray,
     ReadOptions,
     Samples,
     Scale,

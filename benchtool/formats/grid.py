@@ -2,13 +2,11 @@
 
 from __future__ import annotations
 
-import math
 from typing import Any, TypeVar
 
 import numpy as np
-from numpy.typing import NDArray
 
-from benchtool.model.capture import FloatArray
+from benchtool.model.arrays import FloatArray, NDArray
 
 _Number = TypeVar("_Number", np.int64, np.float64)
 
@@ -118,8 +116,3 @@ def _refined(levels: FloatArray, step: float) -> float:
         if reach >= offsets[-1]:
             return step
         reach *= 2
-
-
-def decimal_exponent(step: float) -> int:
-    """Return the whole ``k`` for which ``step`` is nearest to ``10**k``."""
-    return round(math.log10(step))

@@ -3,9 +3,9 @@
 from __future__ import annotations
 
 import numpy as np
-from numpy.typing import NDArray
 
-from benchtool.model.capture import FloatArray, LogicTrace, TimeSpan
+from benchtool.model.arrays import FloatArray, NDArray
+from benchtool.model.capture import LogicTrace, TimeSpan
 
 UNKNOWN = -1
 

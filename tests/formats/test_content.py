@@ -11,7 +11,7 @@ from pathlib import Path
 from types import SimpleNamespace
 
 import pytest
-from conftest import Read, codes_of
+from read_back import Read, codes_of
 
 from benchtool.errors import BenchtoolError, InputError, MalformedCaptureError
 from benchtool.formats import read_capture

@@ -8,9 +8,9 @@ from pathlib import Path
 import numpy as np
 import pandas as pd
 import pytest
-from conftest import Read, codes_of, values_of
 from hypothesis import given, settings
 from hypothesis import strategies as st
+from read_back import Read, codes_of, values_of
 
 from benchtool.formats import read_capture
 from benchtool.formats.text import walking

@@ -5,11 +5,16 @@ Each gives one clear error with its code, or a capture with a counted notice.
 
 from __future__ import annotations
 
+import contextlib
 import pickle
+import subprocess
+import sys
 from pathlib import Path
 
 import pytest
-from conftest import codes_of
+from hypothesis import given, settings
+from hypothesis import strategies as st
+from read_back import codes_of
 
 from benchtool.errors import (
     AmbiguousStructureError,
@@ -19,6 +24,7 @@ from benchtool.errors import (
     UnknownStructureError,
 )
 from benchtool.formats import read_capture
+from benchtool.model.capture import Waveform
 
 CORPUS = Path(__file__).parents[1] / "malformed"
 
@@ -119,3 +125,36 @@ def test_damage_is_counted_and_the_rest_is_read(name: str, limit: int) -> None:
         assert trace.samples.size == size  # type: ignore[union-attr]
     elif size:
         assert 50 < trace.samples.size < 400  # type: ignore[union-attr]
+
+
+@given(
+    name=st.sampled_from(sorted([*REFUSED, *READ])),
+    at=st.floats(0, 1),
+    width=st.integers(0, 20),
+    patch=st.binary(max_size=8) | st.sampled_from([b"\n", b",", b";", b"0.5", b'"', b"#", b"NaN"]),
+)
+@settings(max_examples=150, derandomize=True, deadline=None)
+def test_further_damage_is_never_an_internal_fault(
+    tmp_path_factory: pytest.TempPathFactory, name: str, at: float, width: int, patch: bytes
+) -> None:
+    content = bytearray((CORPUS / name).read_bytes())
+    start = int(at * len(content))
+    content[start : start + width] = patch
+    path = tmp_path_factory.mktemp("damaged") / name
+    path.write_bytes(bytes(content))
+    with contextlib.suppress(BenchtoolError):
+        for trace in read_capture(path).traces:
+            if isinstance(trace, Waveform):
+                assert sum(b.size for b in trace.samples.blocks()) == trace.spans[-1].stop
+
+
+def test_reading_text_loads_no_heavy_library() -> None:
+    script = (
+        "import sys; from benchtool.formats import read_capture; read_capture(sys.argv[1]); "
+        "print(*sorted({'numpy.ma', 'pandas', 'scipy', 'csv', 'tempfile'} & set(sys.modules)))"
+    )
+    path = str(CORPUS / "flat_line.csv")
+    run = subprocess.run(
+        [sys.executable, "-c", script, path], capture_output=True, text=True, check=True
+    )
+    assert run.stdout.strip() == ""

@@ -7,7 +7,7 @@ from typing import Any
 
 import numpy as np
 import pytest
-from conftest import Read, codes_of, values_of
+from read_back import Read, codes_of, values_of
 
 from benchtool.errors import AmbiguousStructureError, MalformedCaptureError
 from benchtool.model.capture import LogicTrace, StampedTime, UniformTime, Waveform

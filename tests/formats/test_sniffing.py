@@ -3,9 +3,9 @@
 from __future__ import annotations
 
 import pytest
-from conftest import Read
 from hypothesis import given, settings
 from hypothesis import strategies as st
+from read_back import Read
 
 from benchtool.errors import AmbiguousStructureError
 from benchtool.formats import FORMATS, Claim, Format, reading

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 import pytest
-from conftest import Read, codes_of, values_of
+from read_back import Read, codes_of, values_of
 
 from benchtool.errors import (
     AmbiguousStructureError,

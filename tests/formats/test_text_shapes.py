@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 import pytest
-from conftest import Read, codes_of, point, times_of, values_of
+from read_back import Read, codes_of, point, times_of, values_of
 
 from benchtool.model.capture import LogicTrace, StampedTime, UniformTime, Waveform
 
@@ -184,6 +184,12 @@ def test_zero_and_one_with_a_unit_are_volts(read: Read) -> None:
     trace = read(
         "time_us,OUT (V)\n" + "".join(f"{5 * i},{(i // 7) % 2}\n" for i in range(60))
     ).traces[0]
+    assert isinstance(trace, Waveform)
+    assert not trace.is_logic
+
+
+def test_flat_zero_alone_is_no_logic(read: Read) -> None:
+    trace = read("time_us,OUT\n" + "".join(f"{5 * i},0\n" for i in range(60))).traces[0]
     assert isinstance(trace, Waveform)
     assert not trace.is_logic
 

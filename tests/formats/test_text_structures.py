@@ -7,7 +7,7 @@ from collections.abc import Callable
 from dataclasses import dataclass, field
 
 import pytest
-from conftest import Read, codes_of, point, values_of
+from read_back import Read, codes_of, point, values_of
 
 from benchtool.model.capture import UniformTime, Waveform
 

@@ -6,7 +6,7 @@ import io
 
 import numpy as np
 import pytest
-from conftest import Read, codes_of, point
+from read_back import Read, codes_of, point
 from vcd import VCDWriter
 
 from benchtool.errors import AmbiguousStructureError, MalformedCaptureError
@@ -107,13 +107,20 @@ def test_dump_switched_off_is_a_gap_and_no_edge(read: Read) -> None:
     assert [s.starts_high for s in trace.spans] == [False, False]
 
 
+def test_dump_switched_off_without_values_is_a_gap_too(read: Read) -> None:
+    text = HEAD + "#0\n0!\n#10\n1!\n#20\n$dumpoff\n$end\n#90\n$dumpon\n1!\n$end\n#99\n"
+    trace = logic(read(text, "a.vcd"))
+    assert [s.end_s for s in trace.spans] == pytest.approx([20e-6, 99e-6])
+
+
 def test_scopes_make_dotted_names(read: Read) -> None:
     text = (
         "$timescale 1us $end $scope module top $end $var wire 1 ! OUT $end\n"
-        '$scope module inner $end\n$var reg 1 " OUT $end $upscope $end $upscope $end\n'
-        '$enddefinitions $end\n#0 0! 1"\n#10 1! 0"\n#20\n'
+        '$scope module inner $end\n$var reg 1 " OUT $end $upscope $end\n'
+        "$var reg 1 # LED $end $upscope $end\n"
+        '$enddefinitions $end\n#0 0! 1" 0#\n#10 1! 0" 1#\n#20\n'
     )
-    assert [t.channel for t in read(text, "a.vcd").traces] == ["OUT", "inner.OUT"]
+    assert [t.channel for t in read(text, "a.vcd").traces] == ["OUT", "inner.OUT", "LED"]
 
 
 def test_alias_is_one_trace(read: Read) -> None:

@@ -8,7 +8,7 @@ import wave
 
 import numpy as np
 import pytest
-from conftest import Read, codes_of, values_of
+from read_back import Read, codes_of, values_of
 
 import benchtool.formats.wav.reader as wav_room
 from benchtool.errors import MalformedCaptureError

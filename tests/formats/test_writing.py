@@ -9,7 +9,7 @@ from typing import BinaryIO
 
 import numpy as np
 import pytest
-from conftest import Read, codes_of, times_of, values_of
+from read_back import Read, codes_of, times_of, values_of
 
 from benchtool.errors import InputError, UsageError
 from benchtool.formats import FORMATS, Format, write_npz, write_text, write_vcd

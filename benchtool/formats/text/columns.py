@@ -13,7 +13,7 @@ from benchtool.formats.text.cells import Kind, number
 from benchtool.formats.text.heading import Heading
 from benchtool.formats.text.layout import Layout
 from benchtool.formats.text.metadata import Stated
-from benchtool.model.capture import FloatArray
+from benchtool.model.arrays import FloatArray
 
 ClockKind = Literal["number", "stamp", "index"]
 

@@ -17,7 +17,7 @@ from benchtool.formats.text.cells import number
 from benchtool.formats.text.digits import RowForm, parse_alike
 from benchtool.formats.text.layout import Layout, is_comment
 from benchtool.formats.text.regular import wanted_cells
-from benchtool.model.capture import FloatArray
+from benchtool.model.arrays import FloatArray
 
 _LEAF = 64
 

@@ -15,9 +15,8 @@ from dataclasses import dataclass
 
 import numpy as np
 from numpy.lib.stride_tricks import sliding_window_view
-from numpy.typing import NDArray
 
-from benchtool.model.capture import FloatArray
+from benchtool.model.arrays import FloatArray, NDArray
 
 Bytes = NDArray[np.uint8]
 

@@ -23,7 +23,8 @@ from benchtool.formats.text.transitions import (
     read_transitions,
 )
 from benchtool.formats.text.walking import DataRows
-from benchtool.model.capture import Capture, FloatArray, Origin, ReadOptions, Trace
+from benchtool.model.arrays import FloatArray
+from benchtool.model.capture import Capture, Origin, ReadOptions, Trace
 from benchtool.model.quantity import Notice
 
 

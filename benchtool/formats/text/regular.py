@@ -3,7 +3,8 @@
 from __future__ import annotations
 
 import numpy as np
-from numpy.typing import NDArray
+
+from benchtool.model.arrays import NDArray
 
 _NUMERIC = b"0123456789+-.eE \t\n"
 _NEWLINE = 10

@@ -5,7 +5,6 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
-from numpy.typing import NDArray
 
 from benchtool.errors import MalformedCaptureError
 from benchtool.formats.grid import code_step, value_step
@@ -17,6 +16,7 @@ from benchtool.formats.text.scanning import Range, Scan
 from benchtool.formats.text.timebase import ShiftedStamps, Timebase
 from benchtool.formats.text.walking import DataRows, TextSamples
 from benchtool.formats.text.words import TimeUnit
+from benchtool.model.arrays import NDArray
 from benchtool.model.capture import (
     ArraySamples,
     Samples,

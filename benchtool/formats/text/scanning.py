@@ -10,7 +10,7 @@ from benchtool.errors import MalformedCaptureError
 from benchtool.formats.clock import ClockScan
 from benchtool.formats.text.decoding import Decoded
 from benchtool.formats.text.walking import BlockIndex, DataRows
-from benchtool.model.capture import FloatArray
+from benchtool.model.arrays import FloatArray
 from benchtool.model.quantity import Notice
 
 _MOST_UNREADABLE = 0.2

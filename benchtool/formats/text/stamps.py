@@ -8,9 +8,9 @@ from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 
 import numpy as np
-from numpy.typing import NDArray
 
 from benchtool.formats.text.cells import is_number, plain
+from benchtool.model.arrays import NDArray
 
 IntArray = NDArray[np.int64]
 

@@ -22,11 +22,13 @@ from benchtool.formats.text.readings import find_layout
 from benchtool.formats.text.timeunit import FoundUnit, find_time_unit, stated_interval
 from benchtool.formats.text.walking import DataRows
 from benchtool.formats.text.words import TimeUnit
-from benchtool.model.capture import FloatArray, ReadOptions
+from benchtool.model.arrays import FloatArray
+from benchtool.model.capture import ReadOptions
 from benchtool.model.quantity import Notice
 
 _SIDE_LINES = 200
 _TAIL_ROWS = 64
+_EPOCH_S = (1e9, 4e9)  # 2001-09-09 to 2096-10-02
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -267,11 +269,13 @@ def epoch_ns(structure: Structure) -> int | None:
     if structure.cells[0].start_ns is not None:
         return structure.cells[0].start_ns
     clock, unit = structure.columns.clocks[0], structure.units[0].unit
-    first = next((v for v in clock.column.head if np.isfinite(v)), 0.0)
-    if clock.kind != "number" or not 1e9 <= unit.seconds(float(first)) < 4e9:
+    told = np.flatnonzero(np.isfinite(clock.column.head))
+    if clock.kind != "number" or not told.size:
+        return None
+    if not _EPOCH_S[0] <= unit.seconds(float(clock.column.head[told[0]])) < _EPOCH_S[1]:
         return None
     from decimal import Decimal
 
-    cell = structure.layout.rows[0][clock.column.field]
+    cell = structure.layout.rows[int(told[0])][clock.column.field]
     seconds = Decimal(plain(cell, structure.layout.decimal)) / Decimal(int(unit.over))
     return int(seconds * Decimal(int(unit.times)) * 1_000_000_000)

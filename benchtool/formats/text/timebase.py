@@ -7,11 +7,11 @@ from collections.abc import Iterator
 from dataclasses import dataclass
 
 import numpy as np
-from numpy.typing import NDArray
 
 from benchtool.formats.clock import ClockScan, Piece
 from benchtool.formats.text.words import TimeUnit
-from benchtool.model.capture import AnyArray, FloatArray, Samples, Span, UniformTime
+from benchtool.model.arrays import AnyArray, FloatArray, NDArray
+from benchtool.model.capture import Samples, Span, UniformTime
 from benchtool.model.quantity import Notice
 
 _AGREES = 1e-6  # a stated interval this near to the stamps' own is the one meant

@@ -12,7 +12,8 @@ from benchtool.formats.text import words
 from benchtool.formats.text.columns import ClockColumn
 from benchtool.formats.text.metadata import Metadata, Stated
 from benchtool.formats.text.words import SECOND, TIME_UNITS, TimeUnit
-from benchtool.model.capture import FloatArray, ReadOptions
+from benchtool.model.arrays import FloatArray
+from benchtool.model.capture import ReadOptions
 from benchtool.model.quantity import Notice
 
 _EPOCHS = ((1e9, "s"), (1e12, "ms"), (1e15, "us"), (1e18, "ns"))  # 2001-09-09 to 2096-10-02

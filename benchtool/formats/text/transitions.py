@@ -6,7 +6,6 @@ import math
 from dataclasses import dataclass
 
 import numpy as np
-from numpy.typing import NDArray
 
 from benchtool.errors import MalformedCaptureError
 from benchtool.formats.clock import examine_steps
@@ -14,7 +13,8 @@ from benchtool.formats.grid import distinct, greatest_common_spacing, middle
 from benchtool.formats.logic import UNKNOWN, States, logic_trace
 from benchtool.formats.text.cells import EDGE_WORDS
 from benchtool.formats.text.words import TimeUnit
-from benchtool.model.capture import FloatArray, LogicTrace
+from benchtool.model.arrays import FloatArray, NDArray
+from benchtool.model.capture import LogicTrace
 from benchtool.model.quantity import Notice
 
 _CHANGING = 0.4  # of the rows bring a change in a list of transitions, few in sampled states
@@ -91,6 +91,7 @@ def read_transitions(
     rows = np.isfinite(stamps)
     stamps = stamps[rows]
     _refuse_backwards(stamps, source)
+    resolution = max(resolution, math.ulp(float(np.abs(stamps).max())))
     counts = np.rint(stamps / resolution).astype(np.int64)
     counts -= counts[0]
     changed = _change_rows([channel.values[rows] for channel in channels])

@@ -7,11 +7,10 @@ from collections.abc import Iterator
 from dataclasses import dataclass, field, replace
 
 import numpy as np
-from numpy.typing import NDArray
 
 from benchtool.formats.content import Content
 from benchtool.formats.text.decoding import Decoded, Decoder
-from benchtool.model.capture import AnyArray
+from benchtool.model.arrays import AnyArray, NDArray
 
 BLOCK_BYTES = 1 << 20
 

@@ -12,9 +12,9 @@ import numpy as np
 
 from benchtool.errors import UsageError
 from benchtool.formats.sink import opened
+from benchtool.model.arrays import AnyArray
 from benchtool.model.capture import (
     BLOCK,
-    AnyArray,
     Capture,
     LogicTrace,
     Scale,

@@ -92,7 +92,6 @@ class _Walk:
         self.start: int | None = None
         self._vector: bytes | None = None
         self._comment = False
-        self._off = False
         self._scalars = {code: bits[0] for code, bits in body.bits.items() if len(bits) == 1}
 
     def take(self, words: list[bytes], *, last: bool) -> None:
@@ -154,7 +153,6 @@ class _Walk:
         if word == b"$comment":
             self._comment = True
         elif word == b"$dumpoff":
-            self._off = True
             self._forget()
         elif word not in (b"$end", b"$dumpon", b"$dumpall", b"$dumpvars"):
             raise _DamagedError

@@ -19,10 +19,10 @@ from benchtool.formats.vcd.header import (
     read_header,
     trace_names,
 )
+from benchtool.model.arrays import FloatArray
 from benchtool.model.capture import (
     ArraySamples,
     Capture,
-    FloatArray,
     LogicTrace,
     Origin,
     ReadOptions,

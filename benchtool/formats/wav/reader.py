@@ -7,13 +7,12 @@ from collections.abc import Iterator
 from dataclasses import dataclass
 
 import numpy as np
-from numpy.typing import NDArray
 
 from benchtool.errors import MalformedCaptureError
 from benchtool.formats.content import Content
+from benchtool.model.arrays import AnyArray, NDArray
 from benchtool.model.capture import (
     BLOCK,
-    AnyArray,
     Capture,
     Origin,
     ReadOptions,
