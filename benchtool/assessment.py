@@ -6,15 +6,14 @@ from collections.abc import Mapping
 from dataclasses import replace
 
 from benchtool.circuits import solve, solve_without_design
+from benchtool.circuits.inverse import NOTHING_KNOWN
 from benchtool.errors import SolveError
 from benchtool.judge import judge_stage, name_likely_part, stage_limits, worst
 from benchtool.model.design import Design, Ic, TopologyName
 from benchtool.model.quantity import Measured, Notice
-from benchtool.model.result import StageResult
+from benchtool.model.result import StageResult, VerdictName
 from benchtool.model.timing import Timing
 from benchtool.observation import Settings
-
-NOTHING_KNOWN: Mapping[str, float] = {}
 
 
 def solve_stage(
@@ -47,6 +46,14 @@ def solve_plain(
     timing = result.timing or Timing()
     solution = solve_without_design(timing, topology, ic=ic, supply_v=supply_v, known=known)
     return replace(result, solution=solution, warnings=(*result.warnings, *solution.warnings))
+
+
+def judge_board(
+    results: tuple[StageResult, ...], design: Design, settings: Settings
+) -> tuple[tuple[StageResult, ...], VerdictName | None]:
+    """Judge every stage; return the results and the worst of their verdicts."""
+    judged = tuple(judge_result(item, design, settings) for item in results)
+    return judged, worst(item.verdict for item in judged if item.verdict)
 
 
 def judge_result(result: StageResult, design: Design, settings: Settings) -> StageResult:

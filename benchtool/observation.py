@@ -2,17 +2,17 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterable
 from dataclasses import dataclass, replace
 from itertools import pairwise
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 from benchtool.diagnose import find_findings, flat_length, flat_state
 from benchtool.model.capture import LogicTrace, Trace, UniformTime, Waveform
-from benchtool.model.design import Design
 from benchtool.model.options import MeasureOptions
 from benchtool.model.quantity import Bound, Measured, Notice, Quantity
 from benchtool.model.result import Flat, Gap, IntervalCounts, StageResult, TraceFacts
-from benchtool.model.timing import Edges, Intervals, Jitter, Levels, Timing
+from benchtool.model.timing import Edges, Intervals, Levels, Timing
 from benchtool.targets import Target
 from benchtool.timing import (
     find_edges,
@@ -27,6 +27,9 @@ from benchtool.timing import (
     require_intervals,
     require_states,
 )
+
+if TYPE_CHECKING:
+    from benchtool.model.design import Design
 
 DEFAULT_TIMEBASE_REL = 50e-6
 DEFAULT_JITTER_REL = 1e-3
@@ -68,6 +71,21 @@ def settle(options: MeasureOptions, design: Design | None) -> Settings:
     )
 
 
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class _Seen:
+    """A trace as far as its intervals."""
+
+    levels: Levels | None
+    edges: Edges
+    intervals: Intervals
+
+
+def glance(target: Target, settings: Settings) -> StageResult:
+    """Take one trace as far as its levels and intervals; no figure is made of them."""
+    seen = _see(target, settings)
+    return _result(target, seen, (seen.edges.warnings, seen.intervals.warnings))
+
+
 def observe(
     target: Target, settings: Settings, design: Design | None = None, *, required: bool = False
 ) -> StageResult:
@@ -83,40 +101,46 @@ def observe(
         MeasurementError: Where ``required``: ``flat-trace``, ``noise-only``, ``no-interval`` or
             ``under-sampled``.
     """
-    trace, stage = target.trace, target.stage
-    levels = _levels(target.trace, settings)
+    seen = _see(target, settings)
+    levels, edges, intervals = seen.levels, seen.edges, seen.intervals
     if required and levels is not None:
         require_states(levels)
-    edges = _edges(target, levels)
-    active = settings.options.active or (stage.active if stage else "high")
-    intervals = find_intervals(edges, active=active)
     timing = _timing(target, edges, intervals, settings)
     if required and not isinstance(timing.delay, Measured):  # a delay needs no second edge
         require_intervals(intervals, edges)
     jitter = measure_jitter(intervals, edges)
     supply_v = design.supply.nominal if design else None
-    return StageResult(
-        source=0,
-        stage=stage.name if stage else None,
-        design=stage,
-        trace=_facts(target, edges),
-        levels=levels,
-        intervals=_counts(intervals),
+    topology = target.stage.topology if target.stage else None
+    return replace(
+        _result(target, seen, (x.warnings for x in (edges, intervals, timing, jitter))),
         timing=timing,
         jitter=jitter,
         stability=measure_stability(intervals),
         findings=find_findings(
-            levels,
-            edges,
-            intervals,
-            timing,
-            supply_v=supply_v,
-            topology=stage.topology if stage else None,
+            levels, edges, intervals, timing, supply_v=supply_v, topology=topology
         ),
-        warnings=_warnings(target, edges, intervals, timing, jitter),
-        overview=make_overview(trace, edges, intervals),
-        series=intervals,
         flat=_flat(levels, edges, supply_v),
+    )
+
+
+def _see(target: Target, settings: Settings) -> _Seen:
+    levels = _levels(target.trace, settings)
+    edges = _edges(target, levels)
+    active = settings.options.active or (target.stage.active if target.stage else "high")
+    return _Seen(levels=levels, edges=edges, intervals=find_intervals(edges, active=active))
+
+
+def _result(target: Target, seen: _Seen, warnings: Iterable[tuple[Notice, ...]]) -> StageResult:
+    return StageResult(
+        source=0,
+        stage=target.stage.name if target.stage else None,
+        design=target.stage,
+        trace=_facts(target, seen.edges),
+        levels=seen.levels,
+        intervals=_counts(seen.intervals),
+        warnings=tuple(dict.fromkeys((*target.warnings, *(x for some in warnings for x in some)))),
+        overview=make_overview(target.trace, seen.edges, seen.intervals),
+        series=seen.intervals,
     )
 
 
@@ -169,13 +193,6 @@ def _edges(target: Target, levels: Levels | None) -> Edges:
     if isinstance(target.trace, Waveform) and levels is not None and target.role == "capacitor":
         return find_turning_points(target.trace, levels)
     return find_edges(target.trace, levels)
-
-
-def _warnings(
-    target: Target, edges: Edges, intervals: Intervals, timing: Timing, jitter: Jitter
-) -> tuple[Notice, ...]:
-    found = (edges.warnings, intervals.warnings, timing.warnings, jitter.warnings)
-    return tuple(dict.fromkeys((*target.warnings, *(item for some in found for item in some))))
 
 
 def _counts(intervals: Intervals) -> IntervalCounts:

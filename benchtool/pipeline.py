@@ -4,7 +4,8 @@
 
     format -> Capture -> Levels -> Edges -> Intervals -> Timing -> Solution -> Verdict
 
-``observation`` goes as far as Timing, ``assessment`` from there.
+``observation`` goes as far as Timing, ``assessment`` from there. Measuring needs neither circuits
+nor designs, so these are imported where they are used.
 """
 
 from __future__ import annotations
@@ -12,23 +13,26 @@ from __future__ import annotations
 from collections.abc import Mapping, Sequence
 from dataclasses import replace
 from pathlib import Path
+from types import MappingProxyType
+from typing import TYPE_CHECKING
 
-from benchtool.assessment import NOTHING_KNOWN, judge_result, solve_plain, solve_stage
 from benchtool.comparison import compare_timing
 from benchtool.formats import read_capture
-from benchtool.judge import worst
 from benchtool.model.capture import Capture
-from benchtool.model.design import Band, Design, Ic, TopologyName
 from benchtool.model.options import MeasureOptions
 from benchtool.model.quantity import Notice
 from benchtool.model.result import Analysis, Source, StageResult
 from benchtool.model.timing import Timing
-from benchtool.observation import observe, settle
+from benchtool.observation import glance, observe, settle
 from benchtool.targets import Target, choose_stages, choose_targets
 from benchtool.timing import find_roles
 
+if TYPE_CHECKING:
+    from benchtool.model.design import Design, Ic, TopologyName
+
 FilePath = str | Path
 DEFAULTS = MeasureOptions()
+NOTHING_KNOWN: Mapping[str, float] = MappingProxyType({})
 
 
 def look(sources: Sequence[FilePath], *, options: MeasureOptions = DEFAULTS) -> Analysis:
@@ -36,7 +40,7 @@ def look(sources: Sequence[FilePath], *, options: MeasureOptions = DEFAULTS) -> 
     settings = settle(options, None)
     captures = [read_capture(source, options.read) for source in sources]
     results = tuple(
-        replace(observe(Target(trace=trace, role=role), settings), source=number)
+        replace(glance(Target(trace=trace, role=role), settings), source=number)
         for number, capture in enumerate(captures)
         for trace, role in zip(capture.traces, find_roles(capture), strict=True)
     )
@@ -79,6 +83,8 @@ def solve(
     options: MeasureOptions = DEFAULTS,
 ) -> Analysis:
     """Solve for the products of a designed circuit; ``source`` may be plain figures."""
+    from benchtool.assessment import solve_stage
+
     intent = _settled_design(design, options)
     analysis = _times(source, intent, stage, options)
     return replace(
@@ -97,6 +103,8 @@ def solve_topology(
     options: MeasureOptions = DEFAULTS,
 ) -> Analysis:
     """Solve for the products where there is no design; ``source`` may be plain figures."""
+    from benchtool.assessment import solve_plain
+
     analysis = _times(source, None, None, options)
     solved = solve_plain(analysis.results[0], topology, ic=ic, supply_v=supply_v, known=known)
     return replace(analysis, results=(solved,))
@@ -124,11 +132,12 @@ def analyse(
     Raises:
         BenchtoolError: As the tree in ``benchtool.errors`` says.
     """
+    from benchtool.assessment import judge_board
+
     intent = _settled_design(design, options)
     settings = settle(options, intent)
     analysis = _observe_all(source, intent, stage, options, "judge")
-    results = tuple(judge_result(item, intent, settings) for item in analysis.results)
-    verdict = worst(item.verdict for item in results if item.verdict)
+    results, verdict = judge_board(analysis.results, intent, settings)
     return replace(analysis, results=results, verdict=verdict, rule=intent.rule)
 
 
@@ -181,7 +190,9 @@ def _observe_all(
 
 def _settled_design(design: FilePath | Design, options: MeasureOptions) -> Design:
     """Return the design with probe and temperature as the user overrules them."""
-    if not isinstance(design, Design):
+    from benchtool.model.design import Band
+
+    if isinstance(design, str | Path):
         from benchtool.designs import load_design
 
         design = load_design(design)

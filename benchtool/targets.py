@@ -4,11 +4,14 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from typing import TYPE_CHECKING
 
 from benchtool.errors import UsageError
 from benchtool.model.capture import Capture, Role, Trace
-from benchtool.model.design import Design, Stage
 from benchtool.model.quantity import Notice
+
+if TYPE_CHECKING:
+    from benchtool.model.design import Design, Stage
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)

@@ -52,9 +52,10 @@ def test_only_what_both_have_is_compared() -> None:
     assert [change.quantity for change in compare_timing(now, before)] == ["t_high"]
 
 
-@pytest.fixture
-def captures(tmp_path: Path) -> tuple[Path, Path, Path]:
-    """A board, the same capture again, and the board with C 0.1 % up; fine steps, no jitter."""
+@pytest.fixture(scope="module")
+def captures(tmp_path_factory: pytest.TempPathFactory) -> tuple[Path, Path, Path]:
+    """A board, the same capture again, and the board with C 0.1 % up; fine steps."""
+    tmp_path = tmp_path_factory.mktemp("captures")
     fine: dict[str, Any] = {"dt_s": 0.002, "n_samples": 130_000, "jitter_s": 0.0002}
     was = write_square(tmp_path / "was.csv", **fine)
     same = tmp_path / "same.csv"

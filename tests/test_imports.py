@@ -5,6 +5,7 @@ from __future__ import annotations
 import ast
 import subprocess
 import sys
+from functools import cache
 from pathlib import Path
 
 import pytest
@@ -55,16 +56,22 @@ def room_of(path: Path) -> str:
     return path.relative_to(ROOT).parts[0].removesuffix(".py")
 
 
-def imports_of(path: Path) -> set[str]:
+@cache
+def nodes_of(path: Path) -> tuple[ast.AST, ...]:
+    return tuple(ast.walk(ast.parse(path.read_text(encoding="utf-8"))))
+
+
+@cache
+def imports_of(path: Path) -> frozenset[str]:
     found: set[str] = set()
-    for node in ast.walk(ast.parse(path.read_text())):
+    for node in nodes_of(path):
         if isinstance(node, ast.Import):
             found |= {name.name for name in node.names}
         elif isinstance(node, ast.ImportFrom) and node.module:
             found.add(node.module)
             if node.module == "benchtool":
                 found |= {f"benchtool.{name.name}" for name in node.names}
-    return found
+    return frozenset(found)
 
 
 def rooms_imported(path: Path) -> set[str]:
@@ -90,7 +97,7 @@ def test_pure_rooms_touch_no_files_clock_or_screen(path: Path) -> None:
     outside = {name.split(".")[0] for name in imports_of(path)} & IMPURE_MODULES
     calls = {
         node.func.id
-        for node in ast.walk(ast.parse(path.read_text()))
+        for node in nodes_of(path)
         if isinstance(node, ast.Call) and isinstance(node.func, ast.Name)
     }
     assert not outside
@@ -101,9 +108,7 @@ def test_pure_rooms_touch_no_files_clock_or_screen(path: Path) -> None:
 def test_only_cli_prints_and_exits(path: Path) -> None:
     if room_of(path) in ("cli", "__main__"):
         return
-    names = {
-        node.id for node in ast.walk(ast.parse(path.read_text())) if isinstance(node, ast.Name)
-    }
+    names = {node.id for node in nodes_of(path) if isinstance(node, ast.Name)}
     assert not names & {"print", "exit", "quit", "SystemExit"}
     assert not {name.split(".")[0] for name in imports_of(path)} & {"click"}
 

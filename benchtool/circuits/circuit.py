@@ -7,7 +7,7 @@ from collections.abc import Mapping
 from dataclasses import dataclass, replace
 from typing import Any
 
-from benchtool.model.capture import FloatArray
+from benchtool.model.arrays import FloatArray
 from benchtool.model.design import TopologyName
 
 Value = float | FloatArray

@@ -13,7 +13,7 @@ from benchtool.circuits.observations import Observation, log_covariance, log_tim
 from benchtool.circuits.prediction import predict
 from benchtool.circuits.unknowns import Model
 from benchtool.errors import SolveError
-from benchtool.model.capture import FloatArray
+from benchtool.model.arrays import FloatArray
 from benchtool.model.quantity import Contribution, Measured
 from benchtool.uncertainty import propagate
 

@@ -7,7 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from benchtool.circuits.circuit import Circuit, Value
-from benchtool.model.capture import BoolArray
+from benchtool.model.arrays import BoolArray
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)

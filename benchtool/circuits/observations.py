@@ -9,7 +9,7 @@ import numpy as np
 
 from benchtool.circuits.topologies import Topology
 from benchtool.errors import SolveError
-from benchtool.model.capture import FloatArray
+from benchtool.model.arrays import FloatArray
 from benchtool.model.quantity import Measured
 from benchtool.model.timing import Timing
 from benchtool.uncertainty import propagate

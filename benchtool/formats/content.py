@@ -115,8 +115,8 @@ def input_error(error: OSError, source: str) -> InputError:
 
 
 _REASONS = {
-    errno.ENOENT: ("does not exist", "Check the name and the folder.", "file-missing"),
-    errno.ENOTDIR: ("does not exist", "Check the name and the folder.", "file-missing"),
+    errno.ENOENT: ("does not exist", "Check the name and the folder.", "no-such-file"),
+    errno.ENOTDIR: ("does not exist", "Check the name and the folder.", "no-such-file"),
     errno.EISDIR: (
         "is a directory, not a capture",
         "Name one file, or use `benchtool survey` for a folder.",
@@ -129,7 +129,7 @@ _REASONS = {
         "Name the file that it should lead to.",
         "symlink-loop",
     ),
-    errno.ENAMETOOLONG: ("does not exist: the name is too long", "Check it.", "file-missing"),
+    errno.ENAMETOOLONG: ("does not exist: the name is too long", "Check it.", "no-such-file"),
 }
 
 

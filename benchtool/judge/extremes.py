@@ -10,7 +10,7 @@ import numpy as np
 
 from benchtool.circuits import Coordinate, coordinates
 from benchtool.judge.responses import respond
-from benchtool.model.capture import FloatArray
+from benchtool.model.arrays import FloatArray
 from benchtool.model.design import Design, Stage
 
 TRIALS = 1_000_000

@@ -14,7 +14,7 @@ import numpy as np
 
 from benchtool.circuits import Coordinate, coordinates, find_topology
 from benchtool.judge.responses import respond
-from benchtool.model.capture import FloatArray
+from benchtool.model.arrays import FloatArray
 from benchtool.model.design import Design, Stage
 from benchtool.model.quantity import Measured
 from benchtool.model.timing import Timing

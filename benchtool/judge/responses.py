@@ -8,7 +8,7 @@ from collections.abc import Mapping
 import numpy as np
 
 from benchtool.circuits import Circuit, Value, circuit_at, find_topology, predict
-from benchtool.model.capture import FloatArray
+from benchtool.model.arrays import FloatArray
 from benchtool.model.design import Design, Stage
 
 UNITS: Mapping[str, str] = {

@@ -13,7 +13,7 @@ from benchtool.judge.limits import stage_limits
 from benchtool.judge.observations import JITTER_FIELDS
 from benchtool.judge.responses import UNITS
 from benchtool.judge.rules import accept_bounds, guard_band
-from benchtool.model.capture import FloatArray
+from benchtool.model.arrays import FloatArray
 from benchtool.model.decision import Concern, StageLimit
 from benchtool.model.design import Design, Limit, Stage
 from benchtool.units import format_value

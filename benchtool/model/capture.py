@@ -8,13 +8,9 @@ from dataclasses import dataclass
 from typing import Literal, Protocol
 
 import numpy as np
-from numpy.typing import NDArray
 
+from benchtool.model.arrays import AnyArray, BoolArray, FloatArray
 from benchtool.model.quantity import Notice
-
-FloatArray = NDArray[np.float64]
-BoolArray = NDArray[np.bool_]
-AnyArray = NDArray[np.generic]
 
 BLOCK = 1 << 18
 """Samples in a block: small enough for the cache, large enough for numpy."""

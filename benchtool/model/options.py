@@ -2,11 +2,13 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
-from typing import Literal
+from dataclasses import dataclass, field
+from typing import TYPE_CHECKING, Literal
 
 from benchtool.model.capture import ReadOptions
-from benchtool.model.design import Probe
+
+if TYPE_CHECKING:
+    from benchtool.model.design import Probe
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -29,4 +31,4 @@ class MeasureOptions:
     jitter_rel: float | None = None
     temperature_c: float | None = None
     probe: Probe | None = None
-    read: ReadOptions = ReadOptions()
+    read: ReadOptions = field(default_factory=ReadOptions)

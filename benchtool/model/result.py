@@ -3,12 +3,15 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import Literal
+from typing import TYPE_CHECKING, Literal
 
-from benchtool.model.capture import FloatArray, Role, StructurePoint
-from benchtool.model.design import Design, Rule, Stage
+from benchtool.model.arrays import FloatArray
+from benchtool.model.capture import Role, StructurePoint
 from benchtool.model.quantity import Measured, Notice, Quantity
 from benchtool.model.timing import Dropped, Intervals, Jitter, Levels, StabilityPoint, Timing
+
+if TYPE_CHECKING:
+    from benchtool.model.design import Design, Rule, Stage
 
 VerdictName = Literal[
     "pass", "conditional-pass", "conditional-fail", "undecided", "fail", "unusable"

@@ -5,7 +5,7 @@ from __future__ import annotations
 from dataclasses import dataclass
 from typing import Literal
 
-from benchtool.model.capture import BoolArray, FloatArray
+from benchtool.model.arrays import BoolArray, FloatArray
 from benchtool.model.quantity import Bound, Measured, Notice, Quantity
 
 LevelKind = Literal["two-state", "flat", "noise", "node"]

@@ -10,7 +10,7 @@ import numpy as np
 
 from benchtool.circuits import Circuit, Prediction, find_topology
 from benchtool.errors import UsageError
-from benchtool.model.capture import BoolArray, FloatArray
+from benchtool.model.arrays import BoolArray, FloatArray
 from benchtool.simulation.acquisition import Acquisition
 from benchtool.simulation.legs import QUIET, Leg, Legs, Wave, stack_legs
 from benchtool.simulation.oscillation import (

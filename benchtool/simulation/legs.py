@@ -8,7 +8,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from benchtool.model.capture import BoolArray, FloatArray
+from benchtool.model.arrays import BoolArray, FloatArray
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

@@ -9,7 +9,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from benchtool.circuits import Circuit, States, find_topology, settle_states
-from benchtool.model.capture import BoolArray, FloatArray
+from benchtool.model.arrays import BoolArray, FloatArray
 from benchtool.simulation.legs import Leg, Wave
 
 _STEPS_PER_CYCLE = 40

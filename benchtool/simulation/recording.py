@@ -7,10 +7,9 @@ import math
 import numpy as np
 
 from benchtool.errors import UsageError
+from benchtool.model.arrays import BoolArray, FloatArray
 from benchtool.model.capture import (
     ArraySamples,
-    BoolArray,
-    FloatArray,
     LogicTrace,
     Role,
     Scale,

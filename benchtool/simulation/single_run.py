@@ -9,7 +9,7 @@ import numpy as np
 
 from benchtool.circuits import Prediction
 from benchtool.errors import UsageError
-from benchtool.model.capture import FloatArray
+from benchtool.model.arrays import FloatArray
 from benchtool.simulation.acquisition import Acquisition
 from benchtool.simulation.legs import Leg, Wave
 from benchtool.simulation.oscillation import Scene, draw_stretch, idle_leg, seconds

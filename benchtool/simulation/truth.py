@@ -9,7 +9,7 @@ from dataclasses import dataclass, fields, replace
 from typing import Any
 
 from benchtool.errors import InputError
-from benchtool.model.capture import FloatArray
+from benchtool.model.arrays import FloatArray
 
 SCHEMA = "benchtool-truth/1"
 

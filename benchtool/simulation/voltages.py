@@ -8,7 +8,8 @@ from collections.abc import Callable
 import numpy as np
 
 from benchtool.circuits import Circuit, find_family, find_topology
-from benchtool.model.capture import FloatArray, Role
+from benchtool.model.arrays import FloatArray
+from benchtool.model.capture import Role
 from benchtool.simulation.course import Course
 
 

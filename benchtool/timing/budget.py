@@ -8,10 +8,11 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from benchtool.model.arrays import FloatArray
 from benchtool.model.quantity import Contribution
 from benchtool.model.timing import Edges, Intervals
 from benchtool.timing.grid import phase_lock, width_floor
-from benchtool.timing.noise import fit_noise
+from benchtool.timing.noise import NoiseFit, fit_noise
 from benchtool.timing.scatter import ENOUGH
 
 FEW = 6
@@ -27,8 +28,7 @@ class Setting:
     timebase_rel: float
     jitter_rel: float
     period_s: float | None
-    accumulating_s2: float
-    edge_s2: float
+    noise: NoiseFit | None
 
     @property
     def grid_s(self) -> float:
@@ -41,26 +41,31 @@ def settle_budget(
 ) -> Setting:
     """Return what all figures share: mean period and noise, besides what was assumed."""
     period_s = intervals.period_s
-    step_s = 0.0 if edges.resolved else edges.step_s
-    fit = fit_noise(period_s, step_s) if period_s.size >= ENOUGH else None
     return Setting(
         intervals=intervals,
         edges=edges,
         timebase_rel=timebase_rel,
         jitter_rel=jitter_rel,
         period_s=float(np.mean(period_s)) if period_s.size else None,
-        accumulating_s2=fit.accumulating_s2 if fit else 0.0,
-        edge_s2=max(0.0, fit.edge_s2 - step_s**2 / 12) if fit else 0.0,
+        noise=noise_of(period_s, edges),
     )
+
+
+def noise_of(period_s: FloatArray, edges: Edges) -> NoiseFit | None:
+    """Return the two noises of periods, None where they are too few or do not scatter."""
+    if period_s.size < ENOUGH:
+        return None
+    return fit_noise(period_s, 0.0 if edges.resolved else edges.step_s)
 
 
 def width_grid(setting: Setting, n: int) -> float:
     """Return what the grid gives the mean of n widths, as a standard uncertainty in seconds."""
     edges = setting.edges
     if not edges.resolved:
-        return width_floor(
-            edges.step_s, n, setting.period_s, setting.accumulating_s2, setting.edge_s2
-        )
+        fit = setting.noise
+        wander_s2 = fit.accumulating_s2 if fit else 0.0
+        edge_s2 = max(0.0, fit.edge_s2 - edges.step_s**2 / 12) if fit else 0.0
+        return width_floor(edges.step_s, n, setting.period_s, wander_s2, edge_s2)
     locks = [
         phase_lock(edges.times_s[edges.rising == state], edges.step_s, setting.period_s)
         for state in (True, False)

@@ -8,14 +8,9 @@ from dataclasses import dataclass, field
 from typing import Any
 
 import numpy as np
-from numpy.typing import NDArray
 
-from benchtool.model.capture import (
-    BoolArray,
-    FloatArray,
-    Span,
-    Waveform,
-)
+from benchtool.model.arrays import BoolArray, FloatArray, NDArray
+from benchtool.model.capture import Span, Waveform
 from benchtool.timing.lengths import TransitionLengths
 from benchtool.timing.pieces import Codes, Index, Piece, times_at, walk_pieces
 from benchtool.timing.thresholds import Thresholds

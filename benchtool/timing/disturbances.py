@@ -6,9 +6,8 @@ from dataclasses import dataclass, replace
 from enum import IntEnum
 
 import numpy as np
-from numpy.typing import NDArray
 
-from benchtool.model.capture import BoolArray, FloatArray
+from benchtool.model.arrays import BoolArray, FloatArray, NDArray
 from benchtool.model.timing import Edges
 
 SHORT = 0.15

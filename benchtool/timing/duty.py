@@ -6,7 +6,7 @@ import math
 
 import numpy as np
 
-from benchtool.model.capture import FloatArray
+from benchtool.model.arrays import FloatArray
 from benchtool.model.quantity import Contribution, Measured
 from benchtool.timing.budget import Setting, level_error, usual_edge_noise, width_grid, with_floor
 from benchtool.timing.scatter import mean_of_widths

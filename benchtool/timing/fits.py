@@ -7,7 +7,8 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from benchtool.model.capture import FloatArray, UniformTime, Waveform
+from benchtool.model.arrays import FloatArray
+from benchtool.model.capture import UniformTime, Waveform
 from benchtool.timing.pieces import Codes, Index, walk_pieces
 
 _MOST = 1 << 19  # samples of windows that are fitted at once

@@ -6,7 +6,7 @@ import math
 
 import numpy as np
 
-from benchtool.model.capture import FloatArray
+from benchtool.model.arrays import FloatArray
 
 _HARMONICS = 6
 _MOST_LAGS = 1 << 20

@@ -7,9 +7,8 @@ from itertools import pairwise
 from typing import Literal
 
 import numpy as np
-from numpy.typing import NDArray
 
-from benchtool.model.capture import FloatArray
+from benchtool.model.arrays import FloatArray, NDArray
 from benchtool.model.quantity import Notice
 from benchtool.model.timing import CutInterval, Dropped, Edges, Intervals
 from benchtool.timing.disturbances import (

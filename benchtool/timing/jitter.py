@@ -6,7 +6,7 @@ import math
 
 import numpy as np
 
-from benchtool.model.capture import FloatArray
+from benchtool.model.arrays import FloatArray
 from benchtool.model.quantity import Bound, Contribution, Measured, Notice, Quantity
 from benchtool.model.timing import Edges, Intervals, Jitter
 from benchtool.timing.scatter import lag_one, two_pass_sd

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 
-from benchtool.model.capture import FloatArray
+from benchtool.model.arrays import FloatArray
 from benchtool.model.timing import LevelKind, Levels
 from benchtool.timing.plateaus import curved_noise, local_noise
 from benchtool.timing.survey import Survey
@@ -14,6 +14,7 @@ _LEAST_SNR = 6.0
 _OUTER, _MOST_BETWEEN = 0.2, 0.30
 _INNER, _MOST_STEEP = 0.4, 0.05  # a state may wander far, as long as edges between are steep
 _MOST_TOGGLING = 0.30  # transitions per sample, where two adjacent codes are all there is
+_CLOSE, _LEAST_AT_REST = 0.05, 0.4  # a wave with slow edges still rests in its states
 _LEAST_BARE_V = 1.0  # two values this far apart, of unknown step, are no neighbouring codes
 LEAST_CODES = 3.5
 
@@ -37,8 +38,19 @@ def is_two_state(survey: Survey, values: FloatArray, levels: Levels) -> bool:
         spacing >= _LEAST_SPACING * (survey.greatest - survey.least)
         and spacing >= _LEAST_SNR * levels.noise_v
         and spacing >= LEAST_CODES * survey.step_v
-        and (between <= _MOST_BETWEEN or steep)
+        and (between <= _MOST_BETWEEN or steep or _share_at_rest(values, levels) >= _LEAST_AT_REST)
     )
+
+
+def _share_at_rest(values: FloatArray, levels: Levels) -> float:
+    """Return the share of samples that lie close to a state.
+
+    It is a tenth for a capacitor node and 0.29 for a sine.
+    """
+    spacing = levels.high_v - levels.low_v
+    margin = max(_CLOSE * spacing, min(3 * levels.noise_v, 3 * _CLOSE * spacing))
+    away = np.minimum(np.abs(values - levels.low_v), np.abs(values - levels.high_v))
+    return float(np.mean(away <= margin))
 
 
 def _share_beyond(values: FloatArray, levels: Levels) -> float:

@@ -8,15 +8,23 @@ from dataclasses import replace
 import numpy as np
 
 from benchtool.errors import MeasurementError
-from benchtool.model.capture import FloatArray, Waveform
+from benchtool.model.arrays import FloatArray
+from benchtool.model.capture import Waveform
 from benchtool.model.quantity import Notice
 from benchtool.model.timing import LevelKind, Levels
 from benchtool.timing.kinds import LEAST_CODES, is_two_state, kind_without_states
-from benchtool.timing.plateaus import Plateau, curved_noise, find_plateau, local_noise
+from benchtool.timing.plateaus import (
+    Plateau,
+    curved_noise,
+    find_plateau,
+    local_noise,
+    values_beyond,
+)
 from benchtool.timing.survey import Survey, survey_samples
 
 _BINS = 256
 _REFERENCE = 0.2  # lower reference at 20 %, upper at 80 % of the amplitude
+_REMAINING = 2.0  # of an exponential seen to settle over a seventh of a state, still to come
 _INWARDS = 0.4  # as far as a wandering state may push a reference level
 
 
@@ -71,7 +79,7 @@ def _two_levels(survey: Survey, values: FloatArray) -> Levels:
         for plateau, mode in zip(resting, modes, strict=True)
     ]
     (low_v, u_low_v), (high_v, u_high_v) = states
-    lower, upper = _references(values, low_v, high_v)
+    lower, upper = _references(survey, low_v, high_v, noise_v)
     clipped = _is_clipped(survey)
     return Levels(
         kind="two-state",
@@ -96,9 +104,9 @@ def _state(
 
     The samples around the mode are averaged, since bins and codes resolve too little. Noise
     dithers the codes: the error of the mean of rounded samples falls with exp(-2π²σ²/LSB²),
-    the first harmonic of the rounding error. What still settles is taken as a rectangle.
+    the first harmonic of the rounding error. A state that still settles has more of that to go.
     """
-    values, level = plateau.values, mode_v
+    values, level = plateau.settled, mode_v
     reach = max(4 * noise_v, 1.01 * step_v, bin_v)
     near = values
     for _ in range(3):
@@ -107,7 +115,7 @@ def _state(
             break
         level = float(np.mean(near))
     rounding = step_v / math.sqrt(12) * dither(noise_v, step_v)
-    settling = plateau.settling_v / math.sqrt(3)
+    settling = _REMAINING * plateau.settling_v
     noise = noise_v / math.sqrt(max(1, near.size))
     return level, math.sqrt(noise**2 + rounding**2 + settling**2)
 
@@ -136,18 +144,22 @@ def _modes(values: FloatArray, survey: Survey) -> tuple[float, float]:
     return float(low), float(centre[half + int(np.argmax(count[half:]))])
 
 
-def _references(values: FloatArray, low_v: float, high_v: float) -> tuple[float, float]:
-    """Return the reference levels, drawn inwards where a state wanders away from its mode."""
+def _references(survey: Survey, low_v: float, high_v: float, noise_v: float) -> tuple[float, float]:
+    """Return the reference levels, drawn inwards where a state wanders away from its mode.
+
+    Eight standard deviations of noise stay between them, so that no edge counts twice.
+    """
     amplitude = high_v - low_v
+    most = float(np.clip(0.5 - 4 * noise_v / amplitude, _REFERENCE, _INWARDS))
     middle = (low_v + high_v) / 2
-    below, above = values[values < middle], values[values > middle]
+    below, above = (values_beyond(survey.runs, middle, above=side) for side in (False, True))
     wander_low = np.quantile(below, 0.9) if below.size else low_v
     wander_high = np.quantile(above, 0.1) if above.size else high_v
     lower = low_v + amplitude * float(
-        np.clip((wander_low - low_v) / amplitude + 0.05, _REFERENCE, _INWARDS)
+        np.clip((wander_low - low_v) / amplitude + 0.05, _REFERENCE, most)
     )
     upper = high_v - amplitude * float(
-        np.clip((high_v - wander_high) / amplitude + 0.05, _REFERENCE, _INWARDS)
+        np.clip((high_v - wander_high) / amplitude + 0.05, _REFERENCE, most)
     )
     return lower, upper
 

@@ -8,7 +8,8 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from benchtool.model.capture import FloatArray, Waveform
+from benchtool.model.arrays import FloatArray
+from benchtool.model.capture import Waveform
 from benchtool.model.timing import EdgeRun, Edges, Levels
 from benchtool.timing.crossings import Crossings, find_crossings
 from benchtool.timing.edges import find_edges

@@ -16,7 +16,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from benchtool.model.capture import FloatArray
+from benchtool.model.arrays import FloatArray
 
 _SCORING_STEPS = 100
 _CAUTION = 0.5
@@ -78,7 +78,7 @@ def fit_noise(period_s: FloatArray, step_s: float = 0.0) -> NoiseFit | None:
     n = period_s.size
     mean_s = float(np.mean(period_s))
     wave = _sine_transform(period_s - mean_s)
-    ones = _sine_transform(np.ones(n))
+    ones = _ones_transformed(n)
     spread = 2 - 2 * np.cos(np.pi * np.arange(1, n + 1) / (n + 1))
     least_q2 = step_s**2 / 12
     if not np.mean(wave**2) + least_q2 > (1e-12 * mean_s) ** 2:
@@ -112,6 +112,14 @@ def _sine_transform(values: FloatArray) -> FloatArray:
     odd[n + 2 :] = -values[::-1]
     transform: FloatArray = -np.fft.rfft(odd)[1 : n + 1].imag / np.sqrt(2 * (n + 1))
     return transform
+
+
+def _ones_transformed(n: int) -> FloatArray:
+    """Return the sine transform of n ones: cotangents at odd k, zero at even k."""
+    k = np.arange(1, n + 1)
+    cotangent = 1 / np.tan(np.pi * k / (2 * (n + 1)))
+    ones: FloatArray = np.where(k % 2 == 1, cotangent, 0.0) * np.sqrt(2 / (n + 1))
+    return ones
 
 
 def _variances(

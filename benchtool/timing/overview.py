@@ -5,9 +5,9 @@ from __future__ import annotations
 import math
 
 import numpy as np
-from numpy.typing import NDArray
 
-from benchtool.model.capture import BLOCK, FloatArray, LogicTrace, Trace, UniformTime, Waveform
+from benchtool.model.arrays import FloatArray, NDArray
+from benchtool.model.capture import BLOCK, LogicTrace, Trace, UniformTime, Waveform
 from benchtool.model.result import Overview
 from benchtool.model.timing import Edges, Intervals
 

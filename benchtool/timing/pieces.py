@@ -7,14 +7,17 @@ from dataclasses import dataclass
 from typing import Any
 
 import numpy as np
-from numpy.typing import NDArray
 
-from benchtool.model.capture import FloatArray, Samples, Span, UniformTime, Waveform
+from benchtool.model.arrays import FloatArray, NDArray
+from benchtool.model.capture import Samples, Span, UniformTime, Waveform
 
 Codes = NDArray[Any]
 """Samples as stored: integer codes, or floating volts."""
 
 Index = NDArray[np.int64]
+
+LEAST = 1 << 15
+"""Samples that short blocks are joined to before they are searched."""
 
 BRIDGE = 3
 """Longest row of missing samples that is bridged by a straight line instead of split."""
@@ -76,17 +79,21 @@ def times_at(waveform: Waveform, piece: Piece, positions: Index) -> FloatArray:
 
 
 def _walk_span(waveform: Waveform, span: Span) -> Iterator[tuple[int, Codes, FloatArray | None]]:
-    """Yield blocks whose holes are bridged and that never end inside a short hole."""
+    """Yield blocks whose short holes are bridged, also those that two blocks share."""
     held: tuple[Codes, FloatArray | None] | None = None
+    before: float | None = None
     first = span.start
     for values, times_s in _paired_blocks(waveform, span):
         joined, joined_s = _join(held, values, times_s)
         keep = joined.size - _open_hole(joined)
         held = (joined[keep:], None if joined_s is None else joined_s[keep:])
-        yield first, _bridged(joined[:keep]), None if joined_s is None else joined_s[:keep]
+        if keep:
+            bridged = _bridged(joined[:keep], before)
+            yield first, bridged, None if joined_s is None else joined_s[:keep]
+            before = float(bridged[-1]) if _is_finite(bridged[-1]) else None
         first += keep
     if held is not None and held[0].size:
-        yield first, _bridged(held[0]), held[1]
+        yield first, held[0], held[1]
 
 
 def _join(
@@ -103,7 +110,7 @@ def _join(
 
 
 def _paired_blocks(waveform: Waveform, span: Span) -> Iterator[tuple[Codes, FloatArray | None]]:
-    values = waveform.samples.blocks(span.start, span.stop)
+    values = _long_blocks(waveform.samples, span)
     if isinstance(waveform.time, UniformTime):
         for block in values:
             yield block, None
@@ -111,6 +118,20 @@ def _paired_blocks(waveform: Waveform, span: Span) -> Iterator[tuple[Codes, Floa
     stamps = _Reader(waveform.time.stamps, span)
     for block in values:
         yield block, stamps.take(block.size)
+
+
+def _long_blocks(samples: Samples, span: Span) -> Iterator[Codes]:
+    """Yield the blocks as they come, short ones joined."""
+    held: list[Codes] = []
+    size = 0
+    for block in samples.blocks(span.start, span.stop):
+        held.append(block)
+        size += block.size
+        if size >= LEAST:
+            yield held[0] if len(held) == 1 else np.concatenate(held)
+            held, size = [], 0
+    if held:
+        yield held[0] if len(held) == 1 else np.concatenate(held)
 
 
 class _Reader:
@@ -141,11 +162,12 @@ def _has_holes(values: Codes) -> bool:
 
 
 def _open_hole(values: Codes) -> int:
-    """Return how many samples at the end to hold back: a short hole and what stands before it."""
+    """Return how many missing samples at the end may belong to a hole that is still short."""
     if values.dtype.kind != "f" or values.size == 0 or _is_finite(values[-1]):
         return 0
-    tail = np.isfinite(values[-(BRIDGE + 1) :])
-    return int(tail.size - np.flatnonzero(tail)[-1]) if tail.any() else 0
+    present = np.flatnonzero(np.isfinite(values[-(BRIDGE + 1) :]))
+    missing = min(values.size, BRIDGE + 1) - (int(present[-1]) + 1 if present.size else 0)
+    return missing if missing <= BRIDGE else 0
 
 
 def _holes(missing: Codes) -> list[tuple[int, int]]:
@@ -153,20 +175,29 @@ def _holes(missing: Codes) -> list[tuple[int, int]]:
     return [(int(a), int(b)) for a, b in ends.reshape(-1, 2)]
 
 
-def _bridged(values: Codes) -> Codes:
-    """Fill short holes between present samples by straight lines."""
+def _bridged(values: Codes, before: float | None) -> Codes:
+    """Fill short holes between present samples by straight lines.
+
+    Args:
+        values: Samples.
+        before: The present sample just before them, None where there is none.
+    """
     if not _has_holes(values):
         return values
     missing = ~np.isfinite(values)
     short = [
-        np.arange(a, b) for a, b in _holes(missing) if b - a <= BRIDGE and a > 0 and b < values.size
+        np.arange(a, b)
+        for a, b in _holes(missing)
+        if b - a <= BRIDGE and b < values.size and (a > 0 or before is not None)
     ]
     if not short:
         return values
-    where = np.concatenate(short)
-    present = np.flatnonzero(~missing)
+    where, present = np.concatenate(short), np.flatnonzero(~missing)
+    known = values[present]
+    if before is not None:
+        present, known = np.concatenate([[-1], present]), np.concatenate([[before], known])
     filled = values.copy()
-    filled[where] = np.interp(where, present, values[present])
+    filled[where] = np.interp(where, present, known)
     return filled
 
 

@@ -8,7 +8,8 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from benchtool.model.capture import BoolArray, FloatArray, StampedTime, Waveform
+from benchtool.model.arrays import BoolArray, FloatArray
+from benchtool.model.capture import StampedTime, Waveform
 from benchtool.model.timing import Levels
 from benchtool.timing.crossings import Crossings
 from benchtool.timing.fits import fit_edges

@@ -8,11 +8,11 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from benchtool.model.capture import BoolArray, FloatArray
+from benchtool.model.arrays import BoolArray, FloatArray
 
 _MOST = 1024  # stretches of a state that are looked at, the longest first
-_SETTLING = 0.4  # share at the start of a stretch that is left to settling
-_LEAVING = 0.2  # share at its end that is left to the next edge
+_SETTLING, _LEAVING = 0.4, 0.2  # shares at the ends of a stretch that noise is not taken from
+_SETTLED, _STAYING = 0.6, 0.25  # the same for the level of a state that settles late
 _TRIMMED = 0.05
 _TRIMMED_SD = 0.8711  # sd of a normal deviate whose largest 5 % in size are left out
 
@@ -23,16 +23,14 @@ class Plateau:
 
     Attributes:
         pieces: Stretches of consecutive samples.
-        settling_v: Mean difference between their second and first halves.
+        settled: What of them is left when the state has settled, shape (n,).
+        settling_v: Mean difference between second and first half of the settled parts, 0 where
+            it is no more than noise.
     """
 
     pieces: tuple[FloatArray, ...]
+    settled: FloatArray
     settling_v: float
-
-    @property
-    def values(self) -> FloatArray:
-        """All samples in one row."""
-        return np.concatenate(self.pieces) if self.pieces else np.empty(0)
 
 
 def find_plateau(runs: Sequence[FloatArray], level_v: float, reach_v: float) -> Plateau:
@@ -43,14 +41,59 @@ def find_plateau(runs: Sequence[FloatArray], level_v: float, reach_v: float) -> 
         level_v: The state level.
         reach_v: How far a sample may lie from it.
     """
-    pieces: list[FloatArray] = []
-    for run in runs:
-        for start, stop in _stretches(np.abs(run - level_v) < reach_v):
-            n = stop - start
-            pieces.append(run[start + int(_SETTLING * n) : stop - int(_LEAVING * n)])
-    pieces = sorted(pieces, key=len, reverse=True)[:_MOST]
-    halves = [np.mean(p[len(p) // 2 :]) - np.mean(p[: len(p) // 2]) for p in pieces if len(p) > 3]
-    return Plateau(pieces=tuple(pieces), settling_v=float(np.mean(halves)) if halves else 0.0)
+    whole = _longest(runs, [np.abs(run - level_v) < reach_v for run in runs])
+    settled = [_trimmed(piece, _SETTLING, _STAYING) for piece in whole]
+    if _settling(settled):
+        settled = [_trimmed(piece, _SETTLED, _STAYING) for piece in whole]
+    return Plateau(
+        pieces=tuple(_trimmed(piece, _SETTLING, _LEAVING) for piece in whole),
+        settled=np.concatenate([np.empty(0), *settled]),
+        settling_v=_settling(settled),
+    )
+
+
+def values_beyond(runs: Sequence[FloatArray], middle_v: float, *, above: bool) -> FloatArray:
+    """Return the samples on one side of the middle, those near the crossings left out.
+
+    Args:
+        runs: Contiguous samples in volts.
+        middle_v: The middle between the states.
+        above: Which side.
+    """
+    pieces = _longest(runs, [(run > middle_v) == above for run in runs])
+    inner = [_trimmed(piece, _SETTLING, _LEAVING) for piece in pieces]
+    return np.concatenate([np.empty(0), *inner])
+
+
+def _longest(runs: Sequence[FloatArray], inside: Sequence[BoolArray]) -> list[FloatArray]:
+    most = max(8, _MOST // max(1, len(runs)))
+    whole = [
+        run[start:stop]
+        for run, chosen in zip(runs, inside, strict=True)
+        for start, stop in _stretches(chosen, most)
+    ]
+    return sorted(whole, key=len, reverse=True)[:_MOST]
+
+
+def _trimmed(piece: FloatArray, start: float, end: float) -> FloatArray:
+    n = piece.size
+    return piece[int(start * n) : n - int(end * n)]
+
+
+def _settling(pieces: Sequence[FloatArray]) -> float:
+    """Return how far the state still moves from one half of a settled part to the other."""
+    halves = np.array(
+        [
+            np.mean(piece[piece.size // 2 :]) - np.mean(piece[: piece.size // 2])
+            for piece in pieces
+            if piece.size > 3
+        ]
+    )
+    if halves.size == 0:
+        return 0.0
+    mean = float(np.mean(halves))
+    noise = float(np.std(halves)) / math.sqrt(halves.size) if halves.size > 1 else abs(mean)
+    return mean if abs(mean) > 2 * noise else 0.0
 
 
 def local_noise(pieces: Sequence[FloatArray]) -> float:
@@ -82,9 +125,9 @@ def _trimmed_sd(steps: Sequence[FloatArray]) -> float:
     return float(np.sqrt(np.mean(kept**2))) / _TRIMMED_SD
 
 
-def _stretches(inside: BoolArray) -> list[tuple[int, int]]:
+def _stretches(inside: BoolArray, most: int) -> list[tuple[int, int]]:
     """Return the longest stretches of True, as index ranges."""
     ends = np.flatnonzero(np.diff(np.concatenate([[False], inside, [False]]).astype(np.int8)))
     pairs = ends.reshape(-1, 2)
-    longest = np.argsort(pairs[:, 0] - pairs[:, 1], kind="stable")[:_MOST]
+    longest = np.argsort(pairs[:, 0] - pairs[:, 1], kind="stable")[:most]
     return [(int(a), int(b)) for a, b in pairs[longest]]

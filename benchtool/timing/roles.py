@@ -7,7 +7,8 @@ from dataclasses import dataclass
 import numpy as np
 
 from benchtool.errors import MeasurementError
-from benchtool.model.capture import Capture, FloatArray, LogicTrace, Role, Trace
+from benchtool.model.arrays import FloatArray
+from benchtool.model.capture import Capture, LogicTrace, Role, Trace
 from benchtool.model.timing import Edges, Levels
 from benchtool.timing.edges import find_edges
 from benchtool.timing.levels import find_levels

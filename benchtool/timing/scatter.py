@@ -7,8 +7,8 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from benchtool.model.capture import FloatArray
-from benchtool.timing.noise import NoiseFit, fit_noise
+from benchtool.model.arrays import FloatArray
+from benchtool.timing.noise import NoiseFit
 from benchtool.uncertainty import coverage_factor
 
 ENOUGH = 30
@@ -88,7 +88,9 @@ def mean_of_widths(values: FloatArray, neighbours: float = 0.0) -> Mean:
     return Mean(value=value, u=math.sqrt(variance / n), dof=n - 1, note=f"sd of {n} over √{n}")
 
 
-def mean_of_periods(period_s: FloatArray, n_chains: int, step_s: float) -> Mean:
+def mean_of_periods(
+    period_s: FloatArray, n_chains: int, step_s: float, fit: NoiseFit | None
+) -> Mean:
     """Return the mean period with what its scatter says.
 
     Args:
@@ -96,9 +98,9 @@ def mean_of_periods(period_s: FloatArray, n_chains: int, step_s: float) -> Mean:
         n_chains: Unbroken successions they come in.
         step_s: Grid that the edges lie on, 0 where they are interpolated. Weights gain nothing
             over rounding to a grid unless the edges' own noise spreads it.
+        fit: Their two noises told apart, None where they are too few or do not scatter.
     """
     n = period_s.size
-    fit = fit_noise(period_s, step_s) if n >= ENOUGH else None
     if fit is None:
         return mean_of_widths(period_s)
     length = n // _BATCHES

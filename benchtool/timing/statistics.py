@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import math
 
-from benchtool.model.capture import FloatArray
+from benchtool.model.arrays import FloatArray
 from benchtool.model.quantity import Contribution, Measured
 from benchtool.model.timing import Edges, Intervals, Timing
 from benchtool.timing.bounds import bound_duration, bound_frequency, bound_period
@@ -12,6 +12,7 @@ from benchtool.timing.budget import (
     Setting,
     grid_error,
     level_error,
+    noise_of,
     scale_errors,
     settle_budget,
     single_interval,
@@ -21,8 +22,9 @@ from benchtool.timing.budget import (
 from benchtool.timing.drift import find_drift
 from benchtool.timing.duty import measure_duty
 from benchtool.timing.grid import period_floor
+from benchtool.timing.noise import NoiseFit
 from benchtool.timing.remarks import direction_notice, few_notice
-from benchtool.timing.scatter import ENOUGH, mean_of_periods, mean_of_widths
+from benchtool.timing.scatter import ENOUGH, Mean, mean_of_periods, mean_of_widths
 from benchtool.uncertainty import combine, propagate
 
 TIMEBASE_REL = 50e-6
@@ -53,8 +55,10 @@ def measure_timing(
     setting = settle_budget(intervals, edges, timebase_rel, jitter_rel)
     t_high = _width(setting, intervals.high_s, sign=1.0)
     t_low = _width(setting, intervals.low_s, sign=-1.0)
-    period = _period(setting, intervals.period_s, len(intervals.chains))
-    other = _period(setting, intervals.other_period_s, len(intervals.chains) or 1)
+    n_chains = len(intervals.chains) or 1
+    period = _period(setting, intervals.period_s, n_chains, setting.noise)
+    others_noise = noise_of(intervals.other_period_s, edges)
+    other = _period(setting, intervals.other_period_s, n_chains, others_noise)
     return Timing(
         t_high=t_high or bound_duration(intervals, "high"),
         t_low=t_low or bound_duration(intervals, "low"),
@@ -71,43 +75,37 @@ def _width(setting: Setting, values: FloatArray, *, sign: float) -> Measured | N
     """Return t_high (``sign`` 1) or t_low (-1): a level error moves them opposite ways."""
     if not values.size:
         return None
-    own, value = _type_a(setting, values)
-    floor_s = width_grid(setting, values.size)
+    value, own = float(values[0]), single_interval(setting, float(values[0]))
+    if values.size > 1:
+        value, own = _from_scatter(mean_of_widths(values))
     terms = [
-        *with_floor(setting, own, floor_s, values.size),
+        *with_floor(setting, own, width_grid(setting, values.size), values.size),
         level_error(setting, sign),
         *scale_errors(setting, value),
     ]
     return combine(value, "s", terms, n=values.size)
 
 
-def _period(setting: Setting, values: FloatArray, n_chains: int) -> Measured | None:
+def _period(
+    setting: Setting, values: FloatArray, n_chains: int, noise: NoiseFit | None
+) -> Measured | None:
     if not values.size:
         return None
-    own, value = _type_a(setting, values, n_chains=n_chains)
+    resolved = setting.edges.resolved
+    value, own = float(values[0]), single_interval(setting, float(values[0]))
+    if values.size > 1:
+        step_s = 0.0 if resolved else setting.edges.step_s
+        value, own = _from_scatter(mean_of_periods(values, n_chains, step_s, noise))
     floor_s = period_floor(setting.grid_s, values.size, n_chains)
-    if setting.edges.resolved and values.size >= ENOUGH:
+    if resolved and values.size >= ENOUGH:
         floor_s = 0.0
     terms = with_floor(setting, own, floor_s, values.size)
     return combine(value, "s", [*terms, *scale_errors(setting, value)], n=values.size)
 
 
-def _type_a(
-    setting: Setting, values: FloatArray, *, n_chains: int | None = None
-) -> tuple[list[Contribution], float]:
-    """Return what scatter says, or for a single interval what has to be assumed."""
-    if values.size == 1:
-        value = float(values[0])
-        return single_interval(setting, value), value
-    if n_chains is None:
-        mean = mean_of_widths(values)
-    else:
-        mean = mean_of_periods(values, n_chains, _unresolved_step(setting))
-    return [Contribution(source="scatter", u=mean.u, dof=mean.dof, note=mean.note)], mean.value
-
-
-def _unresolved_step(setting: Setting) -> float:
-    return 0.0 if setting.edges.resolved else setting.edges.step_s
+def _from_scatter(mean: Mean) -> tuple[float, list[Contribution]]:
+    scatter = Contribution(source="scatter", u=mean.u, dof=mean.dof, note=mean.note)
+    return mean.value, [scatter]
 
 
 def _frequency(period: Measured | None) -> Measured | None:

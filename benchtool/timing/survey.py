@@ -6,7 +6,8 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from benchtool.model.capture import AnyArray, FloatArray, Waveform
+from benchtool.model.arrays import AnyArray, FloatArray
+from benchtool.model.capture import Waveform
 
 KEPT = 1 << 20
 """Samples kept for the histogram, as contiguous runs spread over the record."""
@@ -66,6 +67,7 @@ def _collect(
     runs: list[FloatArray] = []
     least, greatest, n_missing, room, number = np.inf, -np.inf, 0, KEPT, 0
     for span in waveform.spans:
+        first_run = len(runs)
         for block in waveform.samples.blocks(span.start, span.stop):
             number += 1
             finite = block
@@ -82,6 +84,8 @@ def _collect(
             if kept.size and room > 0:
                 runs.append(kept[:room])
                 room -= kept.size
+        if share == 1.0 and len(runs) > first_run:
+            runs[first_run:] = [np.concatenate(runs[first_run:])]
     return runs, float(least), float(greatest), n_missing
 
 

@@ -7,7 +7,7 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
-from benchtool.model.capture import FloatArray
+from benchtool.model.arrays import FloatArray
 
 _NEAR, _FAR = 0.15, 0.30  # of the swing below the extreme: two levels on each side
 _FITTED = 0.35  # of the swing: samples this close to the extreme are fitted

@@ -19,11 +19,11 @@ from pathlib import Path
 import numpy as np
 
 sys.path.insert(0, str(Path(__file__).parent.parent / "timing"))
-import timing_waves as waves  # noqa: E402 (found by the line above)
+import timing_waves as waves
 
-from benchtool.model.capture import Trace  # noqa: E402
-from benchtool.timing import find_edges, find_intervals, measure_timing  # noqa: E402
-from benchtool.uncertainty import expanded  # noqa: E402
+from benchtool.model.capture import Trace
+from benchtool.timing import find_edges, find_intervals, measure_timing
+from benchtool.uncertainty import expanded
 
 QUANTITIES = ("t_high", "t_low", "period", "duty")
 NOISES = {  # accumulating and edge noise, relative to the period

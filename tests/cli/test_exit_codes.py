@@ -52,7 +52,7 @@ def test_1_through_a_process_of_its_own(tmp_path: Path, design: Path) -> None:
         (["measure", "GOOD", "--timebase", "60%"], "usage", "--timebase"),
         (["measure", "GOOD", "--probe", "10M"], "usage", "--probe"),
         (["measure", "GOOD", "--active", "up"], "usage", "--active"),
-        (["measure", "NONE"], "file-missing", "does not exist"),
+        (["measure", "NONE"], "no-such-file", "does not exist"),
         (["measure", "FOLDER"], "is-directory", "directory"),
         (["judge", "GOOD", "--design", "NONE"], "no-such-file", "no file"),
         (["measure", "GOOD", "--report", "page.pdf"], "report-suffix", ".pdf"),

@@ -19,6 +19,8 @@ import pytest
 from captures import DESIGN, write_flat, write_square
 from running import Ran, run_apart, run_here
 
+from benchtool.selftest.checks import SelfCheck
+
 Capsys = pytest.CaptureFixture[str]
 Run = Callable[..., Ran]
 
@@ -319,7 +321,6 @@ HIGHS = {"OUT": 14.0, "OUT2": 8.0}
         ["explain", "guard", "band"],
         ["explain"],
         ["simulate", "DESIGN", "--rate", "20Hz", "--periods", "3", "-o", "NEW"],
-        ["selftest", "--captures", "100"],
     ],
     ids=lambda words: " ".join(words[:2]),
 )
@@ -336,6 +337,18 @@ def test_verbs_that_measure_nothing_print_their_rows(
     )
 
 
+@pytest.mark.parametrize(("ok", "code"), [(True, 0), (False, 70)])
+def test_a_self_test_that_does_not_hold_is_no_bad_board(
+    run: Run, monkeypatch: pytest.MonkeyPatch, ok: bool, code: int
+) -> None:
+    check = SelfCheck(name="coverage", found=0.94, limit=0.93, ok=ok, text="94 of 100")
+    monkeypatch.setattr("benchtool.selftest.run_selftest", lambda n_captures: (check,) * n_captures)
+    ran = run("selftest", "--captures", "100")
+    assert ran.code == code
+    assert len(ran.document["rows"]) == 100
+    assert ran.document["rows"][0]["ok"] is ok
+
+
 def test_limits_say_how_much_room_there_is(run: Run, design: Path) -> None:
     rows = run("design", "limits", design, "--expect", "0.1%").document["rows"]
     period = next(row for row in rows if row["quantity"] == "period")
@@ -348,7 +361,7 @@ def test_limits_say_how_much_room_there_is(run: Run, design: Path) -> None:
 @pytest.mark.parametrize(
     ("arguments", "command", "code"),
     [
-        (["look", "none.csv"], "look", "file-missing"),
+        (["look", "none.csv"], "look", "no-such-file"),
         (["judge", "none.csv"], "judge", "usage"),
         (["design", "check", "none.toml"], "design check", "no-such-file"),
         (["parts", "marking", "zzz"], "parts marking", "unit"),

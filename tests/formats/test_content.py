@@ -24,14 +24,14 @@ TEXT = "time_s,OUT (V)\n" + "".join(f"{i * 0.005:.3f},{0.1 * (i % 9):.1f}\n" for
 def test_missing_file(tmp_path: Path) -> None:
     with pytest.raises(InputError, match="does not exist") as caught:
         read_capture(tmp_path / "none.csv")
-    assert caught.value.code == "file-missing"
+    assert caught.value.code == "no-such-file"
 
 
 def test_file_below_a_file(tmp_path: Path) -> None:
     (tmp_path / "a.csv").write_text(TEXT)
     with pytest.raises(InputError) as caught:
         read_capture(tmp_path / "a.csv" / "b.csv")
-    assert caught.value.code == "file-missing"
+    assert caught.value.code == "no-such-file"
 
 
 def test_directory(tmp_path: Path) -> None:

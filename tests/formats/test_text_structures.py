@@ -176,6 +176,11 @@ CASES = {
         + rows(lambda i: f"{i},{VOLTS[i]:.2f},,"),
         codes=("assumed-time-unit",),
     ),
+    "start and increment beyond the columns of the data": Case(
+        "X,OUT,Start,Increment,\nSequence,Volt,-1.0e-4,5.0e-6,\n"
+        + rows(lambda i: f"{i},{VOLTS[i]:.2f},"),
+        codes=("assumed-time-unit", "assumed-volts"),
+    ),
     "increment repeated in every row": Case(
         "Increment (us);OUT (V)\n" + rows(lambda i: f"5,0;{comma(VOLTS[i], 2)}"),
     ),

@@ -54,6 +54,14 @@ def test_ripple_is_no_noise_and_draws_the_references_inwards() -> None:
     assert levels.lower_v < levels.mid_v < levels.upper_v < 5 * 0.7 + 0.2
 
 
+def test_noise_keeps_the_references_of_a_rippling_state_apart() -> None:
+    rng = np.random.default_rng(8)
+    hum = 1 + 0.3 * np.sin(2 * np.pi * 100 * np.arange(7000) * DT_S)
+    levels = find_levels(as_waveform(5 * square() * hum + rng.normal(0, 0.25, 7000), DT_S))
+    assert levels.kind == "two-state"
+    assert levels.upper_v - levels.lower_v >= 7.9 * levels.noise_v
+
+
 def test_codes_of_a_negative_gain_read_in_volts() -> None:
     codes = np.round((5 - 5 * square()) / 0.02).astype(np.int16)
     levels = find_levels(as_waveform(codes, DT_S, scale=Scale(gain=-0.02, offset=5.0)))
@@ -83,7 +91,7 @@ def test_traces_without_two_states_are_told(samples: np.ndarray, kind: str) -> N
 def test_a_state_that_is_seldom_visited_is_not_missed() -> None:
     """The histogram keeps a part of a long record; the extremes come from all of it."""
     samples = np.zeros(3_000_000, np.int8)
-    samples[1_234_567 : 1_234_580] = 100
+    samples[1_234_567:1_234_580] = 100
     levels = find_levels(as_waveform(samples, 1e-6, scale=Scale(gain=0.05)))
     assert (levels.kind, levels.high_v) == ("two-state", pytest.approx(5.0))
 

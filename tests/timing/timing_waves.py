@@ -6,10 +6,9 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from benchtool.model.arrays import AnyArray, FloatArray
 from benchtool.model.capture import (
-    AnyArray,
     ArraySamples,
-    FloatArray,
     LogicTrace,
     Scale,
     Span,
@@ -37,6 +36,7 @@ class Board:
 
     @property
     def truth(self) -> dict[str, float]:
+        """The figures that a measurement should find."""
         high_s = self.period_s * self.duty
         return {
             "t_high": high_s,
@@ -83,7 +83,7 @@ def exponential(times_s: FloatArray, edges: FloatArray, tau_s: float) -> FloatAr
     since_s = times_s - edges[np.maximum(last, 0)]
     left = np.exp(-since_s / tau_s)
     wave: FloatArray = np.where(last % 2 == 0, 1 - left, left)
-    return wave
+    return np.where(last < 0, 0.0, wave)
 
 
 def as_waveform(

@@ -48,6 +48,7 @@ class Metadata:
 
 def read_metadata(lines: Iterable[str], layout: Layout) -> Metadata:
     """Collect what ``lines`` (those around the data, comments among them) say."""
+    lines = tuple(lines)
     rows = [(line, _tokens(line, layout)) for line in lines]
     time_unit = _first(_unit_statement(r, words.is_time_unit_key) for _, r in rows)
     value_unit = _first(_unit_statement(r, words.is_value_unit_key) for _, r in rows)
@@ -58,7 +59,7 @@ def read_metadata(lines: Iterable[str], layout: Layout) -> Metadata:
         for stated in _intervals_in(line, tokens, layout.decimal, unit)
     )
     return Metadata(
-        intervals=intervals,
+        intervals=intervals or tuple(_intervals_below(lines, layout, unit)),
         time_unit=(unit, time_unit[1]) if time_unit and unit else None,
         value_unit=value_unit,
         instrument=_first(_instrument(tokens) for _, tokens in rows),
@@ -100,6 +101,23 @@ def _intervals_in(
             yield Stated(value=value, evidence=evidence, assumed_unit=assumed)
             return
     yield from _bare_rate(line, tokens, decimal)
+
+
+def _intervals_below(
+    lines: Iterable[str], layout: Layout, unit: words.TimeUnit | None
+) -> Iterator[Stated]:
+    """Yield intervals that stand in the line below their name, beyond the columns of the data."""
+    rows = [split_cells(line, layout.delimiter or ",") for line in lines]
+    for names, figures in pairwise(rows):
+        for name, figure in zip(names, figures, strict=False):
+            key, own_unit = split_unit(name)
+            if not words.is_interval_key(key):
+                continue
+            stated = _figure([figure], own_unit, layout.decimal, is_rate=False, unit=unit)
+            if stated is not None:
+                value, assumed = stated
+                evidence = f"{figure!r} below {name!r}"
+                yield Stated(value=value, evidence=evidence, assumed_unit=assumed)
 
 
 def _bare_rate(line: str, tokens: list[str], decimal: str) -> Iterator[Stated]:

@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING, Any, Literal
 
 import numpy as np
 
-from benchtool.model.capture import FloatArray
+from benchtool.model.arrays import FloatArray
 from benchtool.model.quantity import Measured
 from benchtool.model.result import Overview, StageResult
 from benchtool.model.timing import Levels

@@ -7,7 +7,7 @@ from dataclasses import replace
 
 import numpy as np
 
-from benchtool.model.capture import FloatArray
+from benchtool.model.arrays import FloatArray
 from benchtool.model.result import Overview, StageResult
 from benchtool.report.numberline import draw_line
 from benchtool.report.page.geometry import off_line
