@@ -28,7 +28,7 @@ from benchtool.targets import Target, choose_stages, choose_targets
 from benchtool.timing import find_roles
 
 if TYPE_CHECKING:
-    from benchtool.model.design import Design, Ic, TopologyName
+    from benchtool.model.design import Design, Ic, Probe, TopologyName
 
 FilePath = str | Path
 DEFAULTS = MeasureOptions()
@@ -197,11 +197,19 @@ def _settled_design(design: FilePath | Design, options: MeasureOptions) -> Desig
 
         design = load_design(design)
     if options.probe is not None:
-        design = replace(design, probe=options.probe)
+        design = replace(design, probe=_placed(options.probe, design))
     if options.temperature_c is not None:
         at = options.temperature_c
         design = replace(design, temperature=Band(nominal=at, lower=at, upper=at))
     return design
+
+
+def _placed(probe: Probe, design: Design) -> Probe:
+    """Return the probe where the design puts it: an option says what it is, not where."""
+    only_nodes = all(stage.capacitor and not stage.channel for stage in design.stages)
+    if design.probe.at == "capacitor" or only_nodes:
+        return replace(probe, at="capacitor")
+    return probe
 
 
 def _source(capture: Capture) -> Source:

@@ -25,6 +25,7 @@ if TYPE_CHECKING:
 
 _TOPOLOGIES = ("astable", "astable-diode", "output-fed", "one-shot", "schmitt", "power-on")
 _PART_UNITS = {"RA": "ohm", "RB": "ohm", "R": "ohm", "C": "F"}
+_CIRCUIT = ("ic", "supply", "upper_threshold", "lower_threshold")
 _FIGURES = {
     "high": "t_high",
     "low": "t_low",
@@ -75,6 +76,7 @@ def command(
         raise UsageError(
             "solve needs to know the circuit", hint="Give either --design FILE or --topology NAME."
         )
+    _refuse_unused(design, options, given)
     source = _source(file, given)
     try:
         if design is not None:
@@ -88,6 +90,24 @@ def command(
         raise
     output.show(analysis, report=report)
     return OK
+
+
+def _refuse_unused(design: str | None, options: MeasureOptions, given: dict[str, Any]) -> None:
+    """Refuse what would be silently left out: each option belongs to one of the two ways."""
+    if design is not None:
+        unused = [name for name in _CIRCUIT if given[name] is not None]
+        reason = "the design says that already"
+    else:
+        of_design = {
+            "stage": given["stage"],
+            "probe": options.probe,
+            "temperature": options.temperature_c,
+        }
+        unused = [name for name, value in of_design.items() if value is not None]
+        reason = "without a design there is nothing that it could change"
+    if unused:
+        option = unused[0].replace("_", "-")
+        raise UsageError(f"--{option} is of no use here: {reason}", hint=f"Leave out --{option}.")
 
 
 def _source(file: str | None, given: dict[str, Any]) -> str | Timing:

@@ -247,16 +247,23 @@ def test_a_fail_names_limit_percent_U_and_part(
     assert "C 20 % low" in words
 
 
-def test_the_probe_of_the_command_line_overrules_the_design(
-    capsys: Capsys, good: Path, design: Path
+@pytest.mark.parametrize("place", ['channel = "OUT"', 'capacitor = "NODE"'])
+def test_the_probe_of_the_command_line_sits_where_the_design_says(
+    capsys: Capsys, good: Path, design: Path, place: str
 ) -> None:
-    design.write_text(DESIGN + '\n[probe]\nR = "10M"\nat = "capacitor"\n')
-
-    def tau_s(*more: str) -> float:
+    def tau_s(probe: str, *more: str) -> float:
+        table = f"\n[probe]\nR = {probe!r}\nC = '1p'\n" + (
+            "at = 'capacitor'\n" if "OUT" in place else ""
+        )
+        design.write_text(DESIGN.replace('channel = "OUT"', place) + table)
         ran = judge(capsys, good, "--design", design, *more)
         return float(first_result(ran)["circuit"]["tau_charge"]["value"])
 
-    assert tau_s("--probe", "100M 1p") != pytest.approx(tau_s(), rel=1e-2)
+    told = tau_s("10M", "--probe", "5M 1p")
+    if "OUT" in place:
+        assert told == pytest.approx(tau_s("5M"), rel=1e-9)
+    # dln t_high = 1.164·(RA+RB)/Rp = 10 % at 5 MΩ: the parts alone are so much smaller
+    assert told == pytest.approx(20.21 * (1 - 0.10), rel=0.02)
 
 
 def test_a_design_may_judge_jitter(capsys: Capsys, tmp_path: Path, design: Path) -> None:

@@ -114,6 +114,11 @@ def test_figures_are_good_to_their_last_digit_and_it_is_said(capsys: Capsys) -> 
         (["GOOD", "--topology", "astable", "--high", "14s"], "--high"),
         (["GOOD", "--topology", "astable", "--design", "DESIGN"], "--topology"),
         (["GOOD", "--design", "DESIGN", "--stage", "pulse"], "spacing"),
+        (["GOOD", "--design", "DESIGN", "--supply", "5 V"], "--supply"),
+        (["GOOD", "--design", "DESIGN", "--upper-threshold", "60%"], "--upper-threshold"),
+        (["GOOD", "--topology", "astable", "--probe", "10M 12p"], "--probe"),
+        (["GOOD", "--topology", "astable", "--temperature", "40"], "--temperature"),
+        (["GOOD", "--topology", "astable", "--stage", "spacing"], "--stage"),
     ],
 )
 def test_options_that_contradict_or_lack_something(

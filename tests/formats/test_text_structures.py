@@ -179,6 +179,7 @@ CASES = {
     "start and increment beyond the columns of the data": Case(
         "X,OUT,Start,Increment,\nSequence,Volt,-1.0e-4,5.0e-6,\n"
         + rows(lambda i: f"{i},{VOLTS[i]:.2f},"),
+        channels={"column 2": VOLTS},
         codes=("assumed-time-unit", "assumed-volts"),
     ),
     "increment repeated in every row": Case(
