@@ -14,6 +14,7 @@ from scipy import stats
 from benchtool.model.quantity import Contribution, Measured
 from benchtool.uncertainty import (
     chi_square_cdf,
+    chi_square_quantile,
     combine,
     coverage_factor,
     effective_dof,
@@ -279,3 +280,15 @@ def test_an_error_common_to_both_terms_cancels_in_their_difference() -> None:
     assert difference.u == pytest.approx(0.4 * math.sqrt(2), rel=1e-12)
     assert difference.n == 7
     assert [term.source for term in difference.budget] == ["scatter", "scatter"]
+
+
+@pytest.mark.parametrize("dof", [1, 2, 5, 31, 999, 20_000])
+@pytest.mark.parametrize("p", [1e-6, 0.025, 0.5, 0.975, 0.999])
+def test_chi_square_quantile_agrees_with_scipy(p: float, dof: int) -> None:
+    """To 1e-8 of itself: what is left of the closed form's digits."""
+    assert chi_square_quantile(p, dof) == pytest.approx(stats.chi2.ppf(p, dof), rel=1e-8)
+
+
+def test_chi_square_quantile_refuses_what_is_no_probability() -> None:
+    with pytest.raises(ValueError, match="between 0 and 1"):
+        chi_square_quantile(1.0, 3)

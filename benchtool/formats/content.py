@@ -119,7 +119,7 @@ _REASONS = {
     errno.ENOTDIR: ("does not exist", "Check the name and the folder.", "no-such-file"),
     errno.EISDIR: (
         "is a directory, not a capture",
-        "Name one file, or use `benchtool survey` for a folder.",
+        "Name one file of it; a shell loop takes them all.",
         "is-directory",
     ),
     errno.EACCES: ("may not be read", "Ask for read permission on the file.", "no-permission"),

@@ -86,7 +86,7 @@ def _no_interval(intervals: Intervals, edges: Edges) -> MeasurementError:
     bound = bound_period(intervals)
     at_least = bound.at_least if bound and bound.at_least else span_s
     return MeasurementError(
-        f"no interval is complete: {edges.times_s.size} edges in {span_s:.4g} s, so a period "
+        f"no interval is complete: edges seen in {span_s:.4g} s: {edges.times_s.size}; a period "
         f"lasts at least {at_least:.4g} s",
         hint=f"Record at least {3 * at_least:.3g} s without a gap, better ten periods.",
         code="no-interval",

@@ -11,7 +11,7 @@ import numpy as np
 from benchtool.model.arrays import FloatArray
 from benchtool.model.quantity import Contribution
 from benchtool.model.timing import Edges, Intervals
-from benchtool.timing.grid import phase_lock, width_floor
+from benchtool.timing.grid import blurred_width_floor, phase_lock, width_floor
 from benchtool.timing.noise import NoiseFit, fit_noise
 from benchtool.timing.scatter import ENOUGH
 
@@ -65,7 +65,9 @@ def width_grid(setting: Setting, n: int) -> float:
         fit = setting.noise
         wander_s2 = fit.accumulating_s2 if fit else 0.0
         edge_s2 = max(0.0, fit.edge_s2 - edges.step_s**2 / 12) if fit else 0.0
-        return width_floor(edges.step_s, n, setting.period_s, wander_s2, edge_s2)
+        if setting.period_s is None:
+            return width_floor(edges.step_s, n, None)
+        return blurred_width_floor(edges.step_s, n, setting.period_s, wander_s2, edge_s2)
     locks = [
         phase_lock(edges.times_s[edges.rising == state], edges.step_s, setting.period_s)
         for state in (True, False)

@@ -38,10 +38,15 @@ def _scatter(
 
 
 def _shared_edge_variance(high_s: FloatArray, low_s: FloatArray) -> float:
-    """Return the variance of an edge's noise, which neighbours share with opposite signs."""
+    """Return the variance of an edge's noise, which neighbours share with opposite signs.
+
+    Taking out the means takes (2n - 1)/n² of it along, which is put back.
+    """
+    n = high_s.size
     high, low = high_s - np.mean(high_s), low_s - np.mean(low_s)
     shared = float(high @ low) + float(low[:-1] @ high[1:])
-    return max(0.0, -shared / (2 * high.size - 2))
+    left = 1 - (2 * n - 1) / n**2
+    return max(0.0, -shared / ((2 * n - 1) * left))
 
 
 def _single(setting: Setting, duty: float, whole_s: float) -> list[Contribution]:

@@ -10,6 +10,8 @@ from benchtool.model.arrays import FloatArray
 
 _HARMONICS = 6
 _MOST_LAGS = 1 << 20
+_PERIOD_ERROR = tuple((away / 3, (3 - abs(away)) / 9) for away in range(-2, 3))
+"""A triangle of half-width 1 in five points: their places and shares."""
 
 
 def period_floor(step_s: float, n: int, n_chains: int = 1) -> float:
@@ -47,6 +49,28 @@ def width_floor(
     )
     total = 1 / (6 * n) + 2 / n**2 * float(np.sum((n - m) * related))
     return step_s * math.sqrt(max(total, 1 / (6 * n * n)))
+
+
+def blurred_width_floor(
+    step_s: float, n: int, period_s: float, jitter_s2: float = 0.0, edge_s2: float = 0.0
+) -> float:
+    """Return ``width_floor`` where the period itself was measured on the grid, in seconds.
+
+    Its error, as large as Ts/n, hides whether the edges lie in step with the grid, where u is far
+    larger: the mean square over a triangle of that half-width.
+
+    Args:
+        step_s: As for ``width_floor``, and so are the others.
+        n: Number of widths.
+        period_s: Their spacing as measured.
+        jitter_s2: Variance a period of accumulating noise.
+        edge_s2: Variance of an edge's own noise.
+    """
+    squares = (
+        share * width_floor(step_s, n, period_s + away * step_s / n, jitter_s2, edge_s2) ** 2
+        for away, share in _PERIOD_ERROR
+    )
+    return math.sqrt(math.fsum(squares))
 
 
 def rounding_covariance(cycles: FloatArray, variance: FloatArray) -> FloatArray:

@@ -24,6 +24,7 @@ from benchtool.timing.survey import Survey, survey_samples
 
 _BINS = 256
 _REFERENCE = 0.2  # lower reference at 20 %, upper at 80 % of the amplitude
+_INDEPENDENT = 0.7  # of the samples of a state: the same noise chose where its stretches end
 _REMAINING = 2.0  # of an exponential seen to settle over a seventh of a state, still to come
 _INWARDS = 0.4  # as far as a wandering state may push a reference level
 
@@ -116,7 +117,7 @@ def _state(
         level = float(np.mean(near))
     rounding = step_v / math.sqrt(12) * dither(noise_v, step_v)
     settling = _REMAINING * plateau.settling_v
-    noise = noise_v / math.sqrt(max(1, near.size))
+    noise = noise_v / math.sqrt(max(1.0, _INDEPENDENT * near.size))
     return level, math.sqrt(noise**2 + rounding**2 + settling**2)
 
 

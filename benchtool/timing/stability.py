@@ -3,17 +3,14 @@
 from __future__ import annotations
 
 import math
-from functools import lru_cache
-from statistics import NormalDist
 
 import numpy as np
 
 from benchtool.model.arrays import FloatArray
 from benchtool.model.timing import Intervals, StabilityPoint
-from benchtool.uncertainty import COVERAGE, chi_square_cdf, whole_dof
+from benchtool.uncertainty import COVERAGE, chi_square_quantile, whole_dof
 
 _LEAST = 3
-_MANY = 100
 
 
 def overlapping_adev(phase: FloatArray, tau0: float, m: int) -> float:
@@ -73,7 +70,7 @@ def measure_stability(intervals: Intervals) -> tuple[StabilityPoint, ...]:
 
 def _point(phase: FloatArray, tau0: float, m: int) -> StabilityPoint:
     adev, edf = overlapping_adev(phase, tau0, m), degrees_of_freedom(phase.size, m)
-    high, low = (_chi_square(p, edf) for p in ((1 - COVERAGE) / 2, (1 + COVERAGE) / 2))
+    high, low = (chi_square_quantile(p, edf) for p in ((1 - COVERAGE) / 2, (1 + COVERAGE) / 2))
     return StabilityPoint(
         tau_s=m * tau0,
         adev=adev,
@@ -81,23 +78,3 @@ def _point(phase: FloatArray, tau0: float, m: int) -> StabilityPoint:
         upper=adev * math.sqrt(whole_dof(edf) / high),
         n=phase.size - 2 * m,
     )
-
-
-@lru_cache(maxsize=256)
-def _chi_square(p: float, dof: float) -> float:
-    """Return the quantile of chi-square, by bisection, or for many degrees of freedom directly.
-
-    References:
-        Abramowitz & Stegun 26.4.17 (Wilson and Hilferty), good to 1e-4 from 100 on.
-    """
-    if dof > _MANY:
-        share = 2 / (9 * dof)
-        return dof * (1 - share + NormalDist().inv_cdf(p) * math.sqrt(share)) ** 3
-    low, high = 0.0, 2 * dof + 20
-    for _ in range(60):
-        middle = (low + high) / 2
-        if chi_square_cdf(middle, dof) < p:
-            low = middle
-        else:
-            high = middle
-    return (low + high) / 2

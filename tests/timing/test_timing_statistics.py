@@ -1,5 +1,7 @@
 from __future__ import annotations
 
+import math
+
 import numpy as np
 import pytest
 from timing_waves import Board, as_waveform, cut_record, edge_times, transitions, trapezoid
@@ -16,7 +18,7 @@ from benchtool.timing import (
     require_intervals,
     require_states,
 )
-from benchtool.timing.grid import period_floor, width_floor
+from benchtool.timing.grid import blurred_width_floor, period_floor, width_floor
 from benchtool.timing.noise import fit_noise
 from benchtool.uncertainty import expanded, propagate
 
@@ -189,14 +191,15 @@ def test_steady_noise_is_no_drift() -> None:
 
 
 def test_duty_of_few_cycles_knows_that_neighbours_share_edges() -> None:
-    """Each cycle ends with the edge that the next begins with: errors σ√(2/n)/T, not σ√(1.5/n)/T."""
+    """A cycle ends with the edge that the next begins with: errors σ√(2/n), not σ√(1.5/n)."""
     n, sigma, found = 8, 1e-3, []
     board = Board(period_s=1.0, duty=0.5, edge_noise=sigma)
     for seed in range(400):
         times = edge_times(board, n, np.random.default_rng(seed)) + 1
         found.append(measured(timing_of(edges_at(times, end_s=10.0)).duty).u ** 2)
-    # 400 variances of 7 degrees of freedom: 2.7 %; that a covariance cannot be negative adds some
-    assert 0.93 < np.mean(found) / (2 * sigma**2 / n) < 1.25
+    # 400 variances of 7 degrees of freedom scatter by 2.7 %, and the sd of cycles that are alike
+    # is 3 % low; a covariance that cannot be negative adds some. Unaware of it: 0.72
+    assert 0.85 < np.mean(found) / (2 * sigma**2 / n) < 1.25
 
 
 def test_directions_that_differ_are_told() -> None:
@@ -273,3 +276,12 @@ def test_ticks_of_a_logic_capture_bound_the_error() -> None:
     timing = timing_of(find_edges(trace), timebase_rel=0.0)
     assert abs(measured(timing.period).value - board.period_s) <= expanded(measured(timing.period))
     assert expanded(measured(timing.period)) < 1e-3
+
+
+def test_a_measured_period_does_not_promise_edges_out_of_step_with_the_grid() -> None:
+    """30 widths whose edges stay in step carry the whole rounding error of one, Ts/√6."""
+    in_step = width_floor(1.0, 30, 200.0)
+    out_of_step = width_floor(1.0, 30, 200.0 + 1 / 30)
+    assert in_step == pytest.approx(1 / math.sqrt(6), rel=1e-9)
+    assert out_of_step < 0.05 * in_step
+    assert blurred_width_floor(1.0, 30, 200.0 + 1 / 30) > 0.3 * in_step
