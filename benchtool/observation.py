@@ -10,7 +10,7 @@ from typing import TYPE_CHECKING, Any
 from benchtool.diagnose import find_findings, flat_length, flat_state
 from benchtool.model.capture import LogicTrace, Trace, UniformTime, Waveform
 from benchtool.model.options import MeasureOptions
-from benchtool.model.quantity import Bound, Measured, Notice, Quantity
+from benchtool.model.quantity import Measured, Notice, Quantity
 from benchtool.model.result import Flat, Gap, IntervalCounts, StageResult, TraceFacts
 from benchtool.model.timing import Edges, Intervals, Levels, Timing
 from benchtool.targets import Target
@@ -124,9 +124,17 @@ def observe(
 
 
 def _see(target: Target, settings: Settings) -> _Seen:
-    levels = _levels(target.trace, settings)
-    edges = _edges(target, levels)
-    active = settings.options.active or (target.stage.active if target.stage else "high")
+    """Take a trace as far as its intervals, with what is known of it from finding its role."""
+    shape, active = target.shape, settings.options.active
+    known = shape.levels is not None and settings.options.level_v is None
+    levels = shape.levels if known else _levels(shape.trace, settings)
+    if levels is not None and target.role == "capacitor" and isinstance(shape.trace, Waveform):
+        edges = find_turning_points(shape.trace, levels)
+    elif shape.edges is not None and levels is shape.levels:
+        edges = shape.edges
+    else:
+        edges = find_edges(shape.trace, levels)
+    active = active or (target.stage.active if target.stage else "high")
     return _Seen(levels=levels, edges=edges, intervals=find_intervals(edges, active=active))
 
 
@@ -139,7 +147,7 @@ def _result(target: Target, seen: _Seen, warnings: Iterable[tuple[Notice, ...]])
         levels=seen.levels,
         intervals=_counts(seen.intervals),
         warnings=tuple(dict.fromkeys((*target.warnings, *(x for some in warnings for x in some)))),
-        overview=make_overview(target.trace, seen.edges, seen.intervals),
+        overview=make_overview(target.shape.trace, seen.edges, seen.intervals),
         series=seen.intervals,
     )
 
@@ -161,7 +169,7 @@ def _power_on_delay(
 ) -> dict[str, Any]:
     """Return the delay after the supply came up; without its trace, a single whole high time."""
     if target.supply is not None:
-        return {"delay": _delay(target.supply, edges, settings)}
+        return {"delay": _delay(target.supply, edges, settings, powers=True)}
     if not isinstance(timing.t_high, Measured):
         return {}
     notice = Notice(
@@ -171,28 +179,22 @@ def _power_on_delay(
     return {"delay": timing.t_high, "warnings": (*timing.warnings, notice)}
 
 
-def _delay(start: Trace, answer: Edges, settings: Settings) -> Quantity | None:
-    """Return the time from a trace's first edge to the answer, a bound where none comes."""
-    begun = find_edges(start, _levels(start, settings))
-    found = measure_delay(
-        begun, answer, timebase_rel=settings.timebase_rel, jitter_rel=settings.jitter_rel
+def _delay(
+    start: Trace, answer: Edges, settings: Settings, *, powers: bool = False
+) -> Quantity | None:
+    return measure_delay(
+        find_edges(start, _levels(start, settings)),
+        answer,
+        timebase_rel=settings.timebase_rel,
+        jitter_rel=settings.jitter_rel,
+        powers=powers,
     )
-    if found is not None or not begun.times_s.size or not answer.runs:
-        return found
-    waited_s = answer.runs[-1].end_s - float(begun.times_s[0])
-    return Bound(unit="s", at_least=waited_s) if waited_s > 0 else None
 
 
 def _levels(trace: Trace, settings: Settings) -> Levels | None:
     if isinstance(trace, LogicTrace):
         return None
     return find_levels(trace, level_v=settings.options.level_v)
-
-
-def _edges(target: Target, levels: Levels | None) -> Edges:
-    if isinstance(target.trace, Waveform) and levels is not None and target.role == "capacitor":
-        return find_turning_points(target.trace, levels)
-    return find_edges(target.trace, levels)
 
 
 def _counts(intervals: Intervals) -> IntervalCounts:
@@ -212,7 +214,7 @@ def _flat(levels: Levels | None, edges: Edges, supply_v: float | None) -> Flat |
 
 
 def _facts(target: Target, edges: Edges) -> TraceFacts:
-    trace = target.trace
+    trace = target.shape.trace
     interval_s = _interval(trace)
     return TraceFacts(
         channel=trace.channel,

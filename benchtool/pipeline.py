@@ -24,8 +24,7 @@ from benchtool.model.quantity import Notice
 from benchtool.model.result import Analysis, Source, StageResult
 from benchtool.model.timing import Timing
 from benchtool.observation import glance, observe, settle
-from benchtool.targets import Target, choose_stages, choose_targets
-from benchtool.timing import find_roles
+from benchtool.targets import Target, choose_stages, choose_targets, line_up
 
 if TYPE_CHECKING:
     from benchtool.model.design import Design, Ic, Probe, TopologyName
@@ -40,9 +39,9 @@ def look(sources: Sequence[FilePath], *, options: MeasureOptions = DEFAULTS) -> 
     settings = settle(options, None)
     captures = [read_capture(source, options.read) for source in sources]
     results = tuple(
-        replace(glance(Target(trace=trace, role=role), settings), source=number)
-        for number, capture in enumerate(captures)
-        for trace, role in zip(capture.traces, find_roles(capture), strict=True)
+        replace(glance(Target(shape=shape, role=role), settings), source=number)
+        for number, lineup in enumerate(map(line_up, captures))
+        for shape, role in zip(lineup.shapes, lineup.roles, strict=True)
     )
     return Analysis(
         command="look",
@@ -173,7 +172,7 @@ def _observe_all(
     capture = read_capture(source, options.read)
     settings = settle(options, design)
     targets = choose_targets(
-        capture, find_roles(capture), channel=options.read.channel, design=design, stage=stage
+        line_up(capture), channel=options.read.channel, design=design, stage=stage
     )
     return Analysis(
         command=command,

@@ -9,16 +9,41 @@ from typing import TYPE_CHECKING
 from benchtool.errors import UsageError
 from benchtool.model.capture import Capture, Role, Trace
 from benchtool.model.quantity import Notice
+from benchtool.timing import Shape, find_roles, find_shapes
 
 if TYPE_CHECKING:
     from benchtool.model.design import Design, Stage
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
-class Target:
-    """A trace to measure, the stage it belongs to, and the traces that go with it."""
+class Lineup:
+    """A capture with the shape and the role of each of its traces, in order."""
 
-    trace: Trace
+    capture: Capture
+    shapes: tuple[Shape, ...]
+    roles: tuple[Role, ...]
+
+
+def line_up(capture: Capture) -> Lineup:
+    """Look at every trace of a capture once, and tell what each is."""
+    shapes = find_shapes(capture)
+    return Lineup(capture=capture, shapes=shapes, roles=find_roles(shapes))
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class Target:
+    """A trace to measure, the stage it belongs to, and the traces that go with it.
+
+    Attributes:
+        shape: The trace with what is known of it from finding its role.
+        role: Its role.
+        stage: The stage, where there is a design.
+        trigger: The trace that triggers it, where there is one.
+        supply: The trace of the supply, where there is one.
+        warnings: What was assumed in choosing it.
+    """
+
+    shape: Shape
     role: Role
     stage: Stage | None = None
     trigger: Trace | None = None
@@ -27,8 +52,7 @@ class Target:
 
 
 def choose_targets(
-    capture: Capture,
-    roles: Sequence[Role],
+    lineup: Lineup,
     *,
     channel: str | None = None,
     design: Design | None = None,
@@ -37,8 +61,7 @@ def choose_targets(
     """Return what is to be measured: a trace for each stage, or the one trace without a design.
 
     Args:
-        capture: The capture.
-        roles: Role of each of its traces.
+        lineup: The capture, its traces and their roles.
         channel: Name or number, from 1, of the trace that the user chose.
         design: The design, where there is one.
         stage: Name of the one stage to measure.
@@ -48,16 +71,14 @@ def choose_targets(
             (``choose-channel``, ``no-such-channel``, ``no-such-stage``).
     """
     if design is None:
-        return (_target(capture, roles, _pick(capture, roles, channel)),)
+        return (_target(lineup, _pick(lineup, channel)),)
     stages = choose_stages(design, stage)
     if channel is not None and len(stages) > 1:
         raise UsageError(
             f"--channel names one trace and {design.source} has {len(stages)} stages",
             hint=f"Add --stage: {', '.join(item.name for item in stages)}.",
         )
-    return tuple(
-        _stage_target(capture, roles, item, channel, alone=len(stages) == 1) for item in stages
-    )
+    return tuple(_stage_target(lineup, item, channel, alone=len(stages) == 1) for item in stages)
 
 
 def find_channel(capture: Capture, name: str) -> int:
@@ -98,28 +119,26 @@ def choose_stages(design: Design, name: str | None) -> tuple[Stage, ...]:
     return chosen
 
 
-def _stage_target(
-    capture: Capture, roles: Sequence[Role], stage: Stage, channel: str | None, *, alone: bool
-) -> Target:
-    wanted = channel if channel is not None else _named(capture, stage)
+def _stage_target(lineup: Lineup, stage: Stage, channel: str | None, *, alone: bool) -> Target:
+    wanted = channel if channel is not None else _named(lineup.capture, stage)
     try:
         index = (
-            _pick(capture, roles, wanted)
+            _pick(lineup, wanted)
             if wanted is not None or alone
-            else _several(capture, stage)
+            else _several(lineup.capture, stage)
         )
-        return _target(capture, roles, index, stage)
+        return _target(lineup, index, stage)
     except UsageError:
         # a lone output is taken whatever the instrument called it, but never without a word
-        if channel is not None or not alone or not _lone_output(roles):
+        if channel is not None or not alone or not _lone_output(lineup.roles):
             raise
-    index = _pick(capture, roles, None)
-    found = capture.traces[index].channel
+    index = _pick(lineup, None)
+    found = lineup.capture.traces[index].channel
     notice = Notice(
         code="assumed-channel",
         text=f"the design names {wanted!r}, the capture does not; {found!r} was measured",
     )
-    return _target(capture, roles, index, stage, (notice,))
+    return _target(lineup, index, stage, (notice,))
 
 
 def _named(capture: Capture, stage: Stage) -> str | None:
@@ -142,51 +161,52 @@ def _lone_output(roles: Sequence[Role]) -> bool:
     return roles.count("output") == 1 or len(roles) == 1
 
 
-def _pick(capture: Capture, roles: Sequence[Role], channel: str | None) -> int:
+def _pick(lineup: Lineup, channel: str | None) -> int:
     """Return the chosen trace, the only output, the only capacitor node, or the only trace."""
     if channel is not None:
-        return find_channel(capture, channel)
+        return find_channel(lineup.capture, channel)
     for role in ("output", "capacitor"):
-        found = [i for i, item in enumerate(roles) if item == role]
+        found = [i for i, item in enumerate(lineup.roles) if item == role]
         if len(found) == 1:
             return found[0]
         if found:
             break
-    if len(roles) == 1:
+    if len(lineup.roles) == 1:
         return 0
     names = ", ".join(
         f"{trace.channel} ({role})"
-        for trace, role in zip(capture.traces[:16], roles[:16], strict=True)
+        for trace, role in zip(lineup.capture.traces[:16], lineup.roles[:16], strict=True)
     )
     raise UsageError(
-        f"{capture.origin.source} holds {len(roles)} traces and several could be meant",
+        f"{lineup.capture.origin.source} holds several traces that could be meant",
         hint=f"Give --channel: {names}.",
         code="choose-channel",
     )
 
 
 def _target(
-    capture: Capture,
-    roles: Sequence[Role],
+    lineup: Lineup,
     index: int,
     stage: Stage | None = None,
     warnings: tuple[Notice, ...] = (),
 ) -> Target:
-    trigger = _companion(capture, roles, "trigger", stage.trigger if stage else None)
+    trigger = _companion(lineup, "trigger", stage.trigger if stage else None)
     return Target(
-        trace=capture.traces[index],
-        role=roles[index],
+        shape=lineup.shapes[index],
+        role=lineup.roles[index],
         stage=stage,
         trigger=trigger,
-        supply=_companion(capture, roles, "supply", None),
+        supply=_companion(lineup, "supply", None),
         warnings=warnings,
     )
 
 
-def _companion(
-    capture: Capture, roles: Sequence[Role], role: Role, name: str | None
-) -> Trace | None:
+def _companion(lineup: Lineup, role: Role, name: str | None) -> Trace | None:
     if name is not None:
-        return capture.traces[find_channel(capture, name)]
-    found = [trace for trace, item in zip(capture.traces, roles, strict=True) if item == role]
+        return lineup.capture.traces[find_channel(lineup.capture, name)]
+    found = [
+        trace
+        for trace, item in zip(lineup.capture.traces, lineup.roles, strict=True)
+        if item == role
+    ]
     return found[0] if len(found) == 1 else None

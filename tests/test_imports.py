@@ -32,7 +32,7 @@ ALLOWED: dict[str, set[str]] = {
     "designs": {"model", "units", "circuits"},
     "formats": {"model", "units", "plugins"},
     "report": {"model", "units", "manual", "uncertainty"},
-    "targets": {"model"},
+    "targets": {"model", "timing"},
     "comparison": {"model", "uncertainty"},
     "observation": {"model", "timing", "diagnose", "targets"},
     "assessment": {"model", "circuits", "judge", "observation"},

@@ -238,15 +238,7 @@ def held(tmp_path: Path, *, with_supply: bool) -> tuple[Path, Path]:
     return write_columns(tmp_path / "hold.csv", times_s, columns), design
 
 
-@pytest.mark.parametrize(
-    "with_supply",
-    [
-        False,
-        pytest.param(
-            True, marks=pytest.mark.xfail(reason="a supply that comes up is taken for an output")
-        ),
-    ],
-)
+@pytest.mark.parametrize("with_supply", [False, True])
 def test_a_delay_counts_from_the_supply_where_it_is_seen(tmp_path: Path, with_supply: bool) -> None:
     analysis = pipeline.analyse(*held(tmp_path, with_supply=with_supply))
     result = analysis.results[0]

@@ -17,7 +17,8 @@ from benchtool.model.capture import (
     UniformTime,
     Waveform,
 )
-from benchtool.targets import choose_stages, choose_targets, find_channel
+from benchtool.targets import Lineup, choose_stages, choose_targets, find_channel
+from benchtool.timing import Shape
 
 ONE = parse_design(HEAD + SPACING, source="one.toml")
 UNNAMED = parse_design(HEAD + SPACING.replace('channel = "OUT"\n', ""), source="unnamed.toml")
@@ -45,6 +46,11 @@ def capture_of(*names: str) -> Capture:
     return Capture(origin=Origin(source="a.csv", format="text", sha256="0" * 64), traces=traces)
 
 
+def lineup_of(capture: Capture, roles: tuple[Role, ...]) -> Lineup:
+    shapes = tuple(Shape(trace=trace, levels=None, edges=None) for trace in capture.traces)
+    return Lineup(capture=capture, shapes=shapes, roles=roles)
+
+
 @pytest.mark.parametrize(
     ("roles", "chosen"),
     [
@@ -59,8 +65,8 @@ def capture_of(*names: str) -> Capture:
 )
 def test_the_obvious_trace_is_measured(roles: tuple[Role, ...], chosen: int) -> None:
     capture = capture_of(*(f"CH{i}" for i in range(len(roles))))
-    (target,) = choose_targets(capture, roles)
-    assert target.trace is capture.traces[chosen]
+    (target,) = choose_targets(lineup_of(capture, roles))
+    assert target.shape.trace is capture.traces[chosen]
     assert target.role == roles[chosen]
     assert target.warnings == ()
 
@@ -71,8 +77,8 @@ def test_the_obvious_trace_is_measured(roles: tuple[Role, ...], chosen: int) -> 
 )
 def test_what_is_not_obvious_is_asked_for(roles: tuple[Role, ...]) -> None:
     capture = capture_of(*(f"CH{i}" for i in range(len(roles))))
-    with pytest.raises(UsageError, match="several could be meant") as caught:
-        choose_targets(capture, roles)
+    with pytest.raises(UsageError, match="several traces that could be meant") as caught:
+        choose_targets(lineup_of(capture, roles))
     assert caught.value.code == "choose-channel"
     assert all(f"CH{i} ({role})" in caught.value.hint for i, role in enumerate(roles))
 
@@ -94,44 +100,46 @@ def test_a_name_that_is_none_or_two_is_refused(name: str) -> None:
 
 def test_each_stage_gets_the_trace_that_it_names() -> None:
     capture = capture_of("DRAIN", "VCC", "OUT")
-    targets = choose_targets(capture, ("output", "supply", "output"), design=TWO)
-    found = [(target.stage.name, target.trace.channel) for target in targets if target.stage]
+    targets = choose_targets(lineup_of(capture, ("output", "supply", "output")), design=TWO)
+    found = [(target.stage.name, target.shape.trace.channel) for target in targets if target.stage]
     assert found == [("spacing", "OUT"), ("drain", "DRAIN")]
     assert all(target.supply is capture.traces[1] for target in targets)
 
 
 def test_a_stage_without_a_name_for_it_takes_the_only_output() -> None:
     capture = capture_of("CH1", "CH2")
-    (target,) = choose_targets(capture, ("supply", "output"), design=UNNAMED)
-    assert target.trace.channel == "CH2"
+    (target,) = choose_targets(lineup_of(capture, ("supply", "output")), design=UNNAMED)
+    assert target.shape.trace.channel == "CH2"
     assert target.warnings == ()
 
 
 def test_a_lone_output_under_another_name_comes_with_a_warning() -> None:
-    (target,) = choose_targets(capture_of("VCC", "CH2"), ("supply", "output"), design=ONE)
-    assert target.trace.channel == "CH2"
+    (target,) = choose_targets(
+        lineup_of(capture_of("VCC", "CH2"), ("supply", "output")), design=ONE
+    )
+    assert target.shape.trace.channel == "CH2"
     assert [notice.code for notice in target.warnings] == ["assumed-channel"]
 
 
 def test_two_outputs_under_other_names_are_refused() -> None:
     with pytest.raises(UsageError) as caught:
-        choose_targets(capture_of("CH1", "CH2"), ("output", "output"), design=ONE)
+        choose_targets(lineup_of(capture_of("CH1", "CH2"), ("output", "output")), design=ONE)
     assert caught.value.code == "no-such-channel"
 
 
 def test_what_the_user_names_is_never_replaced() -> None:
     with pytest.raises(UsageError) as caught:
-        choose_targets(capture_of("CH1"), ("output",), design=ONE, channel="CH2")
+        choose_targets(lineup_of(capture_of("CH1"), ("output",)), design=ONE, channel="CH2")
     assert caught.value.code == "no-such-channel"
 
 
 def test_the_trigger_is_the_one_named_or_the_one_there_is() -> None:
     capture = capture_of("VALVE", "TRIG", "AUX")
-    (named,) = choose_targets(capture, ("output", "other", "trigger"), design=TRIGGERED)
+    (named,) = choose_targets(lineup_of(capture, ("output", "other", "trigger")), design=TRIGGERED)
     assert named.trigger is capture.traces[1]
-    (found,) = choose_targets(capture, ("output", "other", "trigger"))
+    (found,) = choose_targets(lineup_of(capture, ("output", "other", "trigger")))
     assert found.trigger is capture.traces[2]
-    (none,) = choose_targets(capture, ("output", "trigger", "trigger"))
+    (none,) = choose_targets(lineup_of(capture, ("output", "trigger", "trigger")))
     assert none.trigger is None
 
 

@@ -14,8 +14,7 @@ from itertools import pairwise
 import numpy as np
 
 from benchtool.errors import MalformedCaptureError
-from benchtool.formats.grid import middle
-from benchtool.model.arrays import FloatArray, NDArray
+from benchtool.model.arrays import FloatArray, NDArray, middle
 
 _EVEN_SHARE = 0.8  # of the first steps must agree for the column to count as even
 _SLACK = 0.01  # of a step: stamps that near to the grid lose nothing by being put on it

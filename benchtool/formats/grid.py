@@ -2,33 +2,16 @@
 
 from __future__ import annotations
 
-from typing import Any, TypeVar
+from typing import Any
 
 import numpy as np
 
-from benchtool.model.arrays import FloatArray, NDArray
-
-_Number = TypeVar("_Number", np.int64, np.float64)
+from benchtool.model.arrays import FloatArray, NDArray, distinct
 
 _FEW = 3  # below this number of times their greatest common divisor is chance
 _LEAST_LEVELS = 5
 _LEAST_STEPS = 8
 _MOST_SAMPLES = 8192
-
-
-def distinct(values: NDArray[_Number]) -> NDArray[_Number]:
-    """Return the different values in order.
-
-    The same as ``numpy.unique``, which on its first call imports masked arrays: 20 ms.
-    """
-    ordered = np.sort(values)
-    return ordered[np.append(ordered[1:] != ordered[:-1], True)] if ordered.size else ordered
-
-
-def middle(values: FloatArray) -> float:
-    """Return the median of at least one value; ``numpy.median`` imports masked arrays too."""
-    ordered = np.sort(values)
-    return float(ordered[(ordered.size - 1) // 2] + ordered[ordered.size // 2]) / 2
 
 
 def greatest_common_spacing(ticks: NDArray[np.int64]) -> int:

@@ -8,15 +8,17 @@ from benchtool.timing.jitter import measure_jitter
 from benchtool.timing.levels import find_levels
 from benchtool.timing.node import find_turning_points
 from benchtool.timing.overview import make_overview
-from benchtool.timing.roles import find_roles
+from benchtool.timing.roles import Shape, find_roles, find_shapes
 from benchtool.timing.stability import measure_stability
 from benchtool.timing.statistics import measure_timing
 
 __all__ = [
+    "Shape",
     "find_edges",
     "find_intervals",
     "find_levels",
     "find_roles",
+    "find_shapes",
     "find_turning_points",
     "make_overview",
     "measure_delay",

@@ -4,9 +4,8 @@ from __future__ import annotations
 
 from typing import Literal
 
-import numpy as np
-
 from benchtool.errors import MeasurementError
+from benchtool.model.arrays import middle
 from benchtool.model.quantity import Bound
 from benchtool.model.timing import Edges, Intervals, Levels
 
@@ -37,7 +36,7 @@ def bound_frequency(intervals: Intervals) -> Bound | None:
 def _longest(intervals: Intervals, kind: str) -> float:
     """Return the median of the complete intervals of a kind, or the longest cut one."""
     whole = intervals.high_s if kind == "high" else intervals.low_s
-    return float(np.median(whole)) if whole.size else _longest_cut(intervals, kind)
+    return middle(whole) if whole.size else _longest_cut(intervals, kind)
 
 
 def _longest_cut(intervals: Intervals, kind: str) -> float:
@@ -76,7 +75,7 @@ def require_intervals(intervals: Intervals, edges: Edges) -> None:
     if not (intervals.high_s.size or intervals.low_s.size):
         raise _no_interval(intervals, edges)
     if intervals.period_s.size and edges.step_s > 0:
-        per_period = float(np.median(intervals.period_s)) / edges.step_s
+        per_period = middle(intervals.period_s) / edges.step_s
         if per_period < LEAST_SAMPLES:
             raise _under_sampled(per_period, edges)
 

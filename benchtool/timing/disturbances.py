@@ -7,7 +7,7 @@ from enum import IntEnum
 
 import numpy as np
 
-from benchtool.model.arrays import BoolArray, FloatArray, NDArray
+from benchtool.model.arrays import BoolArray, FloatArray, NDArray, middle
 from benchtool.model.timing import Edges
 
 SHORT = 0.15
@@ -111,7 +111,7 @@ def _short_groups(edges: Edges, run: NDArray[np.int64]) -> list[tuple[int, int]]
 
 def _usual_width(width_s: FloatArray) -> float:
     """Return the median width, or that of the long ones where bounce outnumbers them."""
-    median = float(np.median(width_s))
+    median = middle(width_s)
     ordered = np.sort(width_s)
     total = np.cumsum(ordered)
     heavy = float(ordered[int(np.searchsorted(total, total[-1] / 2))])
@@ -145,10 +145,10 @@ def mark_first_high(widths: Widths, edges: Edges) -> Widths:
     others = widths.width_s[1:][widths.is_high[1:] & (widths.reason[1:] == Reason.GOOD)]
     if not others.size or widths.reason[0] != Reason.GOOD:
         return widths
-    ratio = widths.width_s[0] / np.median(others)
+    ratio = widths.width_s[0] / middle(others)
     if not _FIRST_HIGH[0] <= ratio <= _FIRST_HIGH[1] or widths.width_s[0] <= others.max():
         return widths
-    if widths.width_s[0] - np.median(others) < 2 * edges.step_s:
+    if widths.width_s[0] - middle(others) < 2 * edges.step_s:
         return widths
     return _marked(widths, np.array([0]), Reason.FIRST_HIGH)
 
@@ -165,7 +165,7 @@ def mark_outliers(widths: Widths, step_s: float) -> tuple[Widths, int]:
     """
     good = widths.reason == Reason.GOOD
     states = [np.flatnonzero(good & (widths.is_high == state)) for state in (True, False)]
-    medians = [float(np.median(widths.width_s[s])) if s.size else 0.0 for s in states]
+    medians = [middle(widths.width_s[s]) if s.size else 0.0 for s in states]
     n_scattered = 0
     for chosen, median in zip(states, medians, strict=True):
         far = chosen[_is_far(widths.width_s[chosen], median, step_s)]
@@ -182,7 +182,7 @@ def _is_far(width_s: FloatArray, median_s: float, step_s: float) -> BoolArray:
     if width_s.size < 3:
         return np.zeros(width_s.size, np.bool_)
     away = np.abs(width_s - median_s)
-    sd = 1.4826 * float(np.median(away))
+    sd = 1.4826 * middle(away)
     return away > max(_OUTLYING_SD * sd, _OUTLYING_REL * median_s, 2 * step_s)
 
 

@@ -7,7 +7,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from benchtool.model.arrays import FloatArray
+from benchtool.model.arrays import FloatArray, middle
 from benchtool.model.capture import UniformTime, Waveform
 from benchtool.timing.pieces import Codes, Index, walk_pieces
 
@@ -58,10 +58,10 @@ def fit_edges(
     curved = _is_curved(parabola, noise, half)
     roots = _parabola_roots(parabola) if curved else -line[:, 0] / line[:, 1]
     slope = (parabola if curved else line)[:, 1] / scale_s
-    slew = float(np.abs(np.median(slope)))
+    slew = float(np.abs(middle(slope)))
     if slew == 0:
         return None
-    good = (np.abs(roots) <= 1.0) & (np.sign(slope) == np.sign(np.median(slope)))
+    good = (np.abs(roots) <= 1.0) & (np.sign(slope) == np.sign(middle(slope)))
     shift_s = np.full(index.size, np.nan)
     shift_s[chosen[good]] = (roots * scale_s)[good]
     spread = 1.5 if curved else 1.0  # sd at the centre of a parabola against that of a line

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 
-from benchtool.model.arrays import FloatArray
+from benchtool.model.arrays import FloatArray, distinct, middle
 from benchtool.model.timing import LevelKind, Levels
 from benchtool.timing.plateaus import curved_noise, local_noise
 from benchtool.timing.survey import Survey
@@ -28,7 +28,7 @@ def is_two_state(survey: Survey, values: FloatArray, levels: Levels) -> bool:
         levels: The candidate levels.
     """
     spacing = levels.high_v - levels.low_v
-    codes = np.unique(values)
+    codes = distinct(values)
     if codes.size == 2:
         least_v = LEAST_CODES * survey.step_v if survey.step_v else _LEAST_BARE_V
         return spacing > least_v or _is_wave(survey)
@@ -87,7 +87,7 @@ def kind_without_states(survey: Survey, values: FloatArray) -> LevelKind:
     smooth = swing >= 3 * _LEAST_SNR * noise_v and swing >= 8 * survey.step_v
     if smooth and not _is_sinusoid(values):
         return "node"
-    level = abs(float(np.median(values)))
+    level = abs(middle(values))
     steady = spread <= 0.1 * level or spread <= max(0.05, 2 * survey.step_v)
     return "flat" if steady else "noise"
 

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 
+from benchtool.model.arrays import middle
 from benchtool.timing.pieces import Codes, Index
 from benchtool.timing.thresholds import Thresholds
 
@@ -37,7 +38,7 @@ def _usual(lengths: list[int]) -> float:
     if not lengths:
         return 0.0
     found = np.array(lengths)
-    return float(np.mean(found[found <= 3 * np.median(found) + 2]))
+    return float(np.mean(found[found <= 3 * middle(found) + 2]))
 
 
 def _length(values: Codes, position: int, limits: Thresholds, *, rising: bool) -> int | None:

@@ -8,7 +8,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from benchtool.model.arrays import FloatArray
+from benchtool.model.arrays import FloatArray, middle
 from benchtool.model.capture import Waveform
 from benchtool.model.timing import EdgeRun, Edges, Levels
 from benchtool.timing.crossings import Crossings, find_crossings
@@ -31,6 +31,12 @@ class _Stretch:
     is_peak: bool
     is_whole: bool
 
+    @property
+    def extreme_s(self) -> float:
+        """When the node is farthest from the mid level."""
+        away = self.volts if self.is_peak else -self.volts
+        return float(self.times_s[int(np.argmax(away))])
+
 
 def find_turning_points(trace: Waveform, levels: Levels) -> Edges:
     """Find the turning points of a capacitor node.
@@ -48,6 +54,7 @@ def find_turning_points(trace: Waveform, levels: Levels) -> Edges:
     noise_v = max(levels.noise_v, levels.step_v / math.sqrt(12))
     swing_v = levels.high_v - levels.low_v
     turns: list[list[Turn]] = [[] for _ in runs]
+    ends = [[run.start_s, run.end_s] for run in runs]
     for stretch in _stretches(trace, runs):
         turn = locate_turn(
             stretch.times_s,
@@ -58,23 +65,30 @@ def find_turning_points(trace: Waveform, levels: Levels) -> Edges:
         )
         if turn is not None:
             turns[stretch.run].append(turn if stretch.is_peak else turn.as_trough())
-    return _edges(trace, levels, runs, turns)
+        elif not stretch.is_whole and stretch.volts.size:
+            # It may have turned unseen: what is cut there lasts to the extreme and no longer.
+            ends[stretch.run][1 if turns[stretch.run] else 0] = stretch.extreme_s
+    return _edges(trace, levels, runs, turns, ends)
 
 
 def _edges(
-    trace: Waveform, levels: Levels, runs: tuple[Crossings, ...], turns: list[list[Turn]]
+    trace: Waveform,
+    levels: Levels,
+    runs: tuple[Crossings, ...],
+    turns: list[list[Turn]],
+    ends: list[list[float]],
 ) -> Edges:
     found = [turn for of_run in turns for turn in of_run]
     edge_runs: list[EdgeRun] = []
     first = 0
-    for run, of_run in zip(runs, turns, strict=True):
+    for run, of_run, (start_s, end_s) in zip(runs, turns, ends, strict=True):
         starts_high = of_run[0].is_peak if of_run else run.starts_high
         edge_runs.append(
             EdgeRun(
                 first=first,
                 stop=first + len(of_run),
-                start_s=run.start_s,
-                end_s=run.end_s,
+                start_s=start_s,
+                end_s=end_s,
                 starts_high=starts_high,
             )
         )
@@ -99,7 +113,7 @@ def _edges(
 def _usual_step(trace: Waveform, runs: tuple[Crossings, ...]) -> float:
     steps = np.concatenate([run.after_s - run.before_s for run in runs]) if runs else np.empty(0)
     if steps.size:
-        return float(np.median(steps))
+        return middle(steps)
     length_s = runs[-1].end_s - runs[0].start_s if runs else 0.0
     return length_s / max(1, trace.samples.size - 1)
 

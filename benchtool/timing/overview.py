@@ -6,7 +6,7 @@ import math
 
 import numpy as np
 
-from benchtool.model.arrays import FloatArray, NDArray
+from benchtool.model.arrays import FloatArray, NDArray, distinct, middle
 from benchtool.model.capture import BLOCK, LogicTrace, Trace, UniformTime, Waveform
 from benchtool.model.result import Overview
 from benchtool.model.timing import Edges, Intervals
@@ -48,7 +48,7 @@ def make_overview(trace: Trace, edges: Edges, intervals: Intervals) -> Overview:
 def _first_cycles(edges: Edges, intervals: Intervals) -> float:
     """Return the end of the first few cycles, or of the record where there are none."""
     if intervals.period_s.size:
-        return float(intervals.period_starts_s[0] + _CYCLES * np.median(intervals.period_s))
+        return float(intervals.period_starts_s[0] + _CYCLES * middle(intervals.period_s))
     return edges.runs[-1].end_s if edges.runs else 0.0
 
 
@@ -144,4 +144,4 @@ def _histogram(period_s: FloatArray, step_s: float) -> tuple[FloatArray, FloatAr
 
 
 def _thinned(n: int) -> NDArray[np.int64]:
-    return np.unique(np.linspace(0, n - 1, min(n, MOST_PERIODS)).round().astype(np.int64))
+    return distinct(np.linspace(0, n - 1, min(n, MOST_PERIODS)).round().astype(np.int64))

@@ -8,7 +8,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from benchtool.model.arrays import BoolArray, FloatArray
+from benchtool.model.arrays import BoolArray, FloatArray, middle
 from benchtool.model.capture import StampedTime, Waveform
 from benchtool.model.timing import Levels
 from benchtool.timing.crossings import Crossings
@@ -147,7 +147,7 @@ def _place(
     rough_s = before_s + part * (after_s - before_s)
     if length >= _FIT_FROM:
         return _fitted(setting, crossings.index[chosen], rough_s, after_s, length)
-    slew = float(np.median(np.abs(after - before) / (after_s - before_s)))
+    slew = middle(np.abs(after - before) / (after_s - before_s))
     return _Direction(
         times_s=rough_s,
         u_s=setting.noise / slew * np.sqrt((1 - part) ** 2 + part**2),

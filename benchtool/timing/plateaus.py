@@ -93,7 +93,7 @@ def _settling(pieces: Sequence[FloatArray]) -> float:
         return 0.0
     mean = float(np.mean(halves))
     noise = float(np.std(halves)) / math.sqrt(halves.size) if halves.size > 1 else abs(mean)
-    return mean if abs(mean) > 2 * noise else 0.0
+    return mean if abs(mean) > noise else 0.0
 
 
 def local_noise(pieces: Sequence[FloatArray]) -> float:

@@ -2,12 +2,13 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
 
 from benchtool.errors import MeasurementError
-from benchtool.model.arrays import FloatArray
+from benchtool.model.arrays import FloatArray, middle
 from benchtool.model.capture import Capture, LogicTrace, Role, Trace
 from benchtool.model.timing import Edges, Levels
 from benchtool.timing.edges import find_edges
@@ -21,45 +22,60 @@ _PRECEDED = 0.8
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
-class _Shape:
+class Shape:
+    """What a trace looks like, by which its role is found and from which it is measured.
+
+    Attributes:
+        trace: The trace.
+        levels: Its levels; None for a logic trace and for one without a sample.
+        edges: Its edges; None where it has no two states.
+    """
+
     trace: Trace
     levels: Levels | None
     edges: Edges | None
 
 
-def find_roles(capture: Capture) -> tuple[Role, ...]:
+def find_shapes(capture: Capture) -> tuple[Shape, ...]:
+    """Return the shape of each trace of a capture, in order; each trace is walked."""
+    return tuple(_shape(trace) for trace in capture.traces)
+
+
+def find_roles(shapes: Sequence[Shape]) -> tuple[Role, ...]:
     """Return the role of each trace of a capture, in order.
 
     A supply is near flat and positive; a capacitor node spends its time between its turning
-    points; a trigger's pulses are narrow and one comes before each pulse of an output. A trace
-    alone is the output, or the capacitor node.
+    points; a trigger's pulses are narrow and one comes before each pulse of an output; a trace
+    that rises once, before all else, and stays is the supply coming up. A trace alone is the
+    output, or the capacitor node.
 
     Args:
-        capture: The capture; each trace is walked.
+        shapes: Shape of each trace.
     """
-    shapes = [_shape(trace) for trace in capture.traces]
     roles = [_own_role(shape) for shape in shapes]
     outputs = [i for i, role in enumerate(roles) if role == "output"]
     for i in outputs:
         if any(_triggers(shapes[i], shapes[j]) for j in outputs if j != i):
             roles[i] = "trigger"
+        elif any(_comes_up_before(shapes[i], shapes[j]) for j in outputs if j != i):
+            roles[i] = "supply"
     if "output" not in roles:
         _promote(shapes, roles)
     return tuple(roles)
 
 
-def _shape(trace: Trace) -> _Shape:
+def _shape(trace: Trace) -> Shape:
     if isinstance(trace, LogicTrace):
-        return _Shape(trace=trace, levels=None, edges=find_edges(trace))
+        return Shape(trace=trace, levels=None, edges=find_edges(trace))
     try:
         levels = find_levels(trace)
     except MeasurementError:
-        return _Shape(trace=trace, levels=None, edges=None)
+        return Shape(trace=trace, levels=None, edges=None)
     edges = find_edges(trace, levels) if levels.kind == "two-state" else None
-    return _Shape(trace=trace, levels=levels, edges=edges)
+    return Shape(trace=trace, levels=levels, edges=edges)
 
 
-def _own_role(shape: _Shape) -> Role:
+def _own_role(shape: Shape) -> Role:
     """Return what a trace is when looked at alone."""
     levels, edges = shape.levels, shape.edges
     if levels is None:
@@ -67,6 +83,8 @@ def _own_role(shape: _Shape) -> Role:
     if levels.kind == "node":
         return "supply" if _is_supply(levels) else "capacitor"
     if levels.kind == "two-state":
+        if _is_supply(levels):
+            return "supply"
         if edges is not None and _is_ramp(levels, edges):
             return "capacitor"
         return "output" if edges is not None and edges.times_s.size else "other"
@@ -87,13 +105,20 @@ def _is_ramp(levels: Levels, edges: Edges) -> bool:
     if edges.times_s.size < 3 or u_mid_v == 0 or edges.level_u_s == 0:
         return False
     ramps_s = edges.level_u_s / u_mid_v * (levels.high_v - levels.low_v)
-    shortest_s = float(
-        np.median(np.minimum(np.diff(edges.times_s)[:-1], np.diff(edges.times_s)[1:]))
-    )
+    shortest_s = float(middle(np.minimum(np.diff(edges.times_s)[:-1], np.diff(edges.times_s)[1:])))
     return bool(ramps_s > _SLOW * 2 * shortest_s)
 
 
-def _triggers(trigger: _Shape, output: _Shape) -> bool:
+def _comes_up_before(supply: Shape, other: Shape) -> bool:
+    """Tell whether a trace rises once and stays, no later than anything happens on another."""
+    ups, edges = supply.edges, other.edges
+    if ups is None or edges is None or ups.times_s.size != 1 or edges.times_s.size == 0:
+        return False
+    late_s = 2 * max(ups.step_s, edges.step_s)
+    return bool(ups.rising[0] and ups.times_s[0] <= edges.times_s[0] + late_s)
+
+
+def _triggers(trigger: Shape, output: Shape) -> bool:
     """Tell whether each pulse of one trace begins with a narrow pulse of another."""
     pulses = min(_pulses(trigger), key=lambda pulse: pulse.width_s, default=None)
     return pulses is not None and any(_starts(pulses, answer) for answer in _pulses(output))
@@ -107,7 +132,7 @@ class _Pulses:
     width_s: float
 
 
-def _pulses(shape: _Shape) -> list[_Pulses]:
+def _pulses(shape: Shape) -> list[_Pulses]:
     edges = shape.edges
     if edges is None or edges.times_s.size < 2:
         return []
@@ -115,7 +140,7 @@ def _pulses(shape: _Shape) -> list[_Pulses]:
     return [
         _Pulses(
             starts_s=edges.times_s[edges.rising == state],
-            width_s=float(np.median(width_s[edges.rising[:-1] == state])),
+            width_s=middle(width_s[edges.rising[:-1] == state]),
         )
         for state in (True, False)
         if np.any(edges.rising[:-1] == state)
@@ -135,7 +160,7 @@ def _starts(pulses: _Pulses, answers: _Pulses) -> bool:
     return bool(np.mean(late_s <= limit_s) >= _PRECEDED)
 
 
-def _promote(shapes: list[_Shape], roles: list[Role]) -> None:
+def _promote(shapes: Sequence[Shape], roles: list[Role]) -> None:
     """Choose an output where nothing swings: the only trace, or the lowest of several flat."""
     if len(shapes) == 1:
         if roles[0] != "capacitor":
@@ -151,5 +176,5 @@ def _promote(shapes: list[_Shape], roles: list[Role]) -> None:
         roles[lowest] = "output"
 
 
-def _level(shape: _Shape) -> float | None:
+def _level(shape: Shape) -> float | None:
     return shape.levels.low_v if shape.levels is not None else None

@@ -110,9 +110,17 @@ def test_a_link_stays_a_link(tmp_path: Path) -> None:
     assert (tmp_path / "real.txt").read_text() == "new"
 
 
-def test_a_device_stays_a_device() -> None:
-    write_file(Path(os.devnull), b"x", force=True)
-    assert Path(os.devnull).is_char_device()
+def test_a_pipe_is_written_to_and_stays_a_pipe(tmp_path: Path) -> None:
+    """A test that names a device would replace the machine's own where it fails."""
+    pipe = tmp_path / "pipe"
+    os.mkfifo(pipe)
+    reader = os.open(pipe, os.O_RDONLY | os.O_NONBLOCK)
+    try:
+        write_file(pipe, b"x", force=True)
+        assert os.read(reader, 8) == b"x"
+    finally:
+        os.close(reader)
+    assert pipe.is_fifo()
 
 
 def test_quiet_prints_nothing_and_the_code_tells(

@@ -6,15 +6,16 @@ import numpy as np
 from timing_waves import as_waveform, trapezoid
 
 from benchtool.model.capture import Capture, LogicTrace, Origin, TimeSpan, Trace
-from benchtool.timing import find_roles
+from benchtool.timing import Shape, find_roles, find_shapes
 
 TIMES = np.arange(0, 12e-3, 1e-6) + 0.7e-3
 WIDTH_S, WAIT_S = 1e-3 * math.log(3), 0.4e-3
 PHASE = TIMES % (WIDTH_S + WAIT_S)
 
 
-def capture(*traces: Trace) -> Capture:
-    return Capture(origin=Origin(source="x.csv", format="text", sha256=""), traces=traces)
+def shapes(*traces: Trace) -> tuple[Shape, ...]:
+    origin = Origin(source="x.csv", format="text", sha256="")
+    return find_shapes(Capture(origin=origin, traces=traces))
 
 
 def volts(values: np.ndarray, noise_v: float = 0.01) -> Trace:
@@ -30,7 +31,7 @@ NODE = np.where(PHASE < WIDTH_S, 5 - 5 * np.exp(-PHASE / 1e-3), 0.0)
 
 def test_a_one_shot_with_all_its_traces() -> None:
     traces = [volts(x) for x in (NODE, TRIGGER, SUPPLY, OUTPUT)]
-    assert find_roles(capture(*traces)) == ("capacitor", "trigger", "supply", "output")
+    assert find_roles(shapes(*traces)) == ("capacitor", "trigger", "supply", "output")
 
 
 def test_an_astable_with_a_rippling_supply() -> None:
@@ -40,24 +41,24 @@ def test_an_astable_with_a_rippling_supply() -> None:
     )
     supply = 12 + 0.8 * np.sin(2 * np.pi * 400 * TIMES)
     traces = [volts(supply), volts(12.0 * (phase < 298e-6)), volts(node)]
-    assert find_roles(capture(*traces)) == ("supply", "output", "capacitor")
+    assert find_roles(shapes(*traces)) == ("supply", "output", "capacitor")
 
 
 def test_two_stages_are_two_outputs() -> None:
     other = 5 * trapezoid(TIMES, np.arange(0.2, 50) * 4.4e-4, 1e-6)
-    assert find_roles(capture(volts(OUTPUT), volts(other))) == ("output", "output")
+    assert find_roles(shapes(volts(OUTPUT), volts(other))) == ("output", "output")
 
 
 def test_a_lone_flat_trace_is_a_dead_output() -> None:
-    assert find_roles(capture(volts(SUPPLY))) == ("output",)
+    assert find_roles(shapes(volts(SUPPLY))) == ("output",)
 
 
 def test_of_two_flat_traces_the_higher_is_the_supply() -> None:
-    assert find_roles(capture(volts(SUPPLY), volts(0 * SUPPLY))) == ("supply", "output")
+    assert find_roles(shapes(volts(SUPPLY), volts(0 * SUPPLY))) == ("supply", "output")
 
 
 def test_noise_beside_an_output_is_something_else() -> None:
-    assert find_roles(capture(volts(OUTPUT), volts(0 * SUPPLY, 1.0))) == ("output", "other")
+    assert find_roles(shapes(volts(OUTPUT), volts(0 * SUPPLY, 1.0))) == ("output", "other")
 
 
 def test_a_logic_line_that_never_changes_is_something_else() -> None:
@@ -75,4 +76,16 @@ def test_a_logic_line_that_never_changes_is_something_else() -> None:
         tick_s=0.1,
         channel="D1",
     )
-    assert find_roles(capture(moving, still)) == ("output", "other")
+    assert find_roles(shapes(moving, still)) == ("output", "other")
+
+
+def test_a_trace_that_rises_once_and_first_is_the_supply_coming_up() -> None:
+    up = 12.0 * (TIMES > 1.5e-3)
+    late = 12.0 * (TIMES > 6e-3)
+    assert find_roles(shapes(volts(late), volts(up))) == ("output", "supply")
+    assert find_roles(shapes(volts(up * (PHASE < WIDTH_S)), volts(up)))[1] == "supply"
+
+
+def test_a_trace_that_rises_last_is_no_supply() -> None:
+    late = 12.0 * (TIMES > 9e-3)
+    assert find_roles(shapes(volts(OUTPUT), volts(late))) == ("output", "output")

@@ -284,4 +284,19 @@ def test_a_measured_period_does_not_promise_edges_out_of_step_with_the_grid() ->
     out_of_step = width_floor(1.0, 30, 200.0 + 1 / 30)
     assert in_step == pytest.approx(1 / math.sqrt(6), rel=1e-9)
     assert out_of_step < 0.05 * in_step
-    assert blurred_width_floor(1.0, 30, 200.0 + 1 / 30) > 0.3 * in_step
+    assert blurred_width_floor(1.0, 30, 200.0 + 1 / 30) > 0.25 * in_step
+
+
+@pytest.mark.parametrize(
+    ("answers", "delay"),
+    [([2.05, 16.0], 14.0), ([16.0], 14.0), ([2.05], None), ([2.0, 16.0], 14.0)],
+)
+def test_a_rise_together_with_the_supply_is_no_answer(
+    answers: list[float], delay: float | None
+) -> None:
+    supply = edges_at(np.array([2.0]), end_s=30.0)
+    found = measure_delay(supply, edges_at(np.array(answers), end_s=30.0), powers=True)
+    if delay is None:
+        assert found == Bound(unit="s", at_least=28.0)
+    else:
+        assert measured(found).value == pytest.approx(delay, abs=1e-12)  # arithmetic

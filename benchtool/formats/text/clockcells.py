@@ -8,11 +8,10 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from benchtool.formats.grid import middle
 from benchtool.formats.text.cells import last_digit, number, significant_digits
 from benchtool.formats.text.columns import ClockColumn
 from benchtool.formats.text.decoding import Convert, Wanted
-from benchtool.model.arrays import FloatArray
+from benchtool.model.arrays import FloatArray, middle
 
 _FLOAT_DIGITS = 15  # more are not exact in a float
 _FINE = 1e-5  # of a step: how well a float must place a stamp

@@ -9,11 +9,11 @@ import numpy as np
 
 from benchtool.errors import MalformedCaptureError
 from benchtool.formats.clock import examine_steps
-from benchtool.formats.grid import distinct, greatest_common_spacing, middle
+from benchtool.formats.grid import greatest_common_spacing
 from benchtool.formats.logic import UNKNOWN, States, logic_trace
 from benchtool.formats.text.cells import EDGE_WORDS
 from benchtool.formats.text.words import TimeUnit
-from benchtool.model.arrays import FloatArray, NDArray
+from benchtool.model.arrays import FloatArray, NDArray, distinct, middle
 from benchtool.model.capture import LogicTrace
 from benchtool.model.quantity import Notice
 

@@ -8,7 +8,7 @@ import numpy as np
 
 from benchtool.errors import AmbiguousStructureError, MalformedCaptureError
 from benchtool.formats.content import Content
-from benchtool.formats.grid import distinct, greatest_common_spacing
+from benchtool.formats.grid import greatest_common_spacing
 from benchtool.formats.logic import States, logic_trace
 from benchtool.formats.vcd.body import Body, Changes, RealChanges, read_body
 from benchtool.formats.vcd.header import (
@@ -19,7 +19,7 @@ from benchtool.formats.vcd.header import (
     read_header,
     trace_names,
 )
-from benchtool.model.arrays import FloatArray
+from benchtool.model.arrays import FloatArray, distinct
 from benchtool.model.capture import (
     ArraySamples,
     Capture,
