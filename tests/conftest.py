@@ -20,3 +20,14 @@ def design(tmp_path: Path) -> Path:
 def good(tmp_path: Path) -> Path:
     """A capture of a board as designed."""
     return write_square(tmp_path / "good.csv")
+
+
+LOWER_BOUNDS = {"designs", "samples", "timing", "report"}
+"""Rooms that touch every dependency: their tests also run at the lowest versions."""
+
+
+def pytest_collection_modifyitems(items: list[pytest.Item]) -> None:
+    """Mark the subset that also runs at the lower bounds of the dependencies."""
+    for item in items:
+        if item.path.parent.name in LOWER_BOUNDS and "browser" not in item.keywords:
+            item.add_marker(pytest.mark.lower_bounds)

@@ -6,7 +6,6 @@ import json
 import os
 import shlex
 import sys
-import tempfile
 from collections.abc import Callable
 from dataclasses import dataclass, replace
 from datetime import UTC, datetime
@@ -192,6 +191,8 @@ def _is_special(path: Path) -> bool:
 
 
 def _replace(path: Path, content: bytes) -> None:
+    import tempfile  # start-up without it is 5 ms shorter
+
     handle, name = tempfile.mkstemp(dir=path.parent, prefix=f".{path.name}.")
     try:
         with os.fdopen(handle, "wb") as file:

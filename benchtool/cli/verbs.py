@@ -4,7 +4,6 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass
-from difflib import get_close_matches
 from importlib import import_module
 from pathlib import Path
 from typing import Any
@@ -67,6 +66,8 @@ class VerbGroup(click.Group):
 
             hint = f"Try: benchtool look {quoted(word)}"
             return UsageError(f"{word!r} is a file, not a verb", hint=hint)
+        from difflib import get_close_matches
+
         near = get_close_matches(word.casefold(), self.verbs, n=1)
         hint = f"Did you mean: {path} {near[0]}?" if near else f"See: {path} --help"
         return UsageError(f"there is no verb {word!r}", hint=hint)

@@ -201,7 +201,10 @@ def test_6_every_design_fault_with_its_line(capsys: Capsys, good: Path, design: 
     assert [fault["key"].rpartition(".")[2] for fault in faults] == ["RD", "icc"]
     lines = design.read_text().splitlines()
     assert [lines[fault["line"] - 1].partition(" ")[0] for fault in faults] == ["RD", "icc"]
-    assert run_here(capsys, "judge", good, "--design", design).err.count("line ") == 2
+    said = run_here(capsys, "judge", good, "--design", design).err
+    assert said.count("line ") == 2
+    assert "stage.spacing.icc" in said
+    assert "(nearest known key: ic)" in said
 
 
 def test_6_a_design_without_checks(capsys: Capsys, good: Path, design: Path) -> None:
