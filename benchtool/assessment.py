@@ -51,12 +51,18 @@ def solve_plain(
 def judge_board(
     results: tuple[StageResult, ...], design: Design, settings: Settings
 ) -> tuple[tuple[StageResult, ...], VerdictName | None]:
-    """Judge every stage; return the results and the worst of their verdicts."""
-    judged = tuple(judge_result(item, design, settings) for item in results)
+    """Judge every stage; return the results and the worst of their verdicts.
+
+    Args:
+        results: What was observed, one result a stage.
+        design: Its stages, limits and decision rule.
+        settings: As settled for this run.
+    """
+    judged = tuple(_judge(item, design, settings) for item in results)
     return judged, worst(item.verdict for item in judged if item.verdict)
 
 
-def judge_result(result: StageResult, design: Design, settings: Settings) -> StageResult:
+def _judge(result: StageResult, design: Design, settings: Settings) -> StageResult:
     """Add products, checks and verdict; a board that cannot be solved is still judged."""
     stage = result.design
     if stage is None:

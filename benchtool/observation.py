@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING, Any
 
 from benchtool.diagnose import find_findings, flat_length, flat_state
 from benchtool.model.capture import LogicTrace, Trace, UniformTime, Waveform
-from benchtool.model.options import MeasureOptions
+from benchtool.model.options import JITTER_REL, TIMEBASE_REL, MeasureOptions
 from benchtool.model.quantity import Measured, Notice, Quantity
 from benchtool.model.result import Flat, Gap, IntervalCounts, StageResult, TraceFacts
 from benchtool.model.timing import Edges, Intervals, Levels, Timing
@@ -30,9 +30,6 @@ from benchtool.timing import (
 
 if TYPE_CHECKING:
     from benchtool.model.design import Design
-
-DEFAULT_TIMEBASE_REL = 50e-6
-DEFAULT_JITTER_REL = 1e-3
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -61,11 +58,9 @@ def settle(options: MeasureOptions, design: Design | None) -> Settings:
     elif stated is not None:
         timebase_rel, source = stated, "[instrument] of the design"
     else:
-        timebase_rel, source = DEFAULT_TIMEBASE_REL, "default"
+        timebase_rel, source = TIMEBASE_REL, "default"
     assumed = instrument.jitter_rel if instrument else None
-    jitter_rel = next(
-        (x for x in (options.jitter_rel, assumed) if x is not None), DEFAULT_JITTER_REL
-    )
+    jitter_rel = next((x for x in (options.jitter_rel, assumed) if x is not None), JITTER_REL)
     return Settings(
         timebase_rel=timebase_rel, timebase_from=source, jitter_rel=jitter_rel, options=options
     )

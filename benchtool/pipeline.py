@@ -35,7 +35,19 @@ NOTHING_KNOWN: Mapping[str, float] = MappingProxyType({})
 
 
 def look(sources: Sequence[FilePath], *, options: MeasureOptions = DEFAULTS) -> Analysis:
-    """Say what captures hold: structure with its evidence, traces, roles, levels."""
+    """Say what captures hold: structure with its evidence, traces, roles, levels.
+
+    Args:
+        sources: The capture files; ``-`` is standard input.
+        options: What is overruled.
+
+    Returns:
+        One result a trace, each with the number of its source; no figure is made of them.
+
+    Raises:
+        InputError: If a file cannot be opened.
+        CaptureError: If one holds no capture, or could be read in two ways.
+    """
     settings = settle(options, None)
     captures = [read_capture(source, options.read) for source in sources]
     results = tuple(
@@ -56,7 +68,18 @@ def measure(
 ) -> Analysis:
     """Measure the timing of a capture, and its change against a baseline where one is given.
 
+    Args:
+        source: The capture file, or ``-`` for standard input.
+        baseline: An earlier capture of the same board.
+        options: What is overruled.
+
+    Returns:
+        One result, for the trace that was chosen or could alone be meant.
+
     Raises:
+        InputError: If a file cannot be opened.
+        CaptureError: If one holds no capture, or could be read in two ways.
+        UsageError: If several traces could be meant (``choose-channel``).
         MeasurementError: If one holds no complete interval; the message gives the bound.
     """
     analysis = _observe_all(source, None, None, options, "measure")
@@ -81,7 +104,22 @@ def solve(
     known: Mapping[str, float] = NOTHING_KNOWN,
     options: MeasureOptions = DEFAULTS,
 ) -> Analysis:
-    """Solve for the products of a designed circuit; ``source`` may be plain figures."""
+    """Solve for the products of a designed circuit.
+
+    Args:
+        source: The capture file, ``-`` for standard input, or times already known.
+        design: The design file, or the design.
+        stage: Solve this stage alone; of plain times, the first where none is named.
+        known: Reference of a part to its value in ohms or farads.
+        options: What is overruled.
+
+    Returns:
+        One result a stage.
+
+    Raises:
+        SolveError: If the times are too few, or no parts of the topology give them.
+        BenchtoolError: As ``measure`` and ``analyse``.
+    """
     from benchtool.assessment import solve_stage
 
     intent = _settled_design(design, options)
@@ -101,7 +139,23 @@ def solve_topology(
     known: Mapping[str, float] = NOTHING_KNOWN,
     options: MeasureOptions = DEFAULTS,
 ) -> Analysis:
-    """Solve for the products where there is no design; ``source`` may be plain figures."""
+    """Solve for the products where there is no design.
+
+    Args:
+        source: The capture file, ``-`` for standard input, or times already known.
+        topology: The circuit.
+        ic: Family and thresholds; a CMOS timer is assumed, with a notice, where none is given.
+        supply_v: Supply in volts, where known.
+        known: Reference of a part to its value in ohms or farads.
+        options: What is overruled.
+
+    Returns:
+        One result.
+
+    Raises:
+        SolveError: If the times are too few, or no parts of the topology give them.
+        BenchtoolError: As ``measure``.
+    """
     from benchtool.assessment import solve_plain
 
     analysis = _times(source, None, None, options)

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, NoReturn
 
 from benchtool.errors import UsageError
 from benchtool.model.capture import Capture, Role, Trace
@@ -122,12 +122,9 @@ def choose_stages(design: Design, name: str | None) -> tuple[Stage, ...]:
 def _stage_target(lineup: Lineup, stage: Stage, channel: str | None, *, alone: bool) -> Target:
     wanted = channel if channel is not None else _named(lineup.capture, stage)
     try:
-        index = (
-            _pick(lineup, wanted)
-            if wanted is not None or alone
-            else _several(lineup.capture, stage)
-        )
-        return _target(lineup, index, stage)
+        if wanted is None and not alone:
+            _refuse_unnamed(lineup.capture, stage)
+        return _target(lineup, _pick(lineup, wanted), stage)
     except UsageError:
         # a lone output is taken whatever the instrument called it, but never without a word
         if channel is not None or not alone or not _lone_output(lineup.roles):
@@ -149,7 +146,7 @@ def _named(capture: Capture, stage: Stage) -> str | None:
     return next(iter((*there, *named)), None)
 
 
-def _several(capture: Capture, stage: Stage) -> int:
+def _refuse_unnamed(capture: Capture, stage: Stage) -> NoReturn:
     raise UsageError(
         f"stage {stage.name} names no channel and the design has several stages",
         hint=f'Write channel = "{capture.traces[0].channel}" into the design, or give --stage.',
@@ -196,7 +193,7 @@ def _target(
         role=lineup.roles[index],
         stage=stage,
         trigger=trigger,
-        supply=_companion(lineup, "supply", None),
+        supply=_companion(lineup, "supply", None) or _supply_of_silent(lineup, index, stage),
         warnings=warnings,
     )
 
@@ -210,3 +207,22 @@ def _companion(lineup: Lineup, role: Role, name: str | None) -> Trace | None:
         if item == role
     ]
     return found[0] if len(found) == 1 else None
+
+
+def _supply_of_silent(lineup: Lineup, index: int, stage: Stage | None) -> Trace | None:
+    """Return the one trace that comes up where a power-on output never answers.
+
+    Its role is output, since nothing happens on another trace to tell it from one.
+    """
+    chosen = lineup.shapes[index].edges
+    if stage is None or stage.topology != "power-on":
+        return None
+    if chosen is not None and chosen.times_s.size:
+        return None
+    edges = [(shape.trace, shape.edges) for i, shape in enumerate(lineup.shapes) if i != index]
+    rising = [
+        trace
+        for trace, found in edges
+        if found is not None and found.rising.size == 1 and found.rising[0]
+    ]
+    return rising[0] if len(rising) == 1 else None

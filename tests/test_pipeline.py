@@ -33,7 +33,7 @@ from benchtool.errors import InputError, MeasurementError
 from benchtool.model.capture import ReadOptions
 from benchtool.model.design import Probe
 from benchtool.model.options import MeasureOptions
-from benchtool.model.quantity import Measured
+from benchtool.model.quantity import Bound, Measured
 from benchtool.model.result import Analysis
 from benchtool.report.document import analysis_document
 from benchtool.uncertainty import expanded
@@ -248,6 +248,22 @@ def test_a_delay_counts_from_the_supply_where_it_is_seen(tmp_path: Path, with_su
     assert result.timing.delay.value == pytest.approx(DELAY_S, abs=0.11)  # two samples
     codes = {notice.code for notice in result.warnings}
     assert ("assumed-delay-from-output" in codes) is not with_supply
+
+
+@pytest.mark.parametrize("held_v", [0.0, 12.0])
+def test_a_power_on_output_that_never_answers_its_supply_fails(
+    tmp_path: Path, held_v: float
+) -> None:
+    _, design = held(tmp_path, with_supply=True)
+    times_s = sample_times(400)
+    supply_v = square_v(times_s, np.array([2.0]))
+    columns = {"HOLD": supply_v * held_v / 12.0, "VCC": supply_v}
+    dead = write_columns(tmp_path / "dead.csv", times_s, columns)
+    analysis = pipeline.analyse(dead, design)
+    bound = analysis.results[0].checks[0].measured
+    assert analysis.verdict == "fail"
+    assert isinstance(bound, Bound)
+    assert bound.at_least == pytest.approx(times_s[-1] - 2.0, abs=0.05)  # one sample
 
 
 def test_solving_a_power_on_record_needs_no_whole_period(tmp_path: Path) -> None:

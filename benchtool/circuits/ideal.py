@@ -14,6 +14,7 @@ from benchtool.model.quantity import Notice
 DIODE_DROP_V = 0.5
 """Drop of a steering diode at an unknown current: that of some 0.1 mA, from memory."""
 
+_UNKNOWN_SUPPLY_V = 5.0  # where the families' starting values are given; shares do not feel it
 _PLACEHOLDER = {"RA": 100e3, "RB": 100e3, "R": 100e3, "C": 1e-6}
 
 
@@ -42,7 +43,7 @@ def bare_circuit(
     """
     stated = ic or Ic(family="cmos")
     _refuse_too_little(topology, stated, supply_v)
-    volts = 1.0 if supply_v is None else supply_v
+    volts = _UNKNOWN_SUPPLY_V if supply_v is None else supply_v
     stage = Stage(
         name="",
         topology=topology.name,
@@ -92,21 +93,21 @@ def _assumed(
 ) -> Iterator[Notice]:
     if ic is None:
         yield Notice(
-            code="assumed-family", text="The IC family was not given: a CMOS timer was assumed."
+            code="assumed-family", text="the IC family was not given: a CMOS timer was assumed"
         )
     if supply_v is None:
         yield Notice(
             code="assumed-supply",
-            text="The supply is not known: only thresholds as shares of it were used, saturation "
-            "voltages and output drops were left out.",
+            text="the supply is not known: only thresholds as shares of it were used, saturation "
+            "voltages and output drops were left out",
         )
     if not known:
         yield Notice(
             code="assumed-ideal-resistances",
-            text="No part value is known: on-resistances, bias and leakage currents were left out.",
+            text="no part value is known: on-resistances, bias and leakage currents were left out",
         )
     if _needs_diode(topology, known):
         yield Notice(
             code="assumed-diode-drop",
-            text=f"The current of the steering diode is not known: {DIODE_DROP_V} V were assumed.",
+            text=f"the current of the steering diode is not known: {DIODE_DROP_V} V were assumed",
         )

@@ -71,6 +71,6 @@ def _contradicted(parts: tuple[PartEstimate, ...]) -> Iterator[Notice]:
     if refs:
         yield Notice(
             code="parts-contradict",
-            text=f"No value for {', '.join(refs)}: with the other parts as marked within their "
-            "tolerances no single value gives all the times.",
+            text=f"no value for {', '.join(refs)}: with the other parts as marked within their "
+            "tolerances no single value gives all the times",
         )

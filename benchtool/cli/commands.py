@@ -1,4 +1,4 @@
-"""The table of verbs."""
+"""The tables of verbs."""
 
 from __future__ import annotations
 
@@ -13,7 +13,7 @@ SECTIONS: dict[str, dict[str, Verb]] = {
     },
     "Design and parts": {
         "design": Verb("design.group", "make, check and show a design file; its limits"),
-        "parts": Verb("parts", "read part markings"),
+        "parts": Verb("parts.group", "read part markings"),
         "simulate": Verb("simulate", "a synthetic capture with its truth"),
     },
     "Reference": {
@@ -29,5 +29,11 @@ DESIGN: dict[str, dict[str, Verb]] = {
         "show": Verb("design.show", "every value the design works with, and its origin"),
         "limits": Verb("design.limits", "limits three ways, with the room against U"),
         "schema": Verb("design.schema", "the JSON Schema of design files, for editors"),
+    },
+}
+
+PARTS: dict[str, dict[str, Verb]] = {
+    "Verbs": {
+        "marking": Verb("parts.marking", "decode part markings: 103, 4n7K, colour bands"),
     },
 }

@@ -15,7 +15,7 @@ import click
 
 from benchtool import __version__
 from benchtool.cli import exits
-from benchtool.cli.commands import DESIGN, SECTIONS
+from benchtool.cli.commands import DESIGN, PARTS, SECTIONS
 from benchtool.cli.verbs import VerbGroup
 from benchtool.errors import BenchtoolError, DesignError, InputError, UsageError
 
@@ -24,7 +24,7 @@ _FULL = InputError(
     hint="Free some space, or send the output elsewhere.",
     code="not-writable",
 )
-_BELOW: dict[str | None, Collection[str]] = {"design": DESIGN["Verbs"], "parts": ("marking",)}
+_BELOW: dict[str | None, Collection[str]] = {"design": DESIGN["Verbs"], "parts": PARTS["Verbs"]}
 _CONTEXT = {"help_option_names": ["-h", "--help"], "max_content_width": 100}
 
 

@@ -10,13 +10,19 @@ from benchtool.cli.output import Output
 
 
 @click.command("selftest")
-@click.option("--captures", type=click.IntRange(100, 100_000), default=1000, show_default=True)
+@click.option(
+    "--captures",
+    type=click.IntRange(100, 100_000),
+    metavar="COUNT",
+    default=1000,
+    show_default=True,
+    help="Simulated captures for the coverage.",
+)
 @output_options
 def command(captures: int, output: Output) -> int:
     """Hold the closed forms against integration, and count how often U covers the truth.
 
-    --captures is the number of simulated captures for the coverage. Exit code 70 where a line
-    does not hold: then do not trust this installation.
+    Exit code 70 where a line does not hold: then do not trust this installation.
     """
     from benchtool.selftest import run_selftest
 

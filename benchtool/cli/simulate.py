@@ -29,27 +29,45 @@ _KINDS = ("waveform", "sampled-logic", "logic")
 @click.option("--size", metavar="SIZE", help="Size of the fault in its own unit; -20% is a share.")
 @click.option("--rate", required=True, metavar="FREQ", help="Samples a second, such as 1kHz.")
 @click.option("--duration", metavar="TIME", help="Length of the record.")
-@click.option("--periods", type=float, help="Length of the record in nominal periods.")
-@click.option("--kind", type=click.Choice(_KINDS), default="waveform", show_default=True)
-@click.option("--record", multiple=True, type=click.Choice(_ROLES), help="Trace; repeatable.")
-@click.option("--bits", type=int, help="Resolution of the converter.")
-@click.option("--noise", metavar="VOLTS", help="Standard deviation of the noise.")
-@click.option("--bandwidth", metavar="FREQ", help="One-pole bandwidth.")
+@click.option(
+    "--periods", type=float, metavar="COUNT", help="Length of the record in nominal periods."
+)
+@click.option(
+    "--kind",
+    type=click.Choice(_KINDS),
+    default="waveform",
+    show_default=True,
+    help="Samples in volts, samples 0 and 1, or times of edges.",
+)
+@click.option(
+    "--record", multiple=True, type=click.Choice(_ROLES), help="Trace to record; repeatable."
+)
+@click.option("--bits", type=int, metavar="COUNT", help="Resolution of the converter.")
+@click.option("--noise", metavar="VOLTS", help="Standard deviation of the noise, such as 20mV.")
+@click.option("--bandwidth", metavar="FREQ", help="One-pole bandwidth of the input, such as 1MHz.")
 @click.option("--jitter", metavar="REL", help="Standard deviation of a period, relative.")
 @click.option("--timebase-error", metavar="REL", help="Relative error of the clock.")
 @click.option("--ripple", metavar='"REL FREQ"', help='On the supply, such as "2% 100Hz".')
 @click.option("--start-up", is_flag=True, help="Switch the supply on inside the record.")
-@click.option("--seed", type=int, default=0, show_default=True)
+@click.option(
+    "--seed",
+    type=int,
+    metavar="NUMBER",
+    default=0,
+    show_default=True,
+    help="The same number gives the same noise again.",
+)
 @output_options
 def command(design: str, output: Output, **given: Any) -> int:
-    r"""Simulate a capture of DESIGN into the file of -o: .csv, .vcd or .npz.
+    """Simulate a capture of DESIGN into the file of -o: .csv, .vcd or .npz.
 
     Beside it, with .truth.json added to its name, goes what the capture holds in truth.
 
     \b
     benchtool simulate mist_valve.toml --rate 200Hz --periods 6 -o good.csv
-    benchtool simulate mist_valve.toml --fault C-low --size=-20% --rate 200Hz --periods 6 -o low.csv
-    """
+    benchtool simulate mist_valve.toml --fault C-low --size=-20% \\
+        --rate 200Hz --periods 6 -o low.csv
+    """  # noqa: D301 - click's mark of lines to keep as they are
     from benchtool.designs import load_design
     from benchtool.simulation import simulate_stage
     from benchtool.targets import choose_stages

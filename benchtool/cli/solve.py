@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING, Any, get_args
 
 import click
 
@@ -16,6 +16,7 @@ from benchtool.cli.options import (
 )
 from benchtool.cli.output import Output
 from benchtool.errors import SolveError, UsageError
+from benchtool.model.design import TopologyName
 from benchtool.model.options import MeasureOptions
 
 if TYPE_CHECKING:
@@ -23,7 +24,6 @@ if TYPE_CHECKING:
     from benchtool.model.result import Analysis
     from benchtool.model.timing import Timing
 
-_TOPOLOGIES = ("astable", "astable-diode", "output-fed", "one-shot", "schmitt", "power-on")
 _PART_UNITS = {"RA": "ohm", "RB": "ohm", "R": "ohm", "C": "F"}
 _CIRCUIT = ("ic", "supply", "upper_threshold", "lower_threshold")
 _FIGURES = {
@@ -40,11 +40,19 @@ _FIGURES = {
 @click.argument("file", required=False, metavar="[FILE]")
 @click.option("--design", metavar="FILE", help="The design file (TOML).")
 @click.option("--stage", metavar="NAME", help="Solve this stage alone.")
-@click.option("--topology", type=click.Choice(_TOPOLOGIES), help="The circuit, without a design.")
+@click.option(
+    "--topology",
+    type=click.Choice(get_args(TopologyName)),
+    help="The circuit, without a design.",
+)
 @click.option("--ic", type=click.Choice(["bipolar", "cmos"]), help="IC family, without a design.")
 @click.option("--supply", metavar="VOLTS", help="Supply, without a design.")
-@click.option("--upper-threshold", metavar="LEVEL", help="Volts, or a share such as 66.7%.")
-@click.option("--lower-threshold", metavar="LEVEL", help="Volts, or a share such as 33.3%.")
+@click.option(
+    "--upper-threshold", metavar="LEVEL", help="Volts, or a share of the supply such as 66.7%."
+)
+@click.option(
+    "--lower-threshold", metavar="LEVEL", help="Volts, or a share of the supply such as 33.3%."
+)
 @click.option("--known", multiple=True, metavar="REF=VALUE", help="A part value that is known.")
 @click.option("--high", metavar="TIME", help="High time, in place of FILE.")
 @click.option("--low", metavar="TIME", help="Low time, in place of FILE.")
@@ -63,7 +71,7 @@ def command(
     output: Output,
     **given: Any,
 ) -> int:
-    r"""Solve the times of FILE, or plain figures, for the R·C products of the parts.
+    """Solve the times of FILE, or plain figures, for the R·C products of the parts.
 
     From the output alone only products can be known. A part value is printed under a stated
     assumption, or with --known RB=330k.
@@ -71,7 +79,7 @@ def command(
     \b
     benchtool solve capture.csv --design board.toml
     benchtool solve --topology astable --high 14.01s --low 10.75s --first 22.20s
-    """
+    """  # noqa: D301 - click's mark of lines to keep as they are
     if (design is None) == (given["topology"] is None):
         raise UsageError(
             "solve needs to know the circuit", hint="Give either --design FILE or --topology NAME."
@@ -131,7 +139,7 @@ def _with_design(
 ) -> Analysis:
     from benchtool.pipeline import solve
 
-    known = known_parts(given["known"])
+    known = _known_parts(given["known"])
     return solve(source, design, stage=given["stage"], known=known, options=options)
 
 
@@ -145,7 +153,7 @@ def _without_design(
         given["topology"],
         ic=_ic(given),
         supply_v=positive("--supply", given["supply"], "V"),
-        known=known_parts(given["known"]),
+        known=_known_parts(given["known"]),
         options=options,
     )
 
@@ -171,7 +179,7 @@ def _threshold(option: str, text: str | None) -> Threshold | None:
     return None if value is None else Threshold(value=value, of_supply=of_supply)
 
 
-def known_parts(texts: tuple[str, ...]) -> dict[str, float]:
+def _known_parts(texts: tuple[str, ...]) -> dict[str, float]:
     """Return reference to value of texts such as ``RB=330k``.
 
     Raises:

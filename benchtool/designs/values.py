@@ -1,4 +1,8 @@
-"""Texts of the design file to SI values; what is wrong is said in plain words with an example."""
+"""Texts of the design file to SI values.
+
+Every function raises ``ValueError`` for a text that is no such value, in plain words that the
+fault of the design file repeats.
+"""
 
 from __future__ import annotations
 

@@ -55,10 +55,9 @@ class Content:
 
     def open(self) -> BinaryIO:
         """Open the bytes for reading; the caller closes."""
-        if self.data is not None:
-            return io.BytesIO(self.data)
-        assert self.path is not None
-        return self.path.open("rb")
+        if self.path is not None:
+            return self.path.open("rb")
+        return io.BytesIO(self.data or b"")
 
     def head(self, n_bytes: int = HEAD_BYTES) -> bytes:
         """Return the first bytes."""

@@ -53,7 +53,11 @@ def contradiction(content: Content, reason: str) -> MalformedCaptureError:
 def foreign_traces(
     arrays: Arrays, options: ReadOptions, content: Content
 ) -> tuple[tuple[Trace, ...], list[StructurePoint], tuple[Notice, ...]]:
-    """Return the channels of another program's arrays."""
+    """Return the channels of another program's arrays.
+
+    Raises:
+        MalformedCaptureError: If none holds numbers (``no-values``).
+    """
     columns = {n: a.ravel() for n, a in arrays.items() if a.size > 1 and a.dtype.kind in "iufb"}
     if not columns:
         raise MalformedCaptureError(

@@ -59,7 +59,13 @@ def read_capture(
 
 
 def choose_format(content: Content, options: ReadOptions) -> Format:
-    """Return the format that claims ``content``, or the one that the user named."""
+    """Return the format that claims ``content``, or the one that the user named.
+
+    Raises:
+        UnknownStructureError: If no format claims it.
+        AmbiguousStructureError: If two claim it equally.
+        UsageError: If there is no format of the name given.
+    """
     if options.format is not None:
         return cast(Format, FORMATS.load(options.format))
     head, tried = content.head(), list[str]()

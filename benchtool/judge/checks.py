@@ -28,13 +28,11 @@ from benchtool.judge.rules import (
 )
 from benchtool.model.decision import StageLimit
 from benchtool.model.design import Rule, Stage
+from benchtool.model.options import TIMEBASE_REL
 from benchtool.model.quantity import Bound, Measured, Notice, Quantity
 from benchtool.model.result import Check, Solution, VerdictName
 from benchtool.model.timing import Intervals, Jitter, Timing
 from benchtool.units import format_value
-
-TIMEBASE_REL = 50e-6
-"""Half-width of a timebase of which nothing is known: common practice for crystals."""
 
 DEFAULT_RULE = Rule()
 
@@ -199,9 +197,9 @@ def _narrow(limit: StageLimit, w: float) -> Notice:
     return Notice(
         code="limits-narrower-than-u",
         text=(
-            f"The limits on {limit.quantity} are {format_value(upper - lower, limit.unit, 3)} "
+            f"the limits on {limit.quantity} are {format_value(upper - lower, limit.unit, 3)} "
             f"apart and the guard band takes {format_value(w, limit.unit, 2)} from each side: "
-            "nothing can pass."
+            "nothing can pass"
         ),
     )
 

@@ -96,9 +96,9 @@ def _stop_notices(stage: Stage, extremes: Extremes, method: Derivation) -> tuple
         Notice(
             code="circuit-may-stop",
             text=(
-                f"Stage {stage.name}: parts inside their tolerances can keep the node from its "
+                f"stage {stage.name}: parts inside their tolerances can keep the node from its "
                 f"threshold ({METHOD_WORDS[method]}: {extremes.stopped}), so nothing limits "
-                "how slow a good board may be."
+                "how slow a good board may be"
             ),
         ),
     )

@@ -57,7 +57,7 @@ def _beyond(quantity: str, measured: Measured, decision: Decision) -> str:
     parts = [f"{100 * distance / abs(limit):.3g} % of the limit"] if limit else []
     U = expanded(measured)
     if U > 0:
-        parts.append(f"{distance / U:.3g} times its U")
+        parts.append(f"{_times(distance / U)} times its U")
     by = f" by {', '.join(parts)}" if parts else ""
     return (
         f"The {NAMES[quantity]}, {_value(measured)}, is {word} its {decision.side} limit of "
@@ -67,7 +67,7 @@ def _beyond(quantity: str, measured: Measured, decision: Decision) -> str:
 
 def _inside(quantity: str, measured: Measured, decision: Decision) -> str:
     U = expanded(measured)
-    times = f", {decision.margin / U:.3g} times its U" if U > 0 else ""
+    times = f", {_times(decision.margin / U)} times its U" if U > 0 else ""
     room = format_value(decision.margin, measured.unit, 3)
     return (
         f"The {NAMES[quantity]} is inside its limits; "
@@ -202,3 +202,8 @@ def _value(measured: Measured) -> str:
 
 def _exact(limit: float, unit: str) -> str:
     return format_value(limit, unit, 6)
+
+
+def _times(multiple: float) -> str:
+    """Return a multiple with three digits, and never with an exponent."""
+    return f"{multiple:.3g}" if multiple < 1000 else f"{multiple:.0f}"

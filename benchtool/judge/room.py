@@ -7,7 +7,6 @@ from collections.abc import Iterator, Mapping
 
 import numpy as np
 
-from benchtool.judge.checks import TIMEBASE_REL
 from benchtool.judge.extremes import draw_boards
 from benchtool.judge.limits import stage_limits
 from benchtool.judge.observations import JITTER_FIELDS
@@ -16,6 +15,7 @@ from benchtool.judge.rules import accept_bounds, guard_band
 from benchtool.model.arrays import FloatArray
 from benchtool.model.decision import Concern, StageLimit
 from benchtool.model.design import Design, Limit, Stage
+from benchtool.model.options import TIMEBASE_REL
 from benchtool.units import format_value
 
 TRIALS = 100_000

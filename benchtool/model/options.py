@@ -10,6 +10,12 @@ from benchtool.model.capture import ReadOptions
 if TYPE_CHECKING:
     from benchtool.model.design import Probe
 
+TIMEBASE_REL = 50e-6
+"""Half-width of a timebase of which nothing is known: common practice for crystals."""
+
+JITTER_REL = 1e-3
+"""Half-width of the jitter assumed where one interval is all there is and nothing is stated."""
+
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class MeasureOptions:

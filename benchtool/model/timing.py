@@ -103,9 +103,6 @@ class Edges:
             raise ValueError("times, directions and uncertainties must be of one length")
 
 
-IntervalKind = Literal["high", "low", "period"]
-
-
 @dataclass(frozen=True, slots=True, kw_only=True)
 class CutInterval:
     """An interval that an end of the record or a gap cuts: known to be at least so long."""

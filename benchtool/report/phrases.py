@@ -114,7 +114,8 @@ def room_text(check: Check) -> str:
         rooms.append(check.upper - check.measured.value)
     if not rooms or U == 0:
         return "–"
-    return f"{min(rooms) / U:+.1f} U" if abs(min(rooms)) < 1000 * U else f"{min(rooms) / U:+.0e} U"
+    room = min(rooms) / U
+    return f"{room:+.1f} U" if abs(room) < 1000 else f"{room:+.0f} U"
 
 
 def verdict_sentence(result: StageResult) -> str:

@@ -222,7 +222,11 @@ def charge_legs(network: Network, begin_v: float, start_s: float, wave: Wave) ->
 
 
 def discharge_leg(network: Network, begin_v: float, start_s: float, wave: Wave) -> Leg:
-    """Return the leg from ``begin_v`` until the node turns at the lower threshold."""
+    """Return the leg from ``begin_v`` until the node turns at the lower threshold.
+
+    Raises:
+        ValueError: If the circuit never discharges.
+    """
     pull = network.discharge
     if pull is None:
         raise ValueError("this circuit never discharges")

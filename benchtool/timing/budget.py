@@ -14,6 +14,7 @@ from benchtool.model.timing import Edges, Intervals
 from benchtool.timing.grid import blurred_width_floor, phase_lock, width_floor
 from benchtool.timing.noise import NoiseFit, fit_noise
 from benchtool.timing.scatter import ENOUGH
+from benchtool.units import format_value
 
 FEW = 6
 """Intervals below which chance may hide the grid from their scatter."""
@@ -39,7 +40,14 @@ class Setting:
 def settle_budget(
     intervals: Intervals, edges: Edges, timebase_rel: float, jitter_rel: float
 ) -> Setting:
-    """Return what all figures share: mean period and noise, besides what was assumed."""
+    """Return what all figures share: mean period and noise, besides what was assumed.
+
+    Args:
+        intervals: What was cut out of the trace.
+        edges: Where its edges lie.
+        timebase_rel: Half-width of the timebase error, relative.
+        jitter_rel: Assumed jitter where one interval is all there is, relative half-width.
+    """
     period_s = intervals.period_s
     return Setting(
         intervals=intervals,
@@ -82,6 +90,12 @@ def with_floor(
 
     A few intervals on a grid can agree by chance, so there both are added. Where edges are
     interpolated the floor is a rough figure and, of a few, no surer than their scatter.
+
+    Args:
+        setting: What all figures share.
+        own: The scatter of the figure, in its unit.
+        floor: Standard uncertainty that the grid alone gives, in the same unit.
+        n: Number of intervals, 1 or more.
     """
     few = n < FEW
     scatter = math.sqrt(sum(term.u**2 for term in own))
@@ -96,7 +110,7 @@ def single_interval(setting: Setting, value: float) -> list[Contribution]:
     jitter = Contribution(
         source="assumed jitter",
         u=value * setting.jitter_rel / math.sqrt(3),
-        note=f"half-width {setting.jitter_rel:.2g} of one interval, rectangular",
+        note=f"half-width {format_value(setting.jitter_rel, '1', 2)} of one interval, rectangular",
     )
     noise = Contribution(
         source="edge noise",
@@ -118,7 +132,7 @@ def scale_errors(setting: Setting, value: float) -> Iterator[Contribution]:
         source="timebase",
         u=value * setting.timebase_rel / math.sqrt(3),
         common=True,
-        note=f"half-width {setting.timebase_rel:.2g}, rectangular",
+        note=f"half-width {format_value(setting.timebase_rel, '1', 2)}, rectangular",
     )
     yield Contribution(
         source="time stamps",

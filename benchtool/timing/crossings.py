@@ -29,7 +29,6 @@ class Crossings:
         rising: Direction in volts, shape (n,).
         before, after: Samples on both sides of that crossing, shape (n,).
         before_s, after_s: Their times in seconds, shape (n,).
-        chatter_s: Time from the first to the last crossing of the same transition, shape (n,).
         start_s, end_s: Times of the run's first and last sample.
         starts_high: State in which the run begins.
         n_runts: Pulses that cross the mid level and return without reaching the other state.
@@ -42,7 +41,6 @@ class Crossings:
     after: FloatArray
     before_s: FloatArray
     after_s: FloatArray
-    chatter_s: FloatArray
     start_s: float
     end_s: float
     starts_high: bool
@@ -214,7 +212,6 @@ def _settle(run: _Run, inverted: bool) -> Crossings:
     first, last = firm[turns], firm[turns + 1] - 1  # first and last crossing of the transition
     middle = (first + last) // 2
     rising = above[firm[turns + 1]] != inverted if turns.size else np.empty(0, np.bool_)
-    after_s = _joined(run.after_s, np.float64)
     begins = above[firm[0]] if firm.size else above[0]
     returns = np.diff(firm)[above[firm][1:] == above[firm][:-1]]
     return Crossings(
@@ -223,8 +220,7 @@ def _settle(run: _Run, inverted: bool) -> Crossings:
         before=_joined(run.before, np.float64)[middle],
         after=_joined(run.after, np.float64)[middle],
         before_s=_joined(run.before_s, np.float64)[middle],
-        after_s=after_s[middle],
-        chatter_s=after_s[last] - after_s[first],
+        after_s=_joined(run.after_s, np.float64)[middle],
         start_s=run.start_s,
         end_s=run.end_s,
         starts_high=bool(begins != inverted),

@@ -6,6 +6,7 @@ import math
 
 import numpy as np
 
+from benchtool.model.options import JITTER_REL, TIMEBASE_REL
 from benchtool.model.quantity import Bound, Contribution, Quantity
 from benchtool.model.timing import Edges
 from benchtool.uncertainty import combine
@@ -18,8 +19,8 @@ def measure_delay(
     start: Edges,
     answer: Edges,
     *,
-    timebase_rel: float = 50e-6,
-    jitter_rel: float = 1e-3,
+    timebase_rel: float = TIMEBASE_REL,
+    jitter_rel: float = JITTER_REL,
     powers: bool = False,
 ) -> Quantity | None:
     """Return the time from the first edge of one trace to the next edge of another.

@@ -18,6 +18,11 @@ def period_floor(step_s: float, n: int, n_chains: int = 1) -> float:
     """Return the standard uncertainty that the grid gives the mean of n periods, in seconds.
 
     Only the first and the last edge of each succession count: Ts·√chains/(n√6).
+
+    Args:
+        step_s: Grid step Ts in seconds.
+        n: Number of periods, 1 or more.
+        n_chains: Number of successions without a gap, 1 or more.
     """
     return step_s * math.sqrt(n_chains) / (n * math.sqrt(6))
 

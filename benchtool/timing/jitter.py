@@ -74,6 +74,11 @@ def grid_share(grid_s: float, period_s: float) -> float:
 def observed_variance(sigma_s: float, period_s: float, grid_s: float) -> float:
     """Return the variance of periods on a grid whose true sd is ``sigma_s``, in s².
 
+    Args:
+        sigma_s: True standard deviation of the periods in seconds.
+        period_s: Mean period in seconds.
+        grid_s: Grid step Ts in seconds, above 0.
+
     References:
         s² = σ² + Ts²[1/6 - π⁻²·Σ_k cos(2πkf)·exp(-2π²k²σ²/Ts²)/k²], f = frac(T/Ts): two rounding
         errors of a uniformly placed edge, correlated through the fraction of the period.

@@ -26,6 +26,9 @@ _BINS = 256
 _REFERENCE = 0.2  # lower reference at 20 %, upper at 80 % of the amplitude
 _INDEPENDENT = 0.7  # of the samples of a state: the same noise chose where its stretches end
 _REMAINING = 2.0  # of an exponential seen to settle over a seventh of a state, still to come
+_MOST_SPIKES = 0.03  # of the samples
+_SPIKE_SAMPLES = 3  # that a spike lasts, in the mean
+_LEAST_WAVE = 0.1  # of the range with the spikes
 _INWARDS = 0.4  # as far as a wandering state may push a reference level
 
 
@@ -66,8 +69,30 @@ def _decide(waveform: Waveform, survey: Survey) -> Levels:
     values = survey.values
     levels = _two_levels(survey, values)
     if is_two_state(survey, values, levels):
-        return levels
+        return _behind_spikes(survey, levels) or levels
     return _one_level(kind_without_states(survey, values), survey)
+
+
+def _behind_spikes(survey: Survey, levels: Levels) -> Levels | None:
+    """Return the levels of a wave whose spikes were taken for a state, None where none were.
+
+    Spikes are few and short, and without them a wave is left; behind the narrow pulses of a real
+    state there is only the noise of the other.
+    """
+    beyond = [run > levels.mid_v for run in survey.runs]
+    if 2 * sum(int(run.sum()) for run in beyond) > survey.values.size:
+        beyond = [~run for run in beyond]
+    n = sum(int(run.sum()) for run in beyond)
+    n_visits = sum(int(run[0]) + int(np.count_nonzero(run[1:] > run[:-1])) for run in beyond)
+    if n > _MOST_SPIKES * survey.values.size or n > _SPIKE_SAMPLES * n_visits:
+        return None
+    kept = tuple(run[~far] for run, far in zip(survey.runs, beyond, strict=True) if not far.all())
+    values = np.concatenate(kept)
+    rest = replace(survey, runs=kept, least=float(values.min()), greatest=float(values.max()))
+    if rest.greatest - rest.least < _LEAST_WAVE * (survey.greatest - survey.least):
+        return None
+    within = _two_levels(rest, values)
+    return (_behind_spikes(rest, within) or within) if is_two_state(rest, values, within) else None
 
 
 def _two_levels(survey: Survey, values: FloatArray) -> Levels:

@@ -69,7 +69,11 @@ def piece_times(waveform: Waveform, piece: Piece) -> FloatArray:
 
 
 def times_at(waveform: Waveform, piece: Piece, positions: Index) -> FloatArray:
-    """Return the times of some samples of a piece, given by their positions in it."""
+    """Return the times of some samples of a piece, given by their positions in it, in seconds.
+
+    Raises:
+        TypeError: If a stamped waveform's piece came without its times.
+    """
     if piece.times_s is not None:
         return piece.times_s[positions]
     if not isinstance(waveform.time, UniformTime):

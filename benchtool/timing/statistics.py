@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 
 from benchtool.model.arrays import FloatArray
+from benchtool.model.options import JITTER_REL, TIMEBASE_REL
 from benchtool.model.quantity import Contribution, Measured
 from benchtool.model.timing import Edges, Intervals, Timing
 from benchtool.timing.bounds import bound_duration, bound_frequency, bound_period
@@ -26,9 +27,6 @@ from benchtool.timing.noise import NoiseFit
 from benchtool.timing.remarks import direction_notice, few_notice
 from benchtool.timing.scatter import ENOUGH, Mean, mean_of_periods, mean_of_widths
 from benchtool.uncertainty import combine, propagate
-
-TIMEBASE_REL = 50e-6
-JITTER_REL = 1e-3
 
 
 def measure_timing(

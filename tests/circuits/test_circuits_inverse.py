@@ -14,7 +14,7 @@ from benchtool.circuits import TOPOLOGIES, circuit_at, predict, products, solve
 from benchtool.circuits import solve_without_design as solve_plain
 from benchtool.errors import SolveError, UsageError
 from benchtool.model.design import Ic, Probe
-from benchtool.model.quantity import Bound
+from benchtool.model.quantity import Bound, Measured
 from benchtool.model.timing import Timing
 
 # tau_RA is a difference: its digits are those of the times less those that RB/RA takes.
@@ -354,3 +354,19 @@ def test_an_open_capacitor_is_solved_though_nothing_is_near_its_marking():
     found = solve(timing, stage, design)
     assert found.tau_charge.value == pytest.approx(5.8e3 * 60e-12, rel=1e-9)
     assert found.parts[1].estimate.value == pytest.approx(60e-12, rel=1e-9)
+
+
+def test_an_unknown_supply_takes_the_on_resistance_where_it_is_published() -> None:
+    """14 Ω at 5 V (SLFS043C, computed from 0.14 V at 10 mA): the same as with 5 V stated."""
+    timing = Timing(
+        t_high=Measured(value=14.0, u=0.01, unit="s"), t_low=Measured(value=10.7, u=0.01, unit="s")
+    )
+    unknown = solve_plain(timing, "astable", known={"RB": 1e3})
+    at_five = solve_plain(timing, "astable", supply_v=5.0, known={"RB": 1e3})
+    estimates = [
+        next(part.estimate for part in solution.parts if part.ref == "C")
+        for solution in (unknown, at_five)
+    ]
+    assert estimates[0] is not None
+    assert estimates[1] is not None
+    assert estimates[0].value == pytest.approx(estimates[1].value, rel=1e-4)  # leakage left out

@@ -116,7 +116,7 @@ def run_encoded(monkeypatch: pytest.MonkeyPatch, encoding: str, *arguments: str)
 def test_signs_that_ascii_lacks_are_spelled(
     monkeypatch: pytest.MonkeyPatch, good: Path, design: Path
 ) -> None:
-    out = run_encoded(monkeypatch, "ascii", "judge", str(good), "--design", str(design))
+    out = run_encoded(monkeypatch, "ascii", "solve", str(good), "--design", str(design))
     assert "24.770 s +/- 0.036 s" in out
     assert "47 uF" in out
     assert "330 kohm" in out
@@ -188,6 +188,7 @@ def test_every_verb_has_its_help_and_the_common_options(capsys: Capsys, verb: st
     assert ran.code == 0
     for option in ("--json", "-o ", "--quiet", "--no-color", "--force"):
         assert option in ran.out
+    assert "\\b" not in ran.out  # click's mark of an example is not part of it
 
 
 def test_measuring_verbs_share_their_options(capsys: Capsys) -> None:

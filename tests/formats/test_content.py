@@ -38,7 +38,7 @@ def test_directory(tmp_path: Path) -> None:
     with pytest.raises(InputError, match="directory") as caught:
         read_capture(tmp_path)
     assert caught.value.code == "is-directory"
-    assert "survey" in caught.value.hint
+    assert "one file" in caught.value.hint
 
 
 def test_no_permission(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:

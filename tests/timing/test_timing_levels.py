@@ -31,6 +31,28 @@ def test_state_levels_lie_within_their_uncertainty(bits: int) -> None:
     assert np.sqrt(np.mean(np.square(errors))) < 1.3
 
 
+@pytest.mark.parametrize("spike_v", [12.0, 25.0, -8.0])
+@pytest.mark.parametrize("n_spikes", [3, 40])
+def test_spikes_are_no_state(spike_v: float, n_spikes: int) -> None:
+    rng = np.random.default_rng(5)
+    volts = 5 * square() + rng.normal(0, 0.02, 7000)
+    volts[rng.choice(7000, n_spikes, replace=False)] = spike_v
+    levels = find_levels(as_waveform(volts, DT_S))
+    assert levels.kind == "two-state"
+    assert levels.mid_v == pytest.approx(2.5, abs=0.02)
+
+
+@pytest.mark.parametrize("width", [1, 2, 5])
+def test_the_narrow_pulses_of_a_state_are_no_spikes(width: int) -> None:
+    rng = np.random.default_rng(6)
+    volts = rng.normal(0, 0.02, 7000)
+    for start in range(500, 7000, 1000):
+        volts[start : start + width] += 5.0
+    levels = find_levels(as_waveform(np.round(volts / 0.04) * 0.04, DT_S))
+    assert levels.kind == "two-state"
+    assert levels.high_v == pytest.approx(5.0, abs=0.04)
+
+
 def test_noise_of_a_state_is_found_beside_edges_and_quantisation() -> None:
     rng = np.random.default_rng(1)
     levels = find_levels(digitise(square(), DT_S, bits=12, noise_v=0.03, rng=rng))

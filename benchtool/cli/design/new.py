@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import sys
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING, Any, get_args
 
 import click
 
@@ -11,18 +11,11 @@ from benchtool.cli.exits import OK
 from benchtool.cli.options import output_options
 from benchtool.cli.output import Output
 from benchtool.errors import UsageError
+from benchtool.model.design import TopologyName
 
 if TYPE_CHECKING:
     from benchtool.designs import NewDesign
 
-_PARTS = {
-    "astable": ("RA", "RB", "C"),
-    "astable-diode": ("RA", "RB", "C"),
-    "output-fed": ("R", "C"),
-    "one-shot": ("R", "C"),
-    "schmitt": ("R", "C"),
-    "power-on": ("R", "C"),
-}
 _QUESTIONS = {
     "RA": ("RA with its tolerance", "100k 1%"),
     "RB": ("RB with its tolerance", "330k 1%"),
@@ -34,26 +27,32 @@ _QUESTIONS = {
 @click.command("new")
 @click.option("--name", metavar="TEXT", help="Name of the board.")
 @click.option("--stage", metavar="NAME", help="Name of the stage (main).")
-@click.option("--topology", type=click.Choice(list(_PARTS)), help="The circuit.")
+@click.option("--topology", type=click.Choice(get_args(TopologyName)), help="The circuit.")
 @click.option("--RA", "RA", metavar="PART", help='Such as "100k 1%".')
 @click.option("--RB", "RB", metavar="PART", help='Such as "330k 1%".')
 @click.option("--R", "R", metavar="PART", help="The one resistor of the other topologies.")
 @click.option("--C", "C", metavar="PART", help='Such as "47u 10%".')
 @click.option("--supply", metavar="VOLTS", help='Such as "12 V 5%".')
 @click.option("--ic", type=click.Choice(["cmos", "bipolar"]), help="IC family (cmos).")
-@click.option("--upper-threshold", metavar="LEVEL", help="For a Schmitt inverter.")
-@click.option("--lower-threshold", metavar="LEVEL", help="For a Schmitt inverter.")
-@click.option("--u-threshold", metavar="REL", help="Relative u of the thresholds.")
+@click.option(
+    "--upper-threshold", metavar="LEVEL", help="For a Schmitt inverter: volts or a share."
+)
+@click.option(
+    "--lower-threshold", metavar="LEVEL", help="For a Schmitt inverter: volts or a share."
+)
+@click.option("--u-threshold", metavar="REL", help="Relative u of the thresholds, such as 3%.")
 @click.option("--channel", metavar="NAME", help="Name of the output's trace in the captures.")
-@click.option("--limit", "limits", multiple=True, metavar="NAME=LIMIT", help='period="25 s 5%".')
+@click.option(
+    "--limit", "limits", multiple=True, metavar="NAME=LIMIT", help='Such as period="25 s 5%".'
+)
 @output_options
 def command(output: Output, **given: Any) -> int:
-    r"""Write a design file, from options; what is missing is asked for on a terminal.
+    """Write a design file, from options; what is missing is asked for on a terminal.
 
     \b
     benchtool design new --name "Mist valve timer" --topology astable \\
         --RA "100k 1%" --RB "330k 1%" --C "47u 10%" --supply "12 V 5%" -o mist.toml
-    """
+    """  # noqa: D301 - click's mark of lines to keep as they are
     from benchtool.designs import write_design
 
     answers = _answers(_completed(given))
@@ -65,6 +64,8 @@ def command(output: Output, **given: Any) -> int:
 
 def _completed(given: dict[str, Any]) -> dict[str, Any]:
     """Ask for what is missing where somebody can answer; else say what is missing."""
+    from benchtool.designs.vocabulary import TOPOLOGY_PARTS
+
     complete = dict(given)
     for key, question, default in _missing(complete):
         if not sys.stdin.isatty():
@@ -73,7 +74,7 @@ def _completed(given: dict[str, Any]) -> dict[str, Any]:
                 hint=f"{question}, such as {default!r}.",
             )
         complete[key] = click.prompt(question, default=default, err=True)
-    for ref in _PARTS[complete["topology"]]:
+    for ref in TOPOLOGY_PARTS[complete["topology"]]:
         if complete[ref] is None:
             complete |= _completed_part(complete, ref)
     return complete
@@ -82,7 +83,7 @@ def _completed(given: dict[str, Any]) -> dict[str, Any]:
 def _missing(given: dict[str, Any]) -> list[tuple[str, str, str]]:
     asked = [
         ("name", "Name of the board", "Mist valve timer"),
-        ("topology", f"Topology ({', '.join(_PARTS)})", "astable"),
+        ("topology", f"Topology ({', '.join(get_args(TopologyName))})", "astable"),
         ("supply", "Supply with its tolerance", "12 V 5%"),
     ]
     if given["topology"] == "schmitt":

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import re
-from collections.abc import Iterable, Iterator
+from collections.abc import Callable, Iterable, Iterator
 from dataclasses import dataclass
 from itertools import pairwise
 from typing import TypeVar
@@ -190,8 +190,7 @@ def _value(text: str, decimal: str) -> float:
     return number(text, "." if "." in text else decimal)
 
 
-def _unit_statement(tokens: list[str], is_key: object) -> tuple[str, str] | None:
-    assert callable(is_key)
+def _unit_statement(tokens: list[str], is_key: Callable[[str], bool]) -> tuple[str, str] | None:
     for key, value in pairwise(tokens):
         if is_key(key) and words.is_unit(value):
             return value.strip("\"'()[] "), f"metadata '{key}: {value}'"

@@ -208,8 +208,8 @@ def _interval_point(
     structure: Structure, timebases: tuple[Timebase, ...]
 ) -> tuple[str, str] | None:
     if not timebases:
-        assert structure.stated is not None
-        return f"{structure.stated.value:.9g} s", structure.stated.evidence
+        stated = structure.stated
+        return (f"{stated.value:.9g} s", stated.evidence) if stated else None
     uniform = timebases[0].uniform
     shown = f"{uniform.dt_s:.9g} s" if uniform else "irregular"
     return shown, timebases[0].evidence

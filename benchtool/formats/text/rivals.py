@@ -76,7 +76,11 @@ def _ambiguous_groups(layout: Layout, source: str) -> AmbiguousStructureError:
 def refuse_decimal_comma(
     layout: Layout, lines: list[str], options: ReadOptions, source: str
 ) -> None:
-    """Refuse a comma that may be both the delimiter and the decimal mark."""
+    """Refuse a comma that may be both the delimiter and the decimal mark.
+
+    Raises:
+        AmbiguousStructureError: Where the rows leave it open and no option settles it.
+    """
     if layout.delimiter != "," or layout.decimal == "," or options.delimiter or options.decimal:
         return
     if any("." in cell or '"' in cell for row in layout.rows for cell in row):

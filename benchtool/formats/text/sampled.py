@@ -190,7 +190,11 @@ def is_logic(column: Column, channel: Range, layout: Layout, *, others: bool) ->
 
 
 def refuse_empty(ranges: tuple[Range, ...], source: str) -> None:
-    """Raise where no channel holds a single number."""
+    """Refuse a file no channel of which holds a single number.
+
+    Raises:
+        MalformedCaptureError: With code ``no-values``.
+    """
     if not any(channel.n_told for channel in ranges):
         raise MalformedCaptureError(
             f"no value column of {source} holds a number",

@@ -59,7 +59,6 @@ class Scan:
     n_rows: int = 0
     table: FloatArray | None = None
     first: FloatArray = field(default_factory=lambda: np.empty((0, 0)))
-    n_missing_lines: int = 0
     first_missing: int | None = None
     skipped: list[tuple[int, int, bool]] = field(default_factory=list)
 

@@ -90,9 +90,8 @@ def _of_day(match: re.Match[str]) -> int:
 
 
 def _zone(text: str | None) -> int:
-    if text in (None, "Z", "UTC"):
+    if text is None or text in ("Z", "UTC"):
         return 0
-    assert text is not None
     sign = -1 if text[0] == "-" else 1
     return sign * (int(text[1:3]) * 3600 + int(text[-2:]) * 60)
 

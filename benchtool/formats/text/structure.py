@@ -192,8 +192,7 @@ def _joined(row: Sequence[str], clock: ClockColumn) -> str:
 def _unit_of(
     clock: ClockColumn, metadata: Metadata, options: ReadOptions, stated: Stated | None
 ) -> FoundUnit:
-    if clock.kind == "index":
-        assert stated is not None
+    if clock.kind == "index" and stated is not None:
         unit = TimeUnit(name="samples", times=stated.value)
         return FoundUnit(unit=unit, evidence=f"{clock.evidence}; interval from {stated.evidence}")
     return find_time_unit(clock, metadata, options, stated.value if stated else None)

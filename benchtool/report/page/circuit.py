@@ -58,7 +58,7 @@ def _part(part: PartEstimate) -> tuple[str, ...]:
     return (
         part.ref,
         quantity_text(part.estimate),
-        f"{100 * part.change.value:+.1f} %" if part.change else "–",
+        f"{100 * part.change.value:+z.1f} %" if part.change else "–",
         "–" if part.nominal is None else format_value(part.nominal, unit),
         _WITHIN[part.within_tolerance] if part.nominal is not None else "–",
         " and ".join(part.assumes) or "nothing assumed",

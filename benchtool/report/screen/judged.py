@@ -5,12 +5,12 @@ from __future__ import annotations
 from rich.console import Console
 from rich.text import Text
 
-from benchtool.model.quantity import Measured
 from benchtool.model.result import Analysis, Check, StageResult
 from benchtool.report.commands import quoted
-from benchtool.report.numberline import NumberLine, draw_line
+from benchtool.report.numberline import draw_line
 from benchtool.report.phrases import (
     VERDICT_STYLES,
+    check_line,
     conform_text,
     file_name,
     gloss,
@@ -30,7 +30,6 @@ from benchtool.report.screen.blocks import (
 from benchtool.report.screen.blocks import draw_line as draw_words
 from benchtool.report.screen.measured import trace_line, trace_title
 from benchtool.report.screen.solved import draw_products
-from benchtool.uncertainty import expanded
 
 _NAME = 17
 _VALUE = 34
@@ -58,7 +57,7 @@ def _draw_stage(console: Console, analysis: Analysis, result: StageResult) -> No
         draw_words(console, result.likely)
     for check in result.checks:
         _draw_check(console, check, said=verdict_sentence(result))
-    draw_products(console, result)
+    draw_products(console, result, with_parts=result.verdict != "pass")
     draw_notes(console, analysis, result)
     console.print()
 
@@ -85,7 +84,7 @@ def _draw_check(console: Console, check: Check, *, said: str) -> None:
     name = Text(f"{gloss(check.quantity):<{_NAME}}", style="dim")
     limits = limits_text(check.lower, check.upper, check.unit)
     draw_cells(console, name, Text(f"{limits}  ({check.source})", style="dim"))
-    line = draw_line(number_line(check), min(console.width - 2 * INDENT - _NAME, _LINE))
+    line = draw_line(check_line(check), min(console.width - 2 * INDENT - _NAME, _LINE))
     draw_cells(console, Text(" " * _NAME), Text(line.rstrip()))
     why = () if check.verdict == "pass" or check.reason == said else (check.reason,)
     for words in (*why, _odds(check)):
@@ -101,19 +100,6 @@ def _odds(check: Check) -> str:
     if check.p_conform is not None:
         words.append(f"conforms with probability {conform_text(check.p_conform)}")
     return ", ".join(words)
-
-
-def number_line(check: Check) -> NumberLine:
-    """Return what the number line of a check shows."""
-    measured = check.measured if isinstance(check.measured, Measured) else None
-    return NumberLine(
-        value=measured.value if measured else None,
-        U=expanded(measured) if measured else 0.0,
-        lower=check.lower,
-        upper=check.upper,
-        accept_lower=check.accept_lower,
-        accept_upper=check.accept_upper,
-    )
 
 
 def _next_command(analysis: Analysis) -> str:

@@ -45,16 +45,16 @@ def _circuit(result: StageResult) -> str:
     return f", solved as {result.solution.topology}" if result.solution else ""
 
 
-def draw_products(console: Console, result: StageResult) -> None:
+def draw_products(console: Console, result: StageResult, *, with_parts: bool = True) -> None:
     """Draw the products, then part values with what each assumes."""
     solution = result.solution
     if solution is None:
         return
     console.print()
     draw_rows(console, _product_rows(solution))
-    parts = [part for part in solution.parts if part.estimate is not None]
-    for part in parts:
-        _draw_part(console, part)
+    for part in solution.parts if with_parts else ():
+        if part.estimate is not None:
+            _draw_part(console, part)
 
 
 def _product_rows(solution: Solution) -> list[tuple[str, str, str]]:
@@ -80,7 +80,7 @@ def _draw_part(console: Console, part: PartEstimate) -> None:
     unit = part.estimate.unit if part.estimate else "1"
     nominal = f"marked {format_value(part.nominal, unit)}" if part.nominal else ""
     within = _WITHIN[part.within_tolerance] if part.nominal else ""
-    change = f"{100 * part.change.value:+.1f} %" if part.change else ""
+    change = f"{100 * part.change.value:+z.1f} %" if part.change else ""
     console.print()
     value = Text(f"{quantity_text(part.estimate)}   {nominal} {change} {within}".rstrip())
     draw_cells(console, Text(f"{part.ref:<4}", style="bold"), value)

@@ -1,4 +1,4 @@
-"""``benchtool parts``: what parts are marked with."""
+"""``benchtool parts marking``: what parts are marked with."""
 
 from __future__ import annotations
 
@@ -11,16 +11,11 @@ from benchtool.cli.options import output_options
 from benchtool.cli.output import Output
 
 
-@click.group("parts", no_args_is_help=True)
-def command() -> None:
-    """Read what parts are marked with."""
-
-
-@command.command("marking", short_help="decode part markings: 103, 4n7K, colour bands")
+@click.command("marking")
 @click.argument("texts", nargs=-1, required=True, metavar="TEXT...")
 @click.option("--kind", type=click.Choice(["capacitor", "resistor"]), help="What the part is.")
 @output_options
-def marking(texts: tuple[str, ...], kind: Any, output: Output) -> int:
+def command(texts: tuple[str, ...], kind: Any, output: Output) -> int:
     """Decode part markings: 103, 4n7K, 472 X7R 50V, yellow violet red gold.
 
     Every sound way to read a marking is shown, the likeliest first.
