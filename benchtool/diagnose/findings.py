@@ -23,6 +23,9 @@ _MAY_BE: dict[str, tuple[str, ...]] = {
     "missed-edge": ("supply-ripple", "control-bypass-missing", "lower-threshold"),
     "false-trigger": ("supply-ripple", "control-bypass-missing"),
 }
+_RESTING = ("one-shot", "power-on")
+"""Topologies whose output may rest."""
+
 _MISSED = "missing pulse"
 _FALSE = ("glitch", "runt", "bounce")
 
@@ -75,6 +78,7 @@ def find_findings(
     """
     candidates = (
         _stuck(levels, edges, supply_v),
+        _stopped(intervals) if topology not in _RESTING else None,
         _drifting(timing),
         _disturbed(intervals, "missed-edge", (_MISSED,)),
         _disturbed(intervals, "false-trigger", _FALSE),
@@ -105,6 +109,15 @@ def _stuck(levels: Levels | None, edges: Edges, supply_v: float | None) -> Findi
     at = f" at {format_value(levels.low_v, 'V')}" if levels else ""
     text = f"The output stays {state}{at} for the whole record of {format_value(length_s, 's')}."
     return _finding(f"stuck-{state}", text)
+
+
+def _stopped(intervals: Intervals) -> Finding | None:
+    last = intervals.standstill
+    if last is None:
+        return None
+    length = format_value(last.at_least_s, "s")
+    text = f"The output stops in the record: {last.kind} for its last {length}."
+    return _finding(f"stuck-{last.kind}", text)
 
 
 def _drifting(timing: Timing) -> Finding | None:

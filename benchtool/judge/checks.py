@@ -9,13 +9,16 @@ from typing import Literal
 from benchtool.judge.observations import (
     JITTER_FIELDS,
     Observations,
+    halt,
     limit_on_flat,
+    longest_nominal,
     observe,
     stretch_without_end,
 )
 from benchtool.judge.reasons import (
     explain_bound,
     explain_decision,
+    explain_halt,
     explain_nothing,
     explain_stretch,
 )
@@ -74,6 +77,7 @@ def judge_stage(  # noqa: PLR0913 - each record that a capture gives is an argum
     """
     seen = Observations(
         topology=stage.topology,
+        nominal_s=longest_nominal(limits),
         timing=timing,
         jitter=jitter,
         solution=solution,
@@ -144,6 +148,8 @@ def _stopped(
     limit: StageLimit, seen: Observations, uppers: Mapping[str, float | None], w_rel: float
 ) -> str | None:
     """Return the reason where the output stood still for longer than the limits allow."""
+    if halted := halt(seen):
+        return explain_halt(limit.quantity, halted)
     length_s = stretch_without_end(limit.quantity, seen)
     if length_s is not None and _outlasts(length_s, limit.upper, w_rel):
         return explain_stretch(limit.quantity, length_s, limit.upper or 0.0, whole=False)

@@ -2,10 +2,11 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterable, Iterator
 from dataclasses import dataclass
 from typing import Literal
 
+from benchtool.model.decision import StageLimit
 from benchtool.model.quantity import Bound, Measured, Quantity
 from benchtool.model.result import Solution
 from benchtool.model.timing import Intervals, Jitter, Timing
@@ -26,6 +27,7 @@ class Observations:
         topology: The stage's topology.
         timing, jitter, solution: What was measured; None where it could not be.
         intervals: For the intervals that the ends of the record cut.
+        nominal_s: Longest time that the design means to see, seconds; None where it has none.
         flat_s: Length of a record without an edge, seconds.
         flat_state: The state in which it lies, None where it lies between the two.
     """
@@ -35,6 +37,7 @@ class Observations:
     jitter: Jitter | None = None
     solution: Solution | None = None
     intervals: Intervals | None = None
+    nominal_s: float | None = None
     flat_s: float | None = None
     flat_state: Literal["high", "low"] | None = None
 
@@ -101,6 +104,32 @@ def _unbroken(name: str, seen: Observations) -> Iterator[float]:
         )
     if seen.flat_s is not None and (state is None or state == seen.flat_state):
         yield seen.flat_s
+
+
+def longest_nominal(limits: Iterable[StageLimit]) -> float | None:
+    """Return the longest nominal time among the limits in seconds, None where there is none."""
+    times_s = [limit.nominal for limit in limits if limit.unit == "s" and limit.nominal]
+    times_s += [1 / limit.nominal for limit in limits if limit.unit == "Hz" and limit.nominal]
+    return max(times_s, default=None)
+
+
+def halt(seen: Observations) -> float | None:
+    """Return how long an output that must keep changing stood still, None where it did not.
+
+    An interval at the end counts that far outlasts all before it, and so does a record without an
+    edge that lasts three times the longest nominal time: then no quantity can be as meant,
+    whatever its limits.
+
+    Args:
+        seen: All that was measured.
+    """
+    if seen.topology not in FREE_RUNNING or seen.between_states:
+        return None
+    last = seen.intervals.standstill if seen.intervals else None
+    if last is not None:
+        return last.at_least_s
+    is_long = seen.flat_s and seen.nominal_s and seen.flat_s > 3 * seen.nominal_s
+    return seen.flat_s if is_long else None
 
 
 def stretch_without_end(name: str, seen: Observations) -> float | None:

@@ -171,6 +171,19 @@ def explain_stretch(quantity: str, length_s: float, upper_s: float, *, whole: bo
     )
 
 
+def explain_halt(quantity: str, length_s: float) -> str:
+    """Say that the output stopped, whatever the limits are.
+
+    Args:
+        quantity: Timing name.
+        length_s: How long it stood still, seconds.
+    """
+    return (
+        f"The output stood still for {format_value(length_s, 's')}, far longer than any part of "
+        f"its cycle, so the {NAMES[quantity]} fails."
+    )
+
+
 def explain_nothing(quantity: str, *, sound: bool, between: bool) -> str:
     """Say that there is neither a value nor a bound.
 

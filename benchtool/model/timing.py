@@ -154,6 +154,18 @@ class Intervals:
     dropped: tuple[Dropped, ...] = ()
     warnings: tuple[Notice, ...] = ()
 
+    @property
+    def standstill(self) -> CutInterval | None:
+        """The interval that the record's end cuts, where it far outlasts all whole ones alike.
+
+        Three times the longest of them: the first high after power-up is 1.6 times as long.
+        """
+        for cut in self.cut:
+            whole_s = self.high_s if cut.kind == "high" else self.low_s
+            if cut.where == "end" and whole_s.size and cut.at_least_s > 3 * whole_s.max():
+                return cut
+        return None
+
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Timing:

@@ -332,3 +332,40 @@ def test_a_quantity_without_any_limit_is_undecided() -> None:
     check = _judge_one(_limit(lower=None, upper=None), timing=Timing(t_high=_seconds(14.0)))
     assert check.verdict == "undecided"
     assert check.measured == _seconds(14.0)
+
+
+def _halted(*, at_end: float) -> Intervals:
+    empty = np.empty(0)
+    high, low = np.full(5, 14.0), np.full(5, 10.7)
+    return Intervals(
+        high_s=high,
+        low_s=low,
+        period_s=high + low,
+        high_starts_s=empty,
+        low_starts_s=empty,
+        period_starts_s=empty,
+        cycle_high_s=high,
+        cycle_low_s=low,
+        chains=((0, 5),),
+        active="high",
+        other_period_s=empty,
+        cut=(CutInterval(kind="high", at_least_s=at_end, where="end"),),
+    )
+
+
+@pytest.mark.parametrize(("at_end", "verdict"), [(60.0, "fail"), (22.2, "pass")])
+def test_an_output_that_stops_fails_whatever_is_limited(at_end: float, verdict: str) -> None:
+    limit = _limit("duty", 0.5, 0.6, unit="1")
+    timing = Timing(duty=Measured(value=0.566, u=1e-4, unit="1"))
+    check = _judge_one(limit, timing=timing, intervals=_halted(at_end=at_end))
+    assert check.verdict == verdict
+    if verdict == "fail":
+        assert "far longer than any part of its cycle" in check.reason
+
+
+def test_a_dead_output_never_passes_a_lower_limit() -> None:
+    limit = _limit("period", 22.0, None, nominal=24.7)
+    (check,) = judge_stage(
+        _stage(), [limit], timing=None, longest_flat_s=100.0, flat_state="high"
+    )
+    assert check.verdict == "fail"
