@@ -130,7 +130,19 @@ def _see(target: Target, settings: Settings) -> _Seen:
     else:
         edges = find_edges(shape.trace, levels)
     active = active or (target.stage.active if target.stage else "high")
-    return _Seen(levels=levels, edges=edges, intervals=find_intervals(edges, active=active))
+    if target.stage and target.stage.topology == "one-shot" and active == "low":
+        edges, active = edges.inverted(), "high"  # t_high is the pulse, whichever way it goes
+    powered_s = _powered(target, settings)
+    intervals = find_intervals(edges, active=active, powered_s=powered_s)
+    return _Seen(levels=levels, edges=edges, intervals=intervals)
+
+
+def _powered(target: Target, settings: Settings) -> float | None:
+    """Return when the supply comes up in the record, None where it does not."""
+    if target.supply is None or target.role != "output":
+        return None
+    edges = find_edges(target.supply, _levels(target.supply, settings))
+    return float(edges.times_s[0]) if edges.times_s.size == 1 and edges.rising[0] else None
 
 
 def _result(target: Target, seen: _Seen, warnings: Iterable[tuple[Notice, ...]]) -> StageResult:

@@ -293,3 +293,34 @@ def test_write_square_means_what_it_says(tmp_path: Path) -> None:
     rows = [tuple(map(float, row.split(","))) for row in path.read_text().splitlines()[1:]]
     changes = [at for (at, v), (_, before) in zip(rows[1:], rows, strict=False) if v != before]
     assert changes[:2] == [pytest.approx(3.0), pytest.approx(3.0 + T_HIGH_S, abs=0.051)]
+
+
+def test_the_pulse_of_a_one_shot_may_go_low(tmp_path: Path) -> None:
+    """Active low: the 2 s the output is low are the pulse, not the 5 s it rests high."""
+    design = tmp_path / "pulse.toml"
+    design.write_text(
+        HEAD + '[stage.pulse]\ntopology = "one-shot"\nactive = "low"\nR = "39k"\nC = "47u"\n'
+        'ic = "cmos"\nlimits = { t_high = { lower = "1.9 s", upper = "2.1 s" } }\n',
+        encoding="utf-8",
+    )
+    times_s = np.arange(2500) * 0.01
+    volts = square_v(times_s, np.array([0.0, 3.0, 5.0, 10.0, 12.0, 17.0, 19.0]))
+    path = write_columns(tmp_path / "pulse.csv", times_s, {"OUT": volts})
+    result = pipeline.analyse(path, design).results[0]
+    assert result.verdict == "pass"
+    assert isinstance(result.timing.t_high, Measured)
+    assert result.timing.t_high.value == pytest.approx(2.0, abs=0.011)  # the sampling interval
+
+
+def test_the_first_high_after_the_supply_needs_no_other_to_compare(tmp_path: Path) -> None:
+    times_s = np.arange(0, 42, 0.01)
+    up = square_v(times_s, np.array([2.0]))
+    out = square_v(times_s, np.array([2.0, 24.2, 34.95]))
+    columns = {"OUT": out, "VCC": up}
+    path = write_columns(tmp_path / "up.csv", times_s, columns)
+    options = MeasureOptions(read=ReadOptions(channel="OUT"))
+    timing = pipeline.measure(path, options=options).results[0].timing
+    assert timing is not None
+    assert isinstance(timing.first_high, Measured)
+    assert timing.first_high.value == pytest.approx(22.2, abs=0.02)  # two samples
+    assert isinstance(timing.t_high, Bound)

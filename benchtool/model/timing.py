@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Literal
 
 from benchtool.model.arrays import BoolArray, FloatArray
@@ -101,6 +101,11 @@ class Edges:
     def __post_init__(self) -> None:
         if not self.times_s.shape == self.rising.shape == self.u_s.shape:
             raise ValueError("times, directions and uncertainties must be of one length")
+
+    def inverted(self) -> Edges:
+        """Return the edges with high and low exchanged."""
+        runs = tuple(replace(run, starts_high=not run.starts_high) for run in self.runs)
+        return replace(self, rising=~self.rising, runs=runs)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

@@ -134,11 +134,19 @@ def widths_between(clean: CleanEdges) -> Widths:
     )
 
 
-def mark_first_high(widths: Widths, edges: Edges) -> Widths:
+def mark_first_high(widths: Widths, edges: Edges, powered_s: float | None = None) -> Widths:
     """Set apart the long first high of a record that begins before the supply comes up.
 
     From an empty capacitor the first high lasts ln 3/ln 2 = 1.585 times the others.
+
+    Args:
+        widths: Times between neighbouring edges.
+        edges: The edges they were made of.
+        powered_s: When the supply was seen to come up, seconds: the high that begins with it is
+            the first one, whether or not there are others to compare.
     """
+    if powered_s is not None:
+        return _marked(widths, _begun_with(widths, powered_s, edges.step_s), Reason.FIRST_HIGH)
     starts_low = bool(edges.runs) and not edges.runs[0].starts_high
     if not (starts_low and widths.width_s.size and widths.is_high[0] and widths.run[0] == 0):
         return widths
@@ -151,6 +159,15 @@ def mark_first_high(widths: Widths, edges: Edges) -> Widths:
     if widths.width_s[0] - middle(others) < 2 * edges.step_s:
         return widths
     return _marked(widths, np.array([0]), Reason.FIRST_HIGH)
+
+
+def _begun_with(widths: Widths, powered_s: float, step_s: float) -> NDArray[np.intp]:
+    """Return the index of the high that begins with the supply, none where there is none."""
+    if not widths.width_s.size or not widths.is_high[0]:
+        return np.empty(0, np.intp)
+    late_s = widths.start_s[0] - powered_s
+    with_supply = abs(late_s) <= max(3 * step_s, 0.02 * widths.width_s[0])
+    return np.array([0] if with_supply else [], np.intp)
 
 
 def mark_outliers(widths: Widths, step_s: float) -> tuple[Widths, int]:

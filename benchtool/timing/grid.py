@@ -62,7 +62,8 @@ def blurred_width_floor(
     """Return ``width_floor`` where the period itself was measured on the grid, in seconds.
 
     Its error, as large as Ts/n, hides whether the edges lie in step with the grid, where u is far
-    larger: the mean square over a triangle of that half-width.
+    larger: the mean square over a triangle of that half-width. (The largest over it would need no
+    chance at all, and be twice what 95 % of errors need.)
 
     Args:
         step_s: As for ``width_floor``, and so are the others.

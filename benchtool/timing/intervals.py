@@ -31,18 +31,21 @@ _REASONS = {
 }
 
 
-def find_intervals(edges: Edges, *, active: State = "high") -> Intervals:
+def find_intervals(
+    edges: Edges, *, active: State = "high", powered_s: float | None = None
+) -> Intervals:
     """Sort the time between edges into complete, cut and disturbed intervals.
 
     Args:
         edges: The edges; no interval reaches across two of their runs.
         active: State that begins a cycle: a period runs from its first edge to the next alike.
+        powered_s: When the supply was seen to come up, seconds, where it was.
 
     Returns:
         Complete intervals in seconds; what was left out is counted with its reason.
     """
     clean = clean_edges(edges)
-    found = mark_first_high(widths_between(clean), edges)
+    found = mark_first_high(widths_between(clean), edges, powered_s)
     widths, n_scattered = mark_outliers(found, edges.step_s)
     cycles = _cycles(widths, starts_high=active == "high")
     others = _cycles(widths, starts_high=active != "high")

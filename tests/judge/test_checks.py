@@ -365,7 +365,5 @@ def test_an_output_that_stops_fails_whatever_is_limited(at_end: float, verdict: 
 
 def test_a_dead_output_never_passes_a_lower_limit() -> None:
     limit = _limit("period", 22.0, None, nominal=24.7)
-    (check,) = judge_stage(
-        _stage(), [limit], timing=None, longest_flat_s=100.0, flat_state="high"
-    )
+    (check,) = judge_stage(_stage(), [limit], timing=None, longest_flat_s=100.0, flat_state="high")
     assert check.verdict == "fail"
