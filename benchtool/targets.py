@@ -93,6 +93,10 @@ def find_channel(capture: Capture, name: str) -> int:
     folded = [item.casefold() for item in names]
     if folded.count(name.casefold()) == 1:
         return folded.index(name.casefold())
+    stem, bit = _stem_and_bit(name)
+    alike = [i for i, item in enumerate(names) if _stem_and_bit(item)[0] == stem]
+    if len(alike) == 1 and bit in ("", _stem_and_bit(names[alike[0]])[1]):
+        return alike[0]
     if name.isdecimal() and 1 <= int(name) <= len(names):
         return int(name) - 1
     raise UsageError(
@@ -100,6 +104,12 @@ def find_channel(capture: Capture, name: str) -> int:
         hint=f"It has: {', '.join(names[:16])}.",
         code="no-such-channel",
     )
+
+
+def _stem_and_bit(name: str) -> tuple[str, str]:
+    """Return a signal's own name without its scope, and the index of its bit where it has one."""
+    stem, _, bit = name.rpartition(".")[2].partition("[")
+    return stem.strip().casefold(), bit.rstrip("] ")
 
 
 def choose_stages(design: Design, name: str | None) -> tuple[Stage, ...]:

@@ -149,3 +149,14 @@ def test_a_stage_is_chosen_by_name() -> None:
     with pytest.raises(UsageError) as caught:
         choose_stages(TWO, "Drain")
     assert (caught.value.code, caught.value.hint) == ("no-such-stage", "It has: spacing, drain.")
+
+
+@pytest.mark.parametrize("name", ["board.OUT", "OUT", "out [0]", "OUT[0]"])
+def test_a_signal_is_found_with_or_without_scope_and_bit(name: str) -> None:
+    assert find_channel(capture_of("bus[1]", "bus[0]", "board.timer.OUT [0]"), name) == 2
+
+
+def test_a_bit_of_a_bus_is_never_taken_for_another() -> None:
+    for names, asked in ((("bus[1]", "bus[0]"), "bus"), (("bus[1]", "OUT"), "bus[2]")):
+        with pytest.raises(UsageError):
+            find_channel(capture_of(*names), asked)

@@ -31,7 +31,7 @@ _READING = (
     click.option("--decimal", type=click.Choice([".", ","]), help="Decimal mark of the numbers."),
     click.option(
         "--time-unit",
-        type=click.Choice(["s", "ms", "us", "ns", "ps"]),
+        type=click.Choice(["s", "ms", "us", "ns", "ps", "fs"]),
         help="Unit of the time column.",
     ),
     click.option("--interval", metavar="TIME", help="Sample interval, such as 5us."),

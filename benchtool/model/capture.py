@@ -264,7 +264,7 @@ class ReadOptions:
         format: Name of the reader.
         delimiter: One of ``, ; tab | space``.
         decimal: ``.`` or ``,``.
-        time_unit: s, ms, us, ns or ps: the unit of the time column.
+        time_unit: s, ms, us, ns, ps or fs: the unit of the time column.
         interval_s: Sample interval in seconds, where the file has no time column.
         channel: Name (or number, from 1) of the trace to measure.
     """

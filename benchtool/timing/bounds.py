@@ -8,6 +8,7 @@ from benchtool.errors import MeasurementError
 from benchtool.model.arrays import middle
 from benchtool.model.quantity import Bound
 from benchtool.model.timing import Edges, Intervals, Levels
+from benchtool.units import format_value
 
 LEAST_SAMPLES = 4.0
 """Samples a period below which a record is refused."""
@@ -85,9 +86,10 @@ def _no_interval(intervals: Intervals, edges: Edges) -> MeasurementError:
     bound = bound_period(intervals)
     at_least = bound.at_least if bound and bound.at_least else span_s
     return MeasurementError(
-        f"no interval is complete: edges seen in {span_s:.4g} s: {edges.times_s.size}; a period "
-        f"lasts at least {at_least:.4g} s",
-        hint=f"Record at least {3 * at_least:.3g} s without a gap, better ten periods.",
+        f"no interval is complete: edges seen in {format_value(span_s, 's')}: "
+        f"{edges.times_s.size}; a period lasts at least {format_value(at_least, 's')}",
+        hint=f"Record at least {format_value(3 * at_least, 's', 3)} without a gap, better ten "
+        "periods.",
         code="no-interval",
     )
 
@@ -96,6 +98,6 @@ def _under_sampled(per_period: float, edges: Edges) -> MeasurementError:
     rate_hz = 10 / (per_period * edges.step_s)
     return MeasurementError(
         f"a period holds only {per_period:.2g} samples: edges between them may be missed",
-        hint=f"Sample at {rate_hz:.3g} Hz or faster, ten samples a period or more.",
+        hint=f"Sample at {format_value(rate_hz, 'Hz', 3)} or faster, ten samples a period or more.",
         code="under-sampled",
     )

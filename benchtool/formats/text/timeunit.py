@@ -64,7 +64,7 @@ def named_unit(name: str) -> TimeUnit:
     unit = words.time_unit(name)
     if unit is None:
         raise AmbiguousStructureError(
-            f"{name!r} is no unit of time", hint="Use --time-unit s, ms, us, ns or ps."
+            f"{name!r} is no unit of time", hint="Use --time-unit s, ms, us, ns, ps or fs."
         )
     return unit
 

@@ -30,6 +30,7 @@ _UNITS = (
     (TimeUnit(name="us", over=1e6), "us µs μs usec usecs microsecond microseconds mikrosekunden"),
     (TimeUnit(name="ns", over=1e9), "ns nsec nsecs nanosecond nanoseconds nanosekunden"),
     (TimeUnit(name="ps", over=1e12), "ps psec picosecond picoseconds"),
+    (TimeUnit(name="fs", over=1e15), "fs femtosecond femtoseconds"),
     (TimeUnit(name="min", times=60.0), "min mins minute minutes minuten"),
     (TimeUnit(name="h", times=3600.0), "h hr hrs hour hours stunden"),
 )
