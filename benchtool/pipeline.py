@@ -10,7 +10,7 @@ nor designs, so these are imported where they are used.
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import replace
 from pathlib import Path
 from types import MappingProxyType
@@ -31,6 +31,8 @@ if TYPE_CHECKING:
 
 FilePath = str | Path
 DEFAULTS = MeasureOptions()
+MOST_LISTED = 64
+"""Traces of a file that ``look`` lists; it counts the others."""
 NOTHING_KNOWN: Mapping[str, float] = MappingProxyType({})
 
 
@@ -42,7 +44,8 @@ def look(sources: Sequence[FilePath], *, options: MeasureOptions = DEFAULTS) -> 
         options: What is overruled.
 
     Returns:
-        One result a trace, each with the number of its source; no figure is made of them.
+        One result a trace, at most 64 a file, each with the number of its source; no figure is
+        made of them.
 
     Raises:
         InputError: If a file cannot be opened.
@@ -53,14 +56,23 @@ def look(sources: Sequence[FilePath], *, options: MeasureOptions = DEFAULTS) -> 
     results = tuple(
         replace(glance(Target(shape=shape, role=role), settings), source=number)
         for number, lineup in enumerate(map(line_up, captures))
-        for shape, role in zip(lineup.shapes, lineup.roles, strict=True)
+        for shape, role in zip(lineup.shapes[:MOST_LISTED], lineup.roles, strict=False)
     )
     return Analysis(
         command="look",
         sources=tuple(_source(capture) for capture in captures),
         results=results,
-        warnings=_warnings(captures),
+        warnings=(*_warnings(captures), *_unlisted(captures)),
     )
+
+
+def _unlisted(captures: Sequence[Capture]) -> Iterator[Notice]:
+    """Count the traces that ``look`` leaves out."""
+    for capture in captures:
+        more = len(capture.traces) - MOST_LISTED
+        if more > 0:
+            text = f"{capture.origin.source} holds {more} more traces than are listed"
+            yield Notice(code="traces-not-listed", text=text)
 
 
 def measure(

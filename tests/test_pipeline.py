@@ -324,3 +324,14 @@ def test_the_first_high_after_the_supply_needs_no_other_to_compare(tmp_path: Pat
     assert isinstance(timing.first_high, Measured)
     assert timing.first_high.value == pytest.approx(22.2, abs=0.02)  # two samples
     assert isinstance(timing.t_high, Bound)
+
+
+def test_look_lists_64_traces_and_counts_the_rest(tmp_path: Path) -> None:
+    times_s = np.arange(100) * 0.01
+    wave = square_v(times_s, np.arange(0.0, 1.0, 0.1))
+    path = write_columns(tmp_path / "wide.csv", times_s, {f"D{i}": wave for i in range(70)})
+    analysis = pipeline.look([path])
+    assert len(analysis.results) == 64
+    notices = [item for item in analysis.warnings if item.code == "traces-not-listed"]
+    assert len(notices) == 1
+    assert "6 more traces" in notices[0].text

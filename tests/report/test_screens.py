@@ -208,12 +208,6 @@ def test_looking_shows_every_point_with_its_evidence(show: Show) -> None:
     assert re.search(r"levels .*12.* V", out)
 
 
-def test_more_traces_than_a_screen_holds_are_counted(show: Show) -> None:
-    out = show("look MANY")
-    assert len(re.findall(r"^  Channel \d+: ", out, re.MULTILINE)) == 64
-    assert "and 6 more traces" in out
-
-
 def test_a_budget_adds_up_and_names_k(show: Show) -> None:
     out = show("measure GOOD --budget")
     block = out[out.index("\n  period   2") :].split("\n\n")[0]
@@ -374,3 +368,9 @@ def test_no_rows_and_one_column_are_drawn(rows: list[tuple[str, ...]]) -> None:
     stream = StringIO()
     draw_rows(Console(file=stream, width=60), rows, heads=("head",))
     assert stream.getvalue().split() == (["head", "only"] if rows else [])
+
+
+def test_more_traces_than_a_screen_holds_are_counted(show: Show) -> None:
+    out = show("look MANY")
+    assert len(re.findall(r"^  Channel \d+: ", out, re.MULTILINE)) == 64
+    assert "6 more traces" in out

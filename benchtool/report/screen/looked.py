@@ -19,8 +19,6 @@ from benchtool.report.screen.blocks import (
 from benchtool.report.screen.measured import trace_line
 from benchtool.units import format_value
 
-_MOST_TRACES = 64
-
 
 def draw_looked(console: Console, analysis: Analysis) -> None:
     """Draw the structure with its evidence, then a row a trace."""
@@ -30,11 +28,9 @@ def draw_looked(console: Console, analysis: Analysis) -> None:
         rows = [(point.name, point.value, point.evidence) for point in source.structure]
         draw_rows(console, rows, heads=("structure", "found", "from"))
         console.print()
-        traces = [result for result in analysis.results if result.source == index]
-        for result in traces[:_MOST_TRACES]:
-            _draw_trace(console, result)
-        if len(traces) > _MOST_TRACES:
-            draw_line(console, f"and {len(traces) - _MOST_TRACES} more traces")
+        for result in analysis.results:
+            if result.source == index:
+                _draw_trace(console, result)
     draw_notes(console, analysis)
     draw_next(console, _next_command(analysis))
 
