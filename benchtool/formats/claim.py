@@ -25,7 +25,7 @@ Read = Callable[[Content, ReadOptions], Capture]
 Write = Callable[[Capture, BinaryIO | Path], None]
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class Format:
     """One file structure.
 

@@ -25,7 +25,7 @@ _HELD = 2  # rows kept back, so that a backward step is judged with its neighbou
 IntArray = NDArray[np.int64]
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class Steps:
     """What the first stamps of a column say of its steps, in the column's own unit.
 

@@ -37,7 +37,7 @@ _ROUNDING = 0.35
 """Share of the variance of rounding that shows in the slow half of the periods."""
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class NoiseFit:
     """Variances of the two noises, and two means of the periods with what they are worth.
 

@@ -120,7 +120,7 @@ def place_edges(
     )
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class _Setting:
     """What all edges of a trace share; noise and code step in stored units."""
 

@@ -22,7 +22,7 @@ _LEAST_FOR_BATCHES = 36
 _SLOW_NOISE = 2.5  # variance of batch means over what neighbours explain: 1 % of chance at F(11,∞)
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class Mean:
     """A mean of repeated observations.
 

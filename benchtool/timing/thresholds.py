@@ -8,7 +8,7 @@ from benchtool.model.capture import Waveform
 from benchtool.model.timing import Levels
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class Thresholds:
     """Reference levels in the unit of the stored samples.
 

@@ -25,7 +25,7 @@ A parabola through the last 35 % of an exponential errs by 2e-4 of the swing, a 
 """
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class Turn:
     """A turning point: its time, standard uncertainty, direction, and whether it was fitted."""
 
@@ -80,7 +80,7 @@ def locate_turn(
     return _refine(times_s, values / swing, (start, stop), at, noise / swing, steep)
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class _Steep:
     """First and last sample near the extreme: where the turn lies if a side has no more."""
 

@@ -235,7 +235,7 @@ def test_too_few_samples_a_period_are_refused_with_the_rate_needed() -> None:
     with pytest.raises(MeasurementError, match="3 samples") as caught:
         require_intervals(find_intervals(edges), edges)
     assert caught.value.code == "under-sampled"
-    assert "0.417 Hz" in caught.value.hint
+    assert "417 mHz" in caught.value.hint
 
 
 @pytest.mark.parametrize(

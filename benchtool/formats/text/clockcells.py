@@ -19,7 +19,7 @@ _DAY_S = 86400.0
 _MOST_PLACES = 300  # a float has no finer digits
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class ClockCells:
     """How to decode a clock column.
 

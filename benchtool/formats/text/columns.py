@@ -18,7 +18,7 @@ from benchtool.model.arrays import FloatArray
 ClockKind = Literal["number", "stamp", "index"]
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class Column:
     """One field of the data rows.
 
@@ -44,7 +44,7 @@ class Column:
         return self.name or f"column {self.field + 1}"
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class ClockColumn:
     """A column that gives time.
 
@@ -61,7 +61,7 @@ class ClockColumn:
     date: int | None = None
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class Columns:
     """Clocks and channels.
 

@@ -24,7 +24,7 @@ _LEAF = 64
 Convert = Callable[[Sequence[str]], FloatArray]
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class Wanted:
     """One column to decode.
 
@@ -59,7 +59,7 @@ class Decoded:
     n_lines: int = 0
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class Decoder:
     """Decodes blocks of whole lines.
 

@@ -33,7 +33,7 @@ _NUMBERS = {
 _BLANKED = re.compile(rb"\S+")
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class Number:
     """Where the digits of one number stand in the rows of a kind.
 
@@ -52,7 +52,7 @@ class Number:
     divides: bool = False
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class RowForm:
     """The form that rows must have: delimiter, decimal mark, number of fields, those wanted."""
 

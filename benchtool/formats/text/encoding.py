@@ -19,7 +19,7 @@ _CONTROL = bytes(set(range(32)) - {9, 10, 12, 13, 27})
 _HIGH = bytes(range(128, 256))
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class Encoding:
     """An encoding, the bytes of its mark at the start, and what it was found from."""
 

@@ -13,7 +13,7 @@ _MOST_ROWS = 3
 _MOST_PASSED = 3  # lines between the header and the data, such as the title of a segment
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class Heading:
     """Names and units, one a field; empty where the file gives none.
 

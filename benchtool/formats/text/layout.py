@@ -11,7 +11,7 @@ DELIMITERS = {"comma": ",", "semicolon": ";", "tab": "\t", "pipe": "|", "space":
 COMMENT = re.compile(r"^\s*(?:#|//|%|!|\*(?!\*)\s)\s*")
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class Layout:
     """How the lines of a text fall into cells.
 

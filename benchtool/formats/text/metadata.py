@@ -19,7 +19,7 @@ _SCALED = {"k": 1e3, "K": 1e3, "M": 1e6, "G": 1e9, "m": 1e-3, "u": 1e-6, "µ": 1
 _INSTRUMENT = re.compile(r"(?:model|instrument|device|source instrument|ger[aä]t)(?: name| type)?")
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class Stated:
     """A figure that the metadata state, and the words it was found in."""
 
@@ -28,7 +28,7 @@ class Stated:
     assumed_unit: bool = False
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class Metadata:
     """What the lines around the data say.
 

@@ -25,7 +25,7 @@ _STAMP = re.compile(
 )
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class StampReader:
     """Reads calendar stamps as whole nanoseconds since 1970, or since midnight.
 

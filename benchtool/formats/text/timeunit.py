@@ -20,7 +20,7 @@ _EPOCHS = ((1e9, "s"), (1e12, "ms"), (1e15, "us"), (1e18, "ns"))  # 2001-09-09 t
 _EPOCH_SPAN = 4.0
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class FoundUnit:
     """A unit of time and what it was found from."""
 

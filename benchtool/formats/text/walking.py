@@ -63,7 +63,7 @@ class DataRows:
             yield at, self.decoder.decode(block)
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class BlockIndex:
     """Where blocks begin: row number and byte offset of each."""
 

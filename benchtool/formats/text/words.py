@@ -6,7 +6,7 @@ import re
 from dataclasses import dataclass
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class TimeUnit:
     """A unit of time: ``seconds = value * times / over``, both exact."""
 

@@ -16,7 +16,7 @@ _SECTIONS = {b"$scope", b"$upscope", b"$var", b"$timescale", b"$enddefinitions",
              b"$version", b"$comment"}  # fmt: skip
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class Variable:
     """One declared variable.
 

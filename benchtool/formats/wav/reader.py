@@ -36,7 +36,7 @@ _STORED = {
 }
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class WaveLayout:
     """What the ``fmt`` and ``data`` chunks say.
 
