@@ -1,7 +1,7 @@
-"""Array types and two functions, all so that numpy loads no more of itself than is needed.
+"""Array types and three functions, all so that numpy loads no more of itself than is needed.
 
-``numpy.typing`` takes 20 ms to load and masked arrays, which ``numpy.median`` and ``numpy.unique``
-import on their first call, as long again.
+``numpy.typing`` takes 20 ms to load, and masked arrays, which ``numpy.median``, ``numpy.quantile``
+and ``numpy.unique`` import on their first call, as long again.
 """
 
 from __future__ import annotations
@@ -41,4 +41,29 @@ def middle(values: FloatArray) -> float:
     return float(ordered[(ordered.size - 1) // 2] + ordered[ordered.size // 2]) / 2
 
 
-__all__ = ["AnyArray", "BoolArray", "FloatArray", "IntArray", "NDArray", "distinct", "middle"]
+def quantile(values: FloatArray, share: float) -> float:
+    """Return the value below which lies a share of at least one value.
+
+    As ``numpy.quantile`` does by default, linear between neighbours.
+
+    Args:
+        values: Shape (n,), n >= 1.
+        share: From 0 to 1.
+    """
+    place = share * (values.size - 1)
+    low = int(place)
+    high = min(low + 1, values.size - 1)
+    sorted_there = np.partition(values, (low, high))
+    return float(sorted_there[low] + (place - low) * (sorted_there[high] - sorted_there[low]))
+
+
+__all__ = [
+    "AnyArray",
+    "BoolArray",
+    "FloatArray",
+    "IntArray",
+    "NDArray",
+    "distinct",
+    "middle",
+    "quantile",
+]

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 
-from benchtool.model.arrays import FloatArray, distinct, middle
+from benchtool.model.arrays import FloatArray, distinct, middle, quantile
 from benchtool.model.timing import LevelKind, Levels
 from benchtool.timing.plateaus import curved_noise, local_noise
 from benchtool.timing.survey import Survey
@@ -83,7 +83,7 @@ def kind_without_states(survey: Survey, values: FloatArray) -> LevelKind:
     """
     noise_v = min(local_noise(survey.runs), curved_noise(survey.runs))
     spread = float(np.std(values))
-    swing = float(np.quantile(values, 0.98) - np.quantile(values, 0.02))
+    swing = quantile(values, 0.98) - quantile(values, 0.02)
     smooth = swing >= 3 * _LEAST_SNR * noise_v and swing >= 8 * survey.step_v
     if smooth and not _is_sinusoid(values):
         return "node"
@@ -97,7 +97,7 @@ def _is_sinusoid(values: FloatArray) -> bool:
 
     An exponential between a third and two thirds of its drive holds 1.125 times as many.
     """
-    low, high = np.quantile(values, [0.005, 0.995])
+    low, high = (quantile(values, share) for share in (0.005, 0.995))
     count, _ = np.histogram(values, bins=10, range=(low, high))
     middle = max(1.0, float(count[4:6].mean()))
     return bool(min(count[0], count[-1]) > 2.2 * middle)

@@ -8,7 +8,7 @@ from dataclasses import replace
 import numpy as np
 
 from benchtool.errors import MeasurementError
-from benchtool.model.arrays import FloatArray
+from benchtool.model.arrays import FloatArray, quantile
 from benchtool.model.capture import Waveform
 from benchtool.model.quantity import Notice
 from benchtool.model.timing import LevelKind, Levels
@@ -179,8 +179,8 @@ def _references(survey: Survey, low_v: float, high_v: float, noise_v: float) -> 
     most = float(np.clip(0.5 - 4 * noise_v / amplitude, _REFERENCE, _INWARDS))
     middle = (low_v + high_v) / 2
     below, above = (values_beyond(survey.runs, middle, above=side) for side in (False, True))
-    wander_low = np.quantile(below, 0.9) if below.size else low_v
-    wander_high = np.quantile(above, 0.1) if above.size else high_v
+    wander_low = quantile(below, 0.9) if below.size else low_v
+    wander_high = quantile(above, 0.1) if above.size else high_v
     lower = low_v + amplitude * float(
         np.clip((wander_low - low_v) / amplitude + 0.05, _REFERENCE, most)
     )
@@ -212,7 +212,7 @@ def _one_level(kind: LevelKind, survey: Survey) -> Levels:
 
 
 def _node_levels(survey: Survey, values: FloatArray, noise_v: float) -> Levels:
-    low_v, high_v = (float(x) for x in np.quantile(values, [0.005, 0.995]))
+    low_v, high_v = (quantile(values, share) for share in (0.005, 0.995))
     swing = high_v - low_v
     u = math.hypot(noise_v, survey.step_v / math.sqrt(12))
     return Levels(

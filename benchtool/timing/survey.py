@@ -6,7 +6,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from benchtool.model.arrays import AnyArray, FloatArray, distinct, middle
+from benchtool.model.arrays import AnyArray, FloatArray, distinct, middle, quantile
 from benchtool.model.capture import Waveform
 
 KEPT = 1 << 20
@@ -144,7 +144,7 @@ def find_step(values: FloatArray) -> float:
     if unique.size < 4 or unique.size > max(16, values.size // 4):
         return 0.0
     gaps = np.diff(unique)
-    step = middle(gaps[gaps <= 1.5 * np.quantile(gaps, 0.05)])
+    step = middle(gaps[gaps <= 1.5 * quantile(gaps, 0.05)])
     ratio = gaps / step
     off_grid = np.abs(ratio - np.round(ratio)) > 0.25
     return step if float(np.mean(off_grid)) < 0.05 else 0.0
