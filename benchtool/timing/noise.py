@@ -35,6 +35,8 @@ _KEPT = 0.995
 
 _ROUNDING = 0.35
 """Share of the variance of rounding that shows in the slow half of the periods."""
+_DIRECT = 256
+"""Values up to which the sine transform is a sum: the fast one takes 6 ms to load."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -107,6 +109,11 @@ def fit_noise(period_s: FloatArray, step_s: float = 0.0) -> NoiseFit | None:
 def _sine_transform(values: FloatArray) -> FloatArray:
     """Return the orthonormal sine transform (type I) of the values."""
     n = values.size
+    if n <= _DIRECT:
+        k = np.arange(1, n + 1)
+        sines = np.sin(np.pi / (n + 1) * np.outer(k, k)) * np.sqrt(2 / (n + 1))
+        direct: FloatArray = sines @ values
+        return direct
     odd = np.zeros(2 * (n + 1))
     odd[1 : n + 1] = values
     odd[n + 2 :] = -values[::-1]
