@@ -15,6 +15,7 @@ from benchtool.model.result import Flat, Gap, IntervalCounts, StageResult, Trace
 from benchtool.model.timing import Edges, Intervals, Levels, Timing
 from benchtool.targets import Target
 from benchtool.timing import (
+    Shape,
     find_edges,
     find_intervals,
     find_levels,
@@ -132,17 +133,10 @@ def _see(target: Target, settings: Settings) -> _Seen:
     active = active or (target.stage.active if target.stage else "high")
     if target.stage and target.stage.topology == "one-shot" and active == "low":
         edges, active = edges.inverted(), "high"  # t_high is the pulse, whichever way it goes
-    powered_s = _powered(target, settings)
+    powered = target.supply if target.role == "output" else None
+    powered_s = powered.comes_up_s if powered else None
     intervals = find_intervals(edges, active=active, powered_s=powered_s)
     return _Seen(levels=levels, edges=edges, intervals=intervals)
-
-
-def _powered(target: Target, settings: Settings) -> float | None:
-    """Return when the supply comes up in the record, None where it does not."""
-    if target.supply is None or target.role != "output":
-        return None
-    edges = find_edges(target.supply, _levels(target.supply, settings))
-    return float(edges.times_s[0]) if edges.times_s.size == 1 and edges.rising[0] else None
 
 
 def _result(target: Target, seen: _Seen, warnings: Iterable[tuple[Notice, ...]]) -> StageResult:
@@ -187,10 +181,12 @@ def _power_on_delay(
 
 
 def _delay(
-    start: Trace, answer: Edges, settings: Settings, *, powers: bool = False
+    start: Shape, answer: Edges, settings: Settings, *, powers: bool = False
 ) -> Quantity | None:
+    if start.edges is None:
+        return None
     return measure_delay(
-        find_edges(start, _levels(start, settings)),
+        start.edges,
         answer,
         timebase_rel=settings.timebase_rel,
         jitter_rel=settings.jitter_rel,

@@ -7,7 +7,7 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING, NoReturn
 
 from benchtool.errors import UsageError
-from benchtool.model.capture import Capture, Role, Trace
+from benchtool.model.capture import Capture, Role
 from benchtool.model.quantity import Notice
 from benchtool.timing import Shape, find_roles, find_shapes
 
@@ -46,8 +46,8 @@ class Target:
     shape: Shape
     role: Role
     stage: Stage | None = None
-    trigger: Trace | None = None
-    supply: Trace | None = None
+    trigger: Shape | None = None
+    supply: Shape | None = None
     warnings: tuple[Notice, ...] = ()
 
 
@@ -208,18 +208,15 @@ def _target(
     )
 
 
-def _companion(lineup: Lineup, role: Role, name: str | None) -> Trace | None:
+def _companion(lineup: Lineup, role: Role, name: str | None) -> Shape | None:
     if name is not None:
-        return lineup.capture.traces[find_channel(lineup.capture, name)]
-    found = [
-        trace
-        for trace, item in zip(lineup.capture.traces, lineup.roles, strict=True)
-        if item == role
-    ]
+        return lineup.shapes[find_channel(lineup.capture, name)]
+    pairs = zip(lineup.shapes, lineup.roles, strict=True)
+    found = [shape for shape, item in pairs if item == role]
     return found[0] if len(found) == 1 else None
 
 
-def _supply_of_silent(lineup: Lineup, index: int, stage: Stage | None) -> Trace | None:
+def _supply_of_silent(lineup: Lineup, index: int, stage: Stage | None) -> Shape | None:
     """Return the one trace that comes up where a power-on output never answers.
 
     Its role is output, since nothing happens on another trace to tell it from one.
@@ -229,10 +226,6 @@ def _supply_of_silent(lineup: Lineup, index: int, stage: Stage | None) -> Trace 
         return None
     if chosen is not None and chosen.times_s.size:
         return None
-    edges = [(shape.trace, shape.edges) for i, shape in enumerate(lineup.shapes) if i != index]
-    rising = [
-        trace
-        for trace, found in edges
-        if found is not None and found.rising.size == 1 and found.rising[0]
-    ]
+    others = [shape for i, shape in enumerate(lineup.shapes) if i != index]
+    rising = [shape for shape in others if shape.comes_up_s is not None]
     return rising[0] if len(rising) == 1 else None

@@ -335,3 +335,16 @@ def test_look_lists_64_traces_and_counts_the_rest(tmp_path: Path) -> None:
     notices = [item for item in analysis.warnings if item.code == "traces-not-listed"]
     assert len(notices) == 1
     assert "6 more traces" in notices[0].text
+
+
+def test_a_level_for_the_output_is_not_asked_of_its_supply(tmp_path: Path) -> None:
+    """6 V lies between the states of the output and outside those of a rippling supply."""
+    times_s = np.arange(0, 60, 0.01)
+    out = square_v(times_s, np.arange(1.0, 60.0, 5.0))
+    supply = 12 + 0.3 * np.sign(np.sin(2 * np.pi * 3.1 * times_s))
+    path = write_columns(tmp_path / "both.csv", times_s, {"OUT": out, "VCC": supply})
+    options = MeasureOptions(level_v=6.0, read=ReadOptions(channel="OUT"))
+    timing = pipeline.measure(path, options=options).results[0].timing
+    assert timing is not None
+    assert isinstance(timing.period, Measured)
+    assert timing.period.value == pytest.approx(10.0, abs=0.01)  # the sampling interval

@@ -103,7 +103,7 @@ def test_each_stage_gets_the_trace_that_it_names() -> None:
     targets = choose_targets(lineup_of(capture, ("output", "supply", "output")), design=TWO)
     found = [(target.stage.name, target.shape.trace.channel) for target in targets if target.stage]
     assert found == [("spacing", "OUT"), ("drain", "DRAIN")]
-    assert all(target.supply is capture.traces[1] for target in targets)
+    assert all(target.supply and target.supply.trace is capture.traces[1] for target in targets)
 
 
 def test_a_stage_without_a_name_for_it_takes_the_only_output() -> None:
@@ -136,9 +136,11 @@ def test_what_the_user_names_is_never_replaced() -> None:
 def test_the_trigger_is_the_one_named_or_the_one_there_is() -> None:
     capture = capture_of("VALVE", "TRIG", "AUX")
     (named,) = choose_targets(lineup_of(capture, ("output", "other", "trigger")), design=TRIGGERED)
-    assert named.trigger is capture.traces[1]
+    assert named.trigger is not None
+    assert named.trigger.trace is capture.traces[1]
     (found,) = choose_targets(lineup_of(capture, ("output", "other", "trigger")))
-    assert found.trigger is capture.traces[2]
+    assert found.trigger is not None
+    assert found.trigger.trace is capture.traces[2]
     (none,) = choose_targets(lineup_of(capture, ("output", "trigger", "trigger")))
     assert none.trigger is None
 

@@ -35,6 +35,14 @@ class Shape:
     levels: Levels | None
     edges: Edges | None
 
+    @property
+    def comes_up_s(self) -> float | None:
+        """When the trace rises, where that is all it does; None elsewhere."""
+        edges = self.edges
+        if edges is None or edges.times_s.size != 1 or not edges.rising[0]:
+            return None
+        return float(edges.times_s[0])
+
 
 def find_shapes(capture: Capture) -> tuple[Shape, ...]:
     """Return the shape of each trace of a capture, in order; each trace is walked."""
@@ -111,11 +119,10 @@ def _is_ramp(levels: Levels, edges: Edges) -> bool:
 
 def _comes_up_before(supply: Shape, other: Shape) -> bool:
     """Tell whether a trace rises once and stays, no later than anything happens on another."""
-    ups, edges = supply.edges, other.edges
-    if ups is None or edges is None or ups.times_s.size != 1 or edges.times_s.size == 0:
+    up_s, ups, edges = supply.comes_up_s, supply.edges, other.edges
+    if up_s is None or ups is None or edges is None or edges.times_s.size == 0:
         return False
-    late_s = 2 * max(ups.step_s, edges.step_s)
-    return bool(ups.rising[0] and ups.times_s[0] <= edges.times_s[0] + late_s)
+    return bool(up_s <= edges.times_s[0] + 2 * max(ups.step_s, edges.step_s))
 
 
 def _triggers(trigger: Shape, output: Shape) -> bool:
