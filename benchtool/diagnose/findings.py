@@ -24,7 +24,7 @@ _MAY_BE: dict[str, tuple[str, ...]] = {
     "false-trigger": ("supply-ripple", "control-bypass-missing"),
 }
 _RESTING = ("one-shot", "power-on")
-"""Topologies whose output may rest."""
+"""Topologies whose output may rest; where none is known, it may."""
 
 _MISSED = "missing pulse"
 _FALSE = ("glitch", "runt", "bounce")
@@ -78,7 +78,7 @@ def find_findings(
     """
     candidates = (
         _stuck(levels, edges, supply_v),
-        _stopped(intervals) if topology not in _RESTING else None,
+        _stopped(intervals) if topology and topology not in _RESTING else None,
         _drifting(timing),
         _disturbed(intervals, "missed-edge", (_MISSED,)),
         _disturbed(intervals, "false-trigger", _FALSE),
