@@ -10,8 +10,9 @@ from benchtool.circuits.inverse import NOTHING_KNOWN
 from benchtool.errors import SolveError
 from benchtool.judge import judge_stage, name_likely_part, stage_limits, worst
 from benchtool.model.design import Design, Ic, TopologyName
+from benchtool.model.judgement import VerdictName
 from benchtool.model.quantity import Measured, Notice
-from benchtool.model.result import StageResult, VerdictName
+from benchtool.model.result import StageResult
 from benchtool.model.timing import Timing
 from benchtool.observation import Settings
 

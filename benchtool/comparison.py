@@ -2,8 +2,8 @@
 
 from __future__ import annotations
 
+from benchtool.model.judgement import Change
 from benchtool.model.quantity import Contribution, Measured
-from benchtool.model.result import Change
 from benchtool.model.timing import Timing
 from benchtool.uncertainty import combine, expanded
 

@@ -19,8 +19,9 @@ A board that fails is a result and never an exception.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
 from typing import ClassVar
+
+from benchtool.frozen import frozen_record
 
 
 class BenchtoolError(Exception):
@@ -126,7 +127,7 @@ class MeasurementError(BenchtoolError):
     default_code = "no-measurement"
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class DesignFault:
     """One fault of a design file: where it is and what is wrong with it."""
 

@@ -3,11 +3,12 @@
 from __future__ import annotations
 
 from collections.abc import Iterable
-from dataclasses import dataclass, replace
+from dataclasses import replace
 from itertools import pairwise
 from typing import TYPE_CHECKING, Any
 
 from benchtool.diagnose import find_findings, flat_length, flat_state
+from benchtool.frozen import frozen_record
 from benchtool.model.capture import LogicTrace, Trace, UniformTime, Waveform
 from benchtool.model.options import JITTER_REL, TIMEBASE_REL, MeasureOptions
 from benchtool.model.quantity import Measured, Notice, Quantity
@@ -33,7 +34,7 @@ if TYPE_CHECKING:
     from benchtool.model.design import Design
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Settings:
     """What a measurement needs to know besides the trace, each settled once.
 
@@ -67,7 +68,7 @@ def settle(options: MeasureOptions, design: Design | None) -> Settings:
     )
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class _Seen:
     """A trace as far as its intervals."""
 

@@ -16,7 +16,6 @@ from pathlib import Path
 from types import MappingProxyType
 from typing import TYPE_CHECKING
 
-from benchtool.comparison import compare_timing
 from benchtool.formats import read_capture
 from benchtool.model.capture import Capture
 from benchtool.model.options import MeasureOptions
@@ -97,6 +96,8 @@ def measure(
     analysis = _observe_all(source, None, None, options, "measure")
     if baseline is None:
         return analysis
+    from benchtool.comparison import compare_timing
+
     earlier = _observe_all(baseline, None, None, options, "measure")
     now, before = analysis.results[0], earlier.results[0]
     changes = compare_timing(now.timing or Timing(), before.timing or Timing())

@@ -7,13 +7,13 @@ they are looked up only where ours all say no, or by name, since the look-up tak
 from __future__ import annotations
 
 from collections.abc import Iterator, Mapping
-from dataclasses import dataclass
 from importlib import import_module
 
 from benchtool.errors import UsageError
+from benchtool.frozen import frozen_record
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Registry:
     """Named things of one kind, loaded on first use.
 

@@ -3,10 +3,10 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
 from typing import TYPE_CHECKING, NoReturn
 
 from benchtool.errors import UsageError
+from benchtool.frozen import frozen_record
 from benchtool.model.capture import Capture, Role
 from benchtool.model.quantity import Notice
 from benchtool.timing import Shape, find_roles, find_shapes
@@ -15,7 +15,7 @@ if TYPE_CHECKING:
     from benchtool.model.design import Design, Stage
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Lineup:
     """A capture with the shape and the role of each of its traces, in order."""
 
@@ -30,7 +30,7 @@ def line_up(capture: Capture) -> Lineup:
     return Lineup(capture=capture, shapes=shapes, roles=find_roles(shapes))
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Target:
     """A trace to measure, the stage it belongs to, and the traces that go with it.
 

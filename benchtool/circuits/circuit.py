@@ -4,9 +4,10 @@ from __future__ import annotations
 
 import math
 from collections.abc import Mapping
-from dataclasses import dataclass, replace
+from dataclasses import replace
 from typing import Any
 
+from benchtool.frozen import frozen_record
 from benchtool.model.arrays import FloatArray
 from benchtool.model.design import TopologyName
 
@@ -14,7 +15,7 @@ Value = float | FloatArray
 """One board, or a row of boards that differ (shapes broadcast)."""
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Circuit:
     """One timed circuit: the parts, the IC's terms and what loads the timing node.
 

@@ -4,7 +4,6 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterator, Mapping
-from dataclasses import dataclass
 from types import MappingProxyType
 from typing import Literal
 
@@ -14,6 +13,7 @@ from benchtool.circuits.circuit import Circuit, Value
 from benchtool.circuits.families import Term, find_family
 from benchtool.circuits.topologies import Topology, find_topology
 from benchtool.errors import DesignError
+from benchtool.frozen import frozen_record
 from benchtool.model.design import REFERENCE_TEMPERATURE_C, Band, Design, Part, Stage, Threshold
 
 Kind = Literal["part", "supply", "temperature", "leakage", "ic"]
@@ -33,7 +33,7 @@ _FIELDS = {
 _EVERYWHERE = ("supply", "temperature", "leakage", "upper_threshold", "threshold_split")
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Coordinate:
     """One thing that may vary from board to board.
 

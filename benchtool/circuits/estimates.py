@@ -12,8 +12,8 @@ from benchtool.circuits.topologies import find_topology
 from benchtool.circuits.unknowns import part_model
 from benchtool.errors import SolveError
 from benchtool.model.design import REFERENCE_TEMPERATURE_C, Design, Part, Stage
+from benchtool.model.judgement import PartEstimate
 from benchtool.model.quantity import Measured
-from benchtool.model.result import PartEstimate
 from benchtool.uncertainty import expanded
 from benchtool.units import format_value
 

@@ -3,12 +3,12 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
 from types import MappingProxyType
 from typing import Literal
 
 from benchtool.circuits.circuit import Value
 from benchtool.errors import UsageError
+from benchtool.frozen import frozen_record
 
 TERM_UNITS: Mapping[str, str] = MappingProxyType(
     {
@@ -37,7 +37,7 @@ _BIPOLAR_ASTABLE = (
 _CMOS_ERROR = "from the published initial error, 1 % typical, SLFS043, read as u"
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Term:
     """A starting value of one term.
 
@@ -64,7 +64,7 @@ class Term:
         return self.value * (supply_v / self.at_supply_v) ** self.supply_power
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Family:
     """A family of timer ICs."""
 

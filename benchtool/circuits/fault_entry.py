@@ -3,11 +3,11 @@
 from __future__ import annotations
 
 from collections.abc import Callable
-from dataclasses import dataclass
 from typing import Literal
 
 from benchtool.circuits.circuit import Circuit, Value
 from benchtool.circuits.fault_moves import Move, one
+from benchtool.frozen import frozen_record
 
 Place = Literal["C", "RA", "RB", "R", "IC", "diode", "board", "probe"]
 """Where a fault sits."""
@@ -19,7 +19,7 @@ OPEN_OHM, SHORT_OHM = (1e10, 1e12), (0.1, 10.0)
 """What is left of an open resistor, and what a short has."""
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Fault:
     """One fault that is a change of the circuit's figures.
 

@@ -3,12 +3,13 @@
 from __future__ import annotations
 
 from collections.abc import Callable
-from dataclasses import dataclass, replace
+from dataclasses import replace
 
 from benchtool.circuits.circuit import Circuit, Value, with_fields
 from benchtool.circuits.families import FAMILIES
 from benchtool.circuits.topologies import find_topology
 from benchtool.errors import UsageError
+from benchtool.frozen import frozen_record
 
 PROBE_OHM_FARAD = 1e6 * 100e-12
 """Probe resistance times capacitance: 1 Mohm with 100 pF, 10 Mohm with 10 pF (common practice)."""
@@ -29,7 +30,7 @@ _SAME_NAMES = (
 )
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Move:
     """A change of a circuit by a size.
 

@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 from collections.abc import Callable
-from dataclasses import dataclass
 from itertools import combinations
 
 import numpy as np
@@ -13,6 +12,7 @@ from benchtool.circuits.observations import Observation, log_covariance, log_tim
 from benchtool.circuits.prediction import predict
 from benchtool.circuits.unknowns import Model
 from benchtool.errors import SolveError
+from benchtool.frozen import frozen_record
 from benchtool.model.arrays import FloatArray
 from benchtool.model.quantity import Contribution, Measured
 from benchtool.uncertainty import propagate
@@ -27,7 +27,7 @@ _ROUNDING = 1e-9  # contributions below this share of the value are rounding of 
 _FLOOR_REL = 1e-7  # a time counts as no better known than this when several are weighed
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Slopes:
     """Logarithms of some outputs and how they move.
 
@@ -42,7 +42,7 @@ class Slopes:
     by_nuisance: FloatArray
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Disagreement:
     """How far a time lies from what other times make of it.
 
@@ -57,7 +57,7 @@ class Disagreement:
     difference: Measured
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Fit:
     """A solved model.
 

@@ -3,11 +3,12 @@
 from __future__ import annotations
 
 from collections.abc import Iterator, Mapping
-from dataclasses import dataclass, replace
+from dataclasses import replace
 
 from benchtool.circuits.families import TERM_UNITS
 from benchtool.circuits.topologies import Topology
 from benchtool.errors import UsageError
+from benchtool.frozen import frozen_record
 from benchtool.model.design import Band, Design, Ic, Part, Stage
 from benchtool.model.quantity import Notice
 
@@ -18,7 +19,7 @@ _UNKNOWN_SUPPLY_V = 5.0  # where the families' starting values are given; shares
 _PLACEHOLDER = {"RA": 100e3, "RB": 100e3, "R": 100e3, "C": 1e-6}
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Bare:
     """A stage made for solving, whose part values mean nothing, and what was assumed for it."""
 

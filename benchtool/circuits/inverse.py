@@ -14,7 +14,7 @@ from benchtool.circuits.solution import report_solution
 from benchtool.circuits.topologies import Topology, find_topology
 from benchtool.errors import SolveError, UsageError
 from benchtool.model.design import Design, Ic, Stage, TopologyName
-from benchtool.model.result import Solution
+from benchtool.model.judgement import Solution
 from benchtool.model.timing import Timing
 
 NOTHING_KNOWN: Mapping[str, float] = MappingProxyType({})

@@ -2,15 +2,14 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
-
 import numpy as np
 
 from benchtool.circuits.circuit import Circuit, Value
+from benchtool.frozen import frozen_record
 from benchtool.model.arrays import BoolArray
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Drive:
     """What drives the timing node in one state: a source behind a resistance.
 
@@ -25,7 +24,7 @@ class Drive:
     until_v: Value | None = None
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Settling:
     """The loaded node: where it settles and how fast.
 

@@ -3,19 +3,19 @@
 from __future__ import annotations
 
 from collections.abc import Iterator
-from dataclasses import dataclass
 
 import numpy as np
 
 from benchtool.circuits.topologies import Topology
 from benchtool.errors import SolveError
+from benchtool.frozen import frozen_record
 from benchtool.model.arrays import FloatArray
 from benchtool.model.quantity import Measured
 from benchtool.model.timing import Timing
 from benchtool.uncertainty import propagate
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Observation:
     """A measured time and the name of the predicted one that it stands for."""
 

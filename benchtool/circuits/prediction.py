@@ -2,17 +2,16 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
-
 import numpy as np
 
 from benchtool.circuits.circuit import Circuit, Value
 from benchtool.circuits.node import Settling, settle
 from benchtool.circuits.stuck import Stuck, explain_stuck
 from benchtool.circuits.topologies import Topology, find_topology
+from benchtool.frozen import frozen_record
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Prediction:
     """The times of a circuit in seconds, hertz and shares; None where it has no such time.
 
@@ -39,7 +38,7 @@ class Prediction:
     stuck: Stuck | None = None
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class States:
     """The loaded node in both states.
 

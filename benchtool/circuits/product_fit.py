@@ -4,7 +4,6 @@ from __future__ import annotations
 
 import math
 from collections.abc import Mapping
-from dataclasses import dataclass
 
 from benchtool.circuits.estimates import contradicts
 from benchtool.circuits.fit import Disagreement, Fit, fit, place_fit
@@ -13,6 +12,7 @@ from benchtool.circuits.starts import start_logs
 from benchtool.circuits.topologies import find_topology
 from benchtool.circuits.unknowns import likeliest_log_c, product_model
 from benchtool.errors import SolveError
+from benchtool.frozen import frozen_record
 from benchtool.model.design import Design, Stage
 from benchtool.model.quantity import Notice
 from benchtool.uncertainty import expanded
@@ -20,7 +20,7 @@ from benchtool.uncertainty import expanded
 _ROUNDS = 12
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Case:
     """What is solved.
 
@@ -39,7 +39,7 @@ class Case:
     marked: bool
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class SolvedProducts:
     """The solved products.
 

@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping
-from dataclasses import dataclass
 from types import MappingProxyType
 
 import numpy as np
@@ -11,13 +10,14 @@ import numpy as np
 from benchtool.circuits.circuit import Circuit, with_fields
 from benchtool.circuits.prediction import predict
 from benchtool.circuits.topologies import find_topology
+from benchtool.frozen import frozen_record
 
 Shift = Callable[[Circuit, float], Circuit]
 
 _TIMES = ("t_high", "t_low", "period", "first_high", "delay")
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Sensitivity:
     """Relative change of each time for one unit of a figure.
 
@@ -35,7 +35,7 @@ class Sensitivity:
     delay: float | None = None
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class _Figure:
     per: str
     step: Callable[[Circuit], float]

@@ -9,8 +9,8 @@ from benchtool.circuits.fit import Fit
 from benchtool.circuits.prediction import settle_states
 from benchtool.circuits.taus import products
 from benchtool.circuits.topologies import Topology
+from benchtool.model.judgement import PartEstimate, Solution
 from benchtool.model.quantity import Notice
-from benchtool.model.result import PartEstimate, Solution
 
 
 def report_solution(

@@ -3,15 +3,15 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
 from typing import Literal
 
 from benchtool.circuits.circuit import Circuit, with_fields
 from benchtool.circuits.node import Settling, settle
 from benchtool.circuits.topologies import find_topology
+from benchtool.frozen import frozen_record
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Stuck:
     """A circuit that stands still.
 

@@ -2,13 +2,12 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
-
 from benchtool.circuits.circuit import Circuit, Value
 from benchtool.circuits.topologies import find_topology
+from benchtool.frozen import frozen_record
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Products:
     """Products of the parts alone, seconds.
 

@@ -7,13 +7,13 @@ group ``benchtool.topologies`` that leads to a ``Topology``.
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping
-from dataclasses import dataclass
 from types import MappingProxyType
 from typing import Literal
 
 from benchtool.circuits.circuit import Circuit, Value
 from benchtool.circuits.node import Drive
 from benchtool.errors import UsageError
+from benchtool.frozen import frozen_record
 from benchtool.model.design import TopologyName
 from benchtool.plugins import Registry
 
@@ -31,7 +31,7 @@ _OUTPUT_TERMS = (
 _DELAYS = ("delay_upper", "delay_lower")
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Topology:
     """One way to time with a resistor and a capacitor.
 

@@ -4,13 +4,13 @@ from __future__ import annotations
 
 import math
 from collections.abc import Callable, Mapping
-from dataclasses import dataclass
 
 import numpy as np
 
 from benchtool.circuits.circuit import Circuit, Value
 from benchtool.circuits.coordinates import Point, circuit_at, coordinates, term_origin
 from benchtool.circuits.topologies import Topology, find_topology
+from benchtool.frozen import frozen_record
 from benchtool.model.design import Design, Part, Stage
 
 Placing = Callable[[tuple[Value, ...], Point], dict[str, Value]]
@@ -22,7 +22,7 @@ SHARE = "share of R and C"
 """Name of the one freedom that the products leave: more resistance and less capacitance."""
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Nuisance:
     """Something the times depend on that is not looked for.
 
@@ -41,7 +41,7 @@ class Nuisance:
     note: str = ""
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Model:
     """Times as a function of unknowns and nuisances.
 

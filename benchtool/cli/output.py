@@ -7,13 +7,14 @@ import os
 import shlex
 import sys
 from collections.abc import Callable
-from dataclasses import dataclass, replace
+from dataclasses import replace
 from datetime import UTC, datetime
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 from benchtool import __version__
 from benchtool.errors import InputError, UsageError
+from benchtool.frozen import frozen_record
 
 if TYPE_CHECKING:
     from rich.console import Console
@@ -21,7 +22,7 @@ if TYPE_CHECKING:
     from benchtool.model.result import Analysis
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Output:
     """What the user chose of ``--json``, ``-o``, ``--quiet``, ``--no-color``, ``--force``."""
 

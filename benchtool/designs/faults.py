@@ -3,13 +3,13 @@
 from __future__ import annotations
 
 from collections.abc import Iterable, Iterator, Mapping
-from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any
 
 from benchtool.designs.lines import Path, find_lines, line_of
 from benchtool.designs.notation import key_text, value_text
 from benchtool.designs.vocabulary import TOPOLOGY_PARTS, listed, nearest
 from benchtool.errors import DesignError, DesignFault
+from benchtool.frozen import frozen_record
 
 if TYPE_CHECKING:
     from pydantic import ValidationError
@@ -18,7 +18,7 @@ if TYPE_CHECKING:
 _PARTS = {part for parts in TOPOLOGY_PARTS.values() for part in parts}
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Flaw:
     """A fault before its line is known.
 

@@ -3,9 +3,10 @@
 from __future__ import annotations
 
 from collections.abc import Iterable, Mapping
-from dataclasses import dataclass
 from difflib import get_close_matches
 from typing import Literal
+
+from benchtool.frozen import frozen_record
 
 SCHEMA = 1
 """The one number that ``schema`` may hold."""
@@ -13,7 +14,7 @@ SCHEMA = 1
 BoundKind = Literal["time", "frequency", "duty", "jitter"]
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Quantity:
     """A quantity that can be limited.
 
@@ -94,7 +95,7 @@ TOPOLOGY_PARTS: Mapping[str, tuple[str, ...]] = {
 """The timing parts of each topology."""
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class IcTerm:
     """A term of the IC that a design may state; the two thresholds stand apart.
 

@@ -3,11 +3,12 @@
 from __future__ import annotations
 
 from collections.abc import Iterator, Mapping
-from dataclasses import dataclass, field
+from dataclasses import field
 
 from benchtool.designs.notation import key_text, value_text
 from benchtool.designs.reading import parse_design
 from benchtool.designs.vocabulary import SCHEMA, TOPOLOGY_PARTS, usual_quantities
+from benchtool.frozen import frozen_record
 
 Text = str | Mapping[str, str]
 """A value as the file has it: a text, or a table of texts."""
@@ -31,7 +32,7 @@ _COMMENTS = {
 }
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class NewDesign:
     """The answers from which a design file is written; texts as the file has them.
 

@@ -3,12 +3,12 @@
 from __future__ import annotations
 
 from collections.abc import Callable
-from dataclasses import dataclass
 from enum import IntEnum
 from pathlib import Path
 from typing import BinaryIO
 
 from benchtool.formats.content import Content
+from benchtool.frozen import frozen_record
 from benchtool.model.capture import Capture, ReadOptions
 
 
@@ -25,7 +25,7 @@ Read = Callable[[Content, ReadOptions], Capture]
 Write = Callable[[Capture, BinaryIO | Path], None]
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Format:
     """One file structure.
 

@@ -14,6 +14,7 @@ from itertools import pairwise
 import numpy as np
 
 from benchtool.errors import MalformedCaptureError
+from benchtool.frozen import frozen_record
 from benchtool.model.arrays import FloatArray, NDArray, middle
 
 _EVEN_SHARE = 0.8  # of the first steps must agree for the column to count as even
@@ -25,7 +26,7 @@ _HELD = 2  # rows kept back, so that a backward step is judged with its neighbou
 IntArray = NDArray[np.int64]
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Steps:
     """What the first stamps of a column say of its steps, in the column's own unit.
 

@@ -13,12 +13,13 @@ import io
 import stat
 import sys
 from collections.abc import Iterator
-from dataclasses import dataclass, field, replace
+from dataclasses import field, replace
 from pathlib import Path
 from typing import BinaryIO, Protocol
 
 from benchtool.errors import InputError, MalformedCaptureError
 from benchtool.formats.spool import Spool
+from benchtool.frozen import frozen_record
 from benchtool.model.capture import StructurePoint
 from benchtool.model.quantity import Notice
 
@@ -29,7 +30,7 @@ _GZ_CHUNK = 1 << 16  # one chunk may swell a thousandfold
 _GZ_MAGIC = b"\x1f\x8b\x08"
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Content:
     """The bytes of one capture, gz peeled.
 

@@ -31,9 +31,9 @@ from benchtool.judge.rules import (
 )
 from benchtool.model.decision import StageLimit
 from benchtool.model.design import Rule, Stage
+from benchtool.model.judgement import Check, Solution, VerdictName
 from benchtool.model.options import TIMEBASE_REL
 from benchtool.model.quantity import Bound, Measured, Notice, Quantity
-from benchtool.model.result import Check, Solution, VerdictName
 from benchtool.model.timing import Intervals, Jitter, Timing
 from benchtool.units import format_value
 

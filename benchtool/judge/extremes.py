@@ -4,11 +4,11 @@ from __future__ import annotations
 
 import math
 from collections.abc import Mapping
-from dataclasses import dataclass
 
 import numpy as np
 
 from benchtool.circuits import Coordinate, coordinates
+from benchtool.frozen import frozen_record
 from benchtool.judge.responses import respond
 from benchtool.model.arrays import FloatArray
 from benchtool.model.design import Design, Stage
@@ -21,7 +21,7 @@ _SEED = 20310302
 _BLOCK = 1 << 16  # boards computed at a time: their rows stay in the cache
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Extremes:
     """The range of each quantity over the boards that run.
 

@@ -8,11 +8,11 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterator, Mapping
-from dataclasses import dataclass
 
 import numpy as np
 
 from benchtool.circuits import Coordinate, coordinates, find_topology
+from benchtool.frozen import frozen_record
 from benchtool.judge.responses import respond
 from benchtool.model.arrays import FloatArray
 from benchtool.model.design import Design, Stage
@@ -33,7 +33,7 @@ _WIDEST = math.log(10)
 _PAIR = ("t_high", "t_low")
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class _Change:
     """One thing moved as far as fits best.
 
@@ -83,7 +83,7 @@ def _sentence(changes: list[_Change]) -> str | None:
     return f"{words[0].upper()}{words[1:]} would explain both times."
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class _Case:
     """The measured times beside the nominal ones, in logarithms."""
 

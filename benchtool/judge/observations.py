@@ -3,12 +3,12 @@
 from __future__ import annotations
 
 from collections.abc import Iterable, Iterator
-from dataclasses import dataclass
 from typing import Literal
 
+from benchtool.frozen import frozen_record
 from benchtool.model.decision import StageLimit
+from benchtool.model.judgement import Solution
 from benchtool.model.quantity import Bound, Measured, Quantity
-from benchtool.model.result import Solution
 from benchtool.model.timing import Intervals, Jitter, Timing
 
 FREE_RUNNING = frozenset({"astable", "astable-diode", "output-fed", "schmitt"})
@@ -19,7 +19,7 @@ _SOLUTION_FIELDS = ("tau_charge", "tau_discharge")
 _STATES: dict[str, Literal["high", "low"]] = {"t_high": "high", "t_low": "low"}
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Observations:
     """All that was measured on a stage, and what is known where nothing could be.
 

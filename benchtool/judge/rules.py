@@ -9,19 +9,19 @@ References:
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
 from typing import Literal
 
+from benchtool.frozen import frozen_record
 from benchtool.judge.verdict import worst
 from benchtool.model.design import Rule, RuleName
+from benchtool.model.judgement import VerdictName
 from benchtool.model.quantity import Measured
-from benchtool.model.result import VerdictName
 from benchtool.uncertainty import chi_square_cdf, coverage_factor, t_cdf, whole_dof
 
 Side = Literal["lower", "upper"]
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Decision:
     """What a rule says of one value.
 

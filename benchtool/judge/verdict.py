@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterable
 
-from benchtool.model.result import WORST_FIRST, VerdictName
+from benchtool.model.judgement import WORST_FIRST, VerdictName
 
 
 def worst(names: Iterable[VerdictName]) -> VerdictName | None:

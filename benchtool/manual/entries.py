@@ -8,17 +8,18 @@ text are joined; a blank line parts paragraphs.
 from __future__ import annotations
 
 import tomllib
-from dataclasses import dataclass
 from difflib import get_close_matches
 from functools import cache
 from importlib.resources import files
 from typing import Any
 
+from benchtool.frozen import frozen_record
+
 _N_NEAREST = 3
 _LIKENESS = 0.6
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Entry:
     """One entry of the manual.
 

@@ -9,6 +9,7 @@ from typing import Literal, Protocol
 
 import numpy as np
 
+from benchtool.frozen import frozen_record
 from benchtool.model.arrays import AnyArray, BoolArray, FloatArray
 from benchtool.model.quantity import Notice
 
@@ -65,7 +66,7 @@ class ArraySamples:
             yield self.array[first : min(first + BLOCK, end)]
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Scale:
     """Volts from codes: ``volts = gain * code + offset``.
 
@@ -84,7 +85,7 @@ class Scale:
             raise ValueError(f"a scale needs a finite gain other than 0, got {self.gain}")
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class UniformTime:
     """Evenly spaced samples: sample ``i`` lies at ``span.start_s + (i - span.start) * dt_s``.
 
@@ -101,7 +102,7 @@ class UniformTime:
             raise ValueError(f"a sample interval must be finite and > 0, got {self.dt_s}")
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class StampedTime:
     """Samples with a time stamp each, in seconds after the first sample.
 
@@ -114,7 +115,7 @@ class StampedTime:
     resolution_s: float = 0.0
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Span:
     """A gap-free piece of a waveform: samples ``start`` to ``stop`` (exclusive).
 
@@ -133,7 +134,7 @@ class Span:
             raise ValueError(f"a span needs 0 <= start < stop, got {self.start}, {self.stop}")
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Waveform:
     """One channel of samples.
 
@@ -168,7 +169,7 @@ class Waveform:
         return self.unit == "1"
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class TimeSpan:
     """A gap-free piece of a logic trace, with the state it begins in."""
 
@@ -181,7 +182,7 @@ class TimeSpan:
             raise ValueError(f"a time span cannot end before it starts: {self}")
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class LogicTrace:
     """One channel of transitions.
 
@@ -214,7 +215,7 @@ Trace = Waveform | LogicTrace
 Role = Literal["output", "capacitor", "supply", "trigger", "other"]
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class StructurePoint:
     """One thing found about a file's structure, and what it was found from."""
 
@@ -223,7 +224,7 @@ class StructurePoint:
     evidence: str
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Origin:
     """Where a capture came from.
 
@@ -242,7 +243,7 @@ class Origin:
     instrument: str | None = None
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Capture:
     """One file or one acquisition: its traces, its structure and what was assumed on reading."""
 
@@ -256,7 +257,7 @@ class Capture:
             raise ValueError("a capture needs at least one trace")
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class ReadOptions:
     """What the user overrules about a file's structure; None leaves it to detection.
 

@@ -2,14 +2,14 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
 from typing import Literal
 
+from benchtool.frozen import frozen_record
 from benchtool.model.design import Derivation, Limit
 from benchtool.model.quantity import Notice
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class DerivedLimit:
     """What the tolerances of a design allow one quantity to be.
 
@@ -33,7 +33,7 @@ class DerivedLimit:
     warnings: tuple[Notice, ...] = ()
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class StageLimit:
     """One limit that a stage is judged by, given or derived.
 
@@ -57,7 +57,7 @@ class StageLimit:
     warnings: tuple[Notice, ...] = ()
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class LimitComparison:
     """One quantity's limits derived three ways, beside the limit that the design states.
 
@@ -88,7 +88,7 @@ class LimitComparison:
     warnings: tuple[Notice, ...] = ()
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Concern:
     """Something in a design that reads well and cannot work well.
 

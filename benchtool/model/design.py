@@ -4,9 +4,11 @@ from __future__ import annotations
 
 import math
 from collections.abc import Mapping
-from dataclasses import dataclass, field
+from dataclasses import field
 from types import MappingProxyType
 from typing import Literal
+
+from benchtool.frozen import frozen_record
 
 TopologyName = Literal["astable", "astable-diode", "output-fed", "one-shot", "schmitt", "power-on"]
 Derivation = Literal["worst-case", "rss", "monte-carlo"]
@@ -16,7 +18,7 @@ REFERENCE_TEMPERATURE_C = 25.0
 """Temperature to which part values and temperature coefficients refer."""
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Band:
     """A nominal value with the range it may lie in, SI units (or degrees Celsius)."""
 
@@ -29,7 +31,7 @@ class Band:
             raise ValueError(f"a band needs lower <= nominal <= upper, got {self}")
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Part:
     """A part of the timing network.
 
@@ -61,7 +63,7 @@ class Part:
             raise ValueError(f"{self.ref} cannot have a negative leakage or ESR")
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Threshold:
     """A switching level: a fraction of the supply, or volts."""
 
@@ -69,7 +71,7 @@ class Threshold:
     of_supply: bool = True
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Ic:
     """The timing IC: a family, and the terms that the design states itself.
 
@@ -85,7 +87,7 @@ class Ic:
     lower_threshold: Threshold | None = None
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Limit:
     """A limit on one quantity.
 
@@ -112,7 +114,7 @@ class Limit:
             raise ValueError(f"the limit on {self.quantity} has lower above upper")
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Probe:
     """The probe's load, and where it sits."""
 
@@ -121,7 +123,7 @@ class Probe:
     at: Literal["output", "capacitor"] = "output"
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Stage:
     """One timed circuit on the board.
 
@@ -161,7 +163,7 @@ class Stage:
     leak_to_v: float = 0.0
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Rule:
     """The decision rule: name, guard factor and coverage probability."""
 
@@ -170,7 +172,7 @@ class Rule:
     coverage: float = 0.95
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Instrument:
     """What the design says of the instrument; None leaves the default."""
 
@@ -178,7 +180,7 @@ class Instrument:
     jitter_rel: float | None = None
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class DesignValue:
     """One value of a design, for showing.
 
@@ -195,7 +197,7 @@ class DesignValue:
     origin: str
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Design:
     """A design file, validated.
 

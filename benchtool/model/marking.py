@@ -2,13 +2,14 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
 from typing import Literal
+
+from benchtool.frozen import frozen_record
 
 PartKind = Literal["capacitor", "resistor"]
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Marking:
     """One way to read what is printed or painted on a part.
 

@@ -2,9 +2,10 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass, field
+from dataclasses import field
 from typing import TYPE_CHECKING, Literal
 
+from benchtool.frozen import frozen_record
 from benchtool.model.capture import ReadOptions
 
 if TYPE_CHECKING:
@@ -17,7 +18,7 @@ JITTER_REL = 1e-3
 """Half-width of the jitter assumed where one interval is all there is and nothing is stated."""
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class MeasureOptions:
     """What the user overrules about a measurement; None leaves it to the design or the default.
 

@@ -3,10 +3,12 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass, replace
+from dataclasses import replace
+
+from benchtool.frozen import frozen_record
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Contribution:
     """One line of an uncertainty budget.
 
@@ -36,7 +38,7 @@ class Contribution:
         return replace(self, u=self.u * factor)
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Measured:
     """A value with its standard uncertainty (JCGM 100).
 
@@ -65,7 +67,7 @@ class Measured:
             raise ValueError(f"degrees of freedom must be > 0, got {self.dof}")
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Bound:
     """What is known of a quantity whose value cannot be had."""
 
@@ -81,7 +83,7 @@ class Bound:
 Quantity = Measured | Bound
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Notice:
     """A warning: a stable code that ``explain`` knows, and a sentence about this case."""
 

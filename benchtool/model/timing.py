@@ -2,16 +2,17 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass, replace
+from dataclasses import replace
 from typing import Literal
 
+from benchtool.frozen import frozen_record
 from benchtool.model.arrays import BoolArray, FloatArray
 from benchtool.model.quantity import Bound, Measured, Notice, Quantity
 
 LevelKind = Literal["two-state", "flat", "noise", "node"]
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Levels:
     """State levels of a trace and the reference levels between them (IEEE 181).
 
@@ -45,7 +46,7 @@ class Levels:
     warnings: tuple[Notice, ...] = ()
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class EdgeRun:
     """A gap-free run of edges: edges ``first`` to ``stop`` (exclusive) of the record.
 
@@ -64,7 +65,7 @@ class EdgeRun:
     starts_high: bool
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Edges:
     """Crossings of the mid level. Waveform and logic meet here; nobody after can tell them apart.
 
@@ -108,7 +109,7 @@ class Edges:
         return replace(self, rising=~self.rising, runs=runs)
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class CutInterval:
     """An interval that an end of the record or a gap cuts: known to be at least so long."""
 
@@ -117,7 +118,7 @@ class CutInterval:
     where: Literal["start", "end", "both"]
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Dropped:
     """How many intervals were left out of the statistics, and why."""
 
@@ -125,7 +126,7 @@ class Dropped:
     count: int
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Intervals:
     """Complete intervals, those cut by the ends, and those left out.
 
@@ -172,7 +173,7 @@ class Intervals:
         return None
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Timing:
     """The timing figures; None where the trace holds nothing about one."""
 
@@ -187,7 +188,7 @@ class Timing:
     warnings: tuple[Notice, ...] = ()
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Jitter:
     """Scatter of the periods. ``grid_share`` is the sd that the grid alone would give."""
 
@@ -200,7 +201,7 @@ class Jitter:
     warnings: tuple[Notice, ...] = ()
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class StabilityPoint:
     """Overlapping Allan deviation at one averaging time, with its 95 % interval."""
 

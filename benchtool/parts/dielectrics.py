@@ -8,7 +8,8 @@ References:
 from __future__ import annotations
 
 import re
-from dataclasses import dataclass
+
+from benchtool.frozen import frozen_record
 
 _LOW_C = {"X": -55, "Y": -30, "Z": 10}
 _HIGH_C = {"2": 45, "4": 65, "5": 85, "6": 105, "7": 125, "8": 150, "9": 200}
@@ -51,7 +52,7 @@ _AGEING_PCT_PER_DECADE = {
 _OTHER_NAMES = {"NP0": "C0G", "NPO": "C0G", "COG": "C0G", "CG": "C0G"}
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class TemperatureClass:
     """What a temperature code says of a ceramic capacitor.
 

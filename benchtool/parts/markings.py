@@ -9,9 +9,10 @@ from __future__ import annotations
 import re
 import unicodedata
 from collections.abc import Iterable, Iterator, Sequence
-from dataclasses import dataclass, replace
+from dataclasses import replace
 
 from benchtool.errors import UnitError
+from benchtool.frozen import frozen_record
 from benchtool.model.marking import Marking, PartKind
 from benchtool.parts.bands import colour, read_bands
 from benchtool.parts.capacitors import read_capacitor
@@ -27,7 +28,7 @@ _VOLTS_ALONE = {f"{volts}V" for volts in (10, 16, 25, 35, 50, 63, 100, 160, 200,
 _SHARE = re.compile(r"[±+\-\d./ ]*\d\s*%")
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class _Extras:
     """What stands beside the value."""
 

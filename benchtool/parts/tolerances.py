@@ -8,7 +8,7 @@ References:
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from benchtool.frozen import frozen_record
 
 SYMMETRIC_PCT = {
     "B": 0.1,
@@ -69,7 +69,7 @@ _CHIP_TANTALUM_V = {
 }
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Tolerance:
     """What a tolerance letter says of a value.
 

@@ -4,25 +4,24 @@ from __future__ import annotations
 
 import math
 from collections.abc import Callable
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 from benchtool.errors import BenchtoolError, DesignError
 from benchtool.model.capture import StructurePoint
 from benchtool.model.quantity import Bound, Measured, Notice, Quantity
 from benchtool.model.result import (
     Analysis,
-    Change,
-    Check,
     Finding,
     IntervalCounts,
-    PartEstimate,
-    Solution,
     Source,
     StageResult,
     TraceFacts,
 )
 from benchtool.model.timing import Jitter, Levels, StabilityPoint, Timing
 from benchtool.uncertainty import coverage_factor
+
+if TYPE_CHECKING:
+    from benchtool.model.judgement import Change, Check, PartEstimate, Solution
 
 SCHEMA = "benchtool/1"
 

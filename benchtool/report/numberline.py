@@ -7,13 +7,14 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+
+from benchtool.frozen import frozen_record
 
 LEGEND = "| limit   [ ] accepted after the guard band   o value   ( ) its U   < > off the line"
 _MARGIN = 0.25  # of the distance between the limits, shown beyond each
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class NumberLine:
     """What a number line shows, in one unit; None where there is none, one limit at least."""
 

@@ -4,8 +4,9 @@ from __future__ import annotations
 
 import math
 
+from benchtool.model.judgement import WORST_FIRST, Check, VerdictName
 from benchtool.model.quantity import Bound, Measured, Quantity
-from benchtool.model.result import WORST_FIRST, Analysis, Check, StageResult, VerdictName
+from benchtool.model.result import Analysis, StageResult
 from benchtool.report.numberline import NumberLine
 from benchtool.uncertainty import expanded
 from benchtool.units import format_measured, format_value

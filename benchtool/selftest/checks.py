@@ -2,10 +2,10 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from benchtool.frozen import frozen_record
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class SelfCheck:
     """One thing that benchtool found out about itself on this machine.
 

@@ -4,11 +4,11 @@ from __future__ import annotations
 
 import math
 from collections import Counter
-from dataclasses import dataclass
 
 import numpy as np
 
 from benchtool.circuits import Circuit
+from benchtool.frozen import frozen_record
 from benchtool.model.capture import Capture, Waveform
 from benchtool.model.quantity import Measured
 from benchtool.model.timing import Timing
@@ -22,7 +22,7 @@ TIMEBASE_REL = 50e-6
 _SEED = 20_310_302
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class _Bench:
     """One way of looking at the board."""
 

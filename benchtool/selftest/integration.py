@@ -3,9 +3,9 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
 
 from benchtool.circuits import Circuit
+from benchtool.frozen import frozen_record
 from benchtool.selftest.kirchhoff import (
     Phase,
     charge_phases,
@@ -16,7 +16,7 @@ from benchtool.selftest.kirchhoff import (
 _RTOL, _ATOL_V = 1e-12, 1e-13
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class _State:
     """Time in seconds, and volts inside the capacitor."""
 

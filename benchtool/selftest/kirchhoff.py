@@ -8,15 +8,15 @@ from __future__ import annotations
 
 import math
 from collections.abc import Callable
-from dataclasses import dataclass
 
 from benchtool.circuits import Circuit
+from benchtool.frozen import frozen_record
 
 Current = Callable[[float], float]
 """Current into the node in amperes as a function of the node's voltage in volts."""
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Phase:
     """One way in which the node is connected.
 

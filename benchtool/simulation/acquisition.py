@@ -4,11 +4,12 @@ from __future__ import annotations
 
 import math
 from collections.abc import Mapping
-from dataclasses import dataclass, field
+from dataclasses import field
 from types import MappingProxyType
 from typing import Literal
 
 from benchtool.errors import UsageError
+from benchtool.frozen import frozen_record
 from benchtool.model.capture import Role
 
 CaptureKind = Literal["waveform", "sampled-logic", "logic"]
@@ -19,7 +20,7 @@ NAMES: Mapping[Role, str] = MappingProxyType(
 """What the traces are called unless the acquisition says otherwise."""
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Ripple:
     """A sine on the supply: V(t) = V·(1 + depth_rel·sin(2π·frequency_hz·t + phase)).
 
@@ -47,7 +48,7 @@ class Ripple:
             )
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Acquisition:
     """How a simulated capture is taken.
 

@@ -3,13 +3,14 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass, replace
+from dataclasses import replace
 from itertools import pairwise
 
 import numpy as np
 
 from benchtool.circuits import Circuit, Prediction, find_topology
 from benchtool.errors import UsageError
+from benchtool.frozen import frozen_record
 from benchtool.model.arrays import BoolArray, FloatArray
 from benchtool.simulation.acquisition import Acquisition
 from benchtool.simulation.legs import QUIET, Leg, Legs, Wave, stack_legs
@@ -24,7 +25,7 @@ from benchtool.simulation.pulls import build_network
 from benchtool.simulation.single_run import one_shot_legs, power_on_legs, trigger_times
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Course:
     """What happens on the board, in true seconds after the first sample.
 

@@ -4,14 +4,14 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
-from dataclasses import dataclass
 
 import numpy as np
 
+from benchtool.frozen import frozen_record
 from benchtool.model.arrays import BoolArray, FloatArray
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Wave:
     """A ripple as it runs: sin(omega·t + phase), with its share of the supply.
 
@@ -39,7 +39,7 @@ QUIET = Wave(depth_rel=0.0, omega_per_s=0.0, phase_rad=0.0)
 """No ripple."""
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Leg:
     """One exponential of the voltage inside the capacitor.
 
@@ -64,7 +64,7 @@ class Leg:
     swing_v: float = 0.0
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Legs:
     """Legs in order as columns, each of shape (n,); see ``Leg``."""
 

@@ -4,18 +4,19 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterator
-from dataclasses import dataclass, replace
+from dataclasses import replace
 
 import numpy as np
 
 from benchtool.circuits import Prediction, Value
 from benchtool.errors import UsageError
+from benchtool.frozen import frozen_record
 from benchtool.simulation.acquisition import Acquisition
 from benchtool.simulation.legs import QUIET, Leg, Wave
 from benchtool.simulation.pulls import Network, charge_legs, discharge_leg, end_of
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Scene:
     """What the board is made of and how long the instrument looks on.
 

@@ -4,11 +4,12 @@ from __future__ import annotations
 
 import math
 from collections.abc import Callable, Iterator
-from dataclasses import dataclass, replace
+from dataclasses import replace
 
 import numpy as np
 
 from benchtool.circuits import Circuit, States, find_topology, settle_states
+from benchtool.frozen import frozen_record
 from benchtool.model.arrays import BoolArray, FloatArray
 from benchtool.simulation.legs import Leg, Wave
 
@@ -17,7 +18,7 @@ _CHUNK = 4096
 _LONGEST_TAU = 30.0
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Goal:
     """A node voltage to be reached, and the amplitude with which a ripple moves it."""
 
@@ -26,7 +27,7 @@ class Goal:
     swing_v: float = 0.0
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Pull:
     """One state of the node.
 
@@ -124,7 +125,7 @@ def _bisect(is_short: Callable[[FloatArray], BoolArray], low_s: float, high_s: f
     return high_s
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Network:
     """A circuit as pulls and goals, ready to be walked.
 

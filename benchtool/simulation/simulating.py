@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass, replace
+from dataclasses import replace
 
 import numpy as np
 
@@ -19,6 +19,7 @@ from benchtool.circuits import (
     size_range,
 )
 from benchtool.errors import UsageError
+from benchtool.frozen import frozen_record
 from benchtool.model.capture import Capture, Origin
 from benchtool.model.design import Design, Stage
 from benchtool.simulation.acquisition import Acquisition
@@ -32,7 +33,7 @@ from benchtool.simulation.truth import Truth, number_or_none
 _RIPPLED_CYCLES = 64
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Injected:
     """A fault put into a simulated board.
 

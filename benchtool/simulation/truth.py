@@ -5,16 +5,17 @@ from __future__ import annotations
 import json
 import math
 from collections.abc import Mapping
-from dataclasses import dataclass, fields, replace
+from dataclasses import fields, replace
 from typing import Any
 
 from benchtool.errors import InputError
+from benchtool.frozen import frozen_record
 from benchtool.model.arrays import FloatArray
 
 SCHEMA = "benchtool-truth/1"
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Truth:
     """What a simulated capture holds in truth; None where the circuit has no such figure.
 

@@ -4,10 +4,10 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterator
-from dataclasses import dataclass
 
 import numpy as np
 
+from benchtool.frozen import frozen_record
 from benchtool.model.arrays import FloatArray
 from benchtool.model.quantity import Contribution
 from benchtool.model.timing import Edges, Intervals
@@ -20,7 +20,7 @@ FEW = 6
 """Intervals below which chance may hide the grid from their scatter."""
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Setting:
     """What all figures of one trace share."""
 

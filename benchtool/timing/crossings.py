@@ -9,6 +9,7 @@ from typing import Any
 
 import numpy as np
 
+from benchtool.frozen import frozen_record
 from benchtool.model.arrays import BoolArray, FloatArray, NDArray
 from benchtool.model.capture import Span, Waveform
 from benchtool.timing.lengths import TransitionLengths
@@ -19,7 +20,7 @@ ROW = 2048
 """Samples in a row of the search for rows that hold a crossing."""
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Crossings:
     """Completed transitions of one gap-free run.
 

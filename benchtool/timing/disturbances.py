@@ -2,11 +2,12 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass, replace
+from dataclasses import replace
 from enum import IntEnum
 
 import numpy as np
 
+from benchtool.frozen import frozen_record
 from benchtool.model.arrays import BoolArray, FloatArray, NDArray, middle
 from benchtool.model.timing import Edges
 
@@ -29,7 +30,7 @@ class Reason(IntEnum):
     FIRST_HIGH = 4
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Widths:
     """Times between neighbouring edges of one run.
 
@@ -48,7 +49,7 @@ class Widths:
     reason: NDArray[np.int64]
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class CleanEdges:
     """Edges without glitches and bounce.
 

@@ -3,10 +3,10 @@
 from __future__ import annotations
 
 from collections.abc import Iterator
-from dataclasses import dataclass
 
 import numpy as np
 
+from benchtool.frozen import frozen_record
 from benchtool.model.arrays import FloatArray, middle
 from benchtool.model.capture import UniformTime, Waveform
 from benchtool.timing.pieces import Codes, Index, walk_pieces
@@ -15,7 +15,7 @@ _MOST = 1 << 19  # samples of windows that are fitted at once
 _CURVED = 2.0  # standard deviations of the mean curvature above which it is taken as real
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class FittedEdges:
     """Edges of one direction fitted by a line, or by a parabola where they are curved.
 

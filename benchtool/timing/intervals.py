@@ -2,12 +2,12 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
 from itertools import pairwise
 from typing import Literal
 
 import numpy as np
 
+from benchtool.frozen import frozen_record
 from benchtool.model.arrays import FloatArray, NDArray
 from benchtool.model.quantity import Notice
 from benchtool.model.timing import CutInterval, Dropped, Edges, Intervals
@@ -72,7 +72,7 @@ def find_intervals(
     )
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class _Cycles:
     start_s: FloatArray
     high_s: FloatArray

@@ -4,10 +4,10 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterator
-from dataclasses import dataclass
 
 import numpy as np
 
+from benchtool.frozen import frozen_record
 from benchtool.model.arrays import FloatArray, middle
 from benchtool.model.capture import Waveform
 from benchtool.model.timing import EdgeRun, Edges, Levels
@@ -21,7 +21,7 @@ _SHAPE = 0.3
 """What polynomials in place of exponentials shift all turns alike, over the noise of one."""
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class _Stretch:
     """The samples from one crossing of the mid level to the next, or to an end of the run."""
 

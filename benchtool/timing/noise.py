@@ -12,10 +12,9 @@ where it repeats it stands out as lines, which are cut back.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
-
 import numpy as np
 
+from benchtool.frozen import frozen_record
 from benchtool.model.arrays import FloatArray
 
 _SCORING_STEPS = 100
@@ -39,7 +38,7 @@ _DIRECT = 256
 """Values up to which the sine transform is a sum: the fast one takes 6 ms to load."""
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class NoiseFit:
     """Variances of the two noises, and two means of the periods with what they are worth.
 

@@ -8,7 +8,7 @@ import numpy as np
 
 from benchtool.model.arrays import FloatArray, NDArray, distinct, middle
 from benchtool.model.capture import BLOCK, LogicTrace, Trace, UniformTime, Waveform
-from benchtool.model.result import Overview
+from benchtool.model.overview import Overview
 from benchtool.model.timing import Edges, Intervals
 
 MOST_POINTS = 2000

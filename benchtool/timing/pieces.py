@@ -3,11 +3,11 @@
 from __future__ import annotations
 
 from collections.abc import Iterator
-from dataclasses import dataclass
 from typing import Any
 
 import numpy as np
 
+from benchtool.frozen import frozen_record
 from benchtool.model.arrays import FloatArray, NDArray
 from benchtool.model.capture import Samples, Span, UniformTime, Waveform
 
@@ -23,7 +23,7 @@ BRIDGE = 3
 """Longest row of missing samples that is bridged by a straight line instead of split."""
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Piece:
     """Consecutive samples without a hole.
 

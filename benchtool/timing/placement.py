@@ -4,10 +4,10 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
-from dataclasses import dataclass
 
 import numpy as np
 
+from benchtool.frozen import frozen_record
 from benchtool.model.arrays import BoolArray, FloatArray, middle
 from benchtool.model.capture import StampedTime, Waveform
 from benchtool.model.timing import Levels
@@ -23,7 +23,7 @@ _ALIKE = 0.3  # relative difference of lengths that few edges leave uncertain
 _GRID_SHARE = 0.23  # rms error of two points on an exponential edge: Ts/√12 · 0.23/samples
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class JoinedCrossings:
     """The crossings of all runs in one row; fields as in :class:`Crossings`."""
 
@@ -35,7 +35,7 @@ class JoinedCrossings:
     after_s: FloatArray
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Placement:
     """Edge times with what they are worth; fields as in :class:`Edges`."""
 
@@ -46,7 +46,7 @@ class Placement:
     level_u_s: float
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class _Direction:
     """The edges of one direction.
 
@@ -120,7 +120,7 @@ def place_edges(
     )
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class _Setting:
     """What all edges of a trace share; noise and code step in stored units."""
 

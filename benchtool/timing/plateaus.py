@@ -4,10 +4,10 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
-from dataclasses import dataclass
 
 import numpy as np
 
+from benchtool.frozen import frozen_record
 from benchtool.model.arrays import BoolArray, FloatArray
 
 _MOST = 1024  # stretches of a state that are looked at, the longest first
@@ -17,7 +17,7 @@ _TRIMMED = 0.05
 _TRIMMED_SD = 0.8711  # sd of a normal deviate whose largest 5 % in size are left out
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Plateau:
     """The samples of one state, away from edges, in volts.
 

@@ -3,11 +3,11 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
 
 import numpy as np
 
 from benchtool.errors import MeasurementError
+from benchtool.frozen import frozen_record
 from benchtool.model.arrays import FloatArray, middle
 from benchtool.model.capture import Capture, LogicTrace, Role, Trace
 from benchtool.model.timing import Edges, Levels
@@ -21,7 +21,7 @@ _NARROW = 0.25  # a trigger pulse is shorter than this share of the pulse that i
 _PRECEDED = 0.8
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Shape:
     """What a trace looks like, by which its role is found and from which it is measured.
 
@@ -131,7 +131,7 @@ def _triggers(trigger: Shape, output: Shape) -> bool:
     return pulses is not None and any(_starts(pulses, answer) for answer in _pulses(output))
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class _Pulses:
     """The intervals of one state: when they begin, and how long they usually are."""
 

@@ -3,10 +3,10 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
 
 import numpy as np
 
+from benchtool.frozen import frozen_record
 from benchtool.model.arrays import FloatArray
 from benchtool.timing.noise import NoiseFit
 from benchtool.uncertainty import coverage_factor
@@ -22,7 +22,7 @@ _LEAST_FOR_BATCHES = 36
 _SLOW_NOISE = 2.5  # variance of batch means over what neighbours explain: 1 % of chance at F(11,∞)
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Mean:
     """A mean of repeated observations.
 

@@ -2,10 +2,9 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
-
 import numpy as np
 
+from benchtool.frozen import frozen_record
 from benchtool.model.arrays import AnyArray, FloatArray, distinct, middle, quantile
 from benchtool.model.capture import Waveform
 
@@ -15,7 +14,7 @@ KEPT = 1 << 20
 _GOLDEN = 0.6180339887498949
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Survey:
     """What one pass over the samples kept.
 

@@ -2,13 +2,12 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
-
+from benchtool.frozen import frozen_record
 from benchtool.model.capture import Waveform
 from benchtool.model.timing import Levels
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Thresholds:
     """Reference levels in the unit of the stored samples.
 

@@ -3,10 +3,11 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass, replace
+from dataclasses import replace
 
 import numpy as np
 
+from benchtool.frozen import frozen_record
 from benchtool.model.arrays import FloatArray
 
 _NEAR, _FAR = 0.15, 0.30  # of the swing below the extreme: two levels on each side
@@ -25,7 +26,7 @@ A parabola through the last 35 % of an exponential errs by 2e-4 of the swing, a 
 """
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Turn:
     """A turning point: its time, standard uncertainty, direction, and whether it was fitted."""
 
@@ -39,7 +40,7 @@ class Turn:
         return replace(self, is_peak=False)
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class _Side:
     """A polynomial through the samples on one side, over times against the turn."""
 
@@ -80,7 +81,7 @@ def locate_turn(
     return _refine(times_s, values / swing, (start, stop), at, noise / swing, steep)
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class _Steep:
     """First and last sample near the extreme: where the turn lies if a side has no more."""
 

@@ -8,7 +8,9 @@ References:
 from __future__ import annotations
 
 from collections.abc import Iterable, Mapping
-from dataclasses import dataclass, field
+from dataclasses import field
+
+from benchtool.frozen import frozen_record
 
 PREFIX_EXPONENTS = {
     "f": -15,
@@ -43,7 +45,7 @@ _PREFIX_SYMBOLS = {
 _RATIOS = {"%": -2, "‰": -3, "ppm": -6, "ppb": -9}
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Scale:
     """A size to print in.
 
@@ -60,7 +62,7 @@ class Scale:
     power: str = ""
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Unit:
     """One unit: how it is written, read and scaled.
 

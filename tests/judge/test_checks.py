@@ -11,8 +11,8 @@ from benchtool.judge.settling import periods_to_settle
 from benchtool.judge.verdict import worst
 from benchtool.model.decision import StageLimit
 from benchtool.model.design import Part, Rule, Stage
+from benchtool.model.judgement import Check, Solution
 from benchtool.model.quantity import Bound, Contribution, Measured
-from benchtool.model.result import Check, Solution
 from benchtool.model.timing import CutInterval, Intervals, Jitter, Timing
 
 

@@ -8,16 +8,14 @@ import numpy as np
 
 from benchtool.model.capture import StructurePoint
 from benchtool.model.design import Band, Design, Instrument, Part, Probe, Rule, Stage
+from benchtool.model.judgement import Check, PartEstimate, Solution
+from benchtool.model.overview import Overview
 from benchtool.model.quantity import Bound, Contribution, Measured, Notice
 from benchtool.model.result import (
     Analysis,
-    Check,
     Finding,
     Gap,
     IntervalCounts,
-    Overview,
-    PartEstimate,
-    Solution,
     Source,
     StageResult,
     TraceFacts,

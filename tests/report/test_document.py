@@ -14,18 +14,9 @@ from page_cases import MADE_AT, design, seconds
 
 from benchtool.errors import BenchtoolError, DesignError, DesignFault, UsageError
 from benchtool.model.design import Rule
+from benchtool.model.judgement import Check, PartEstimate, Solution
 from benchtool.model.quantity import Bound, Measured, Notice
-from benchtool.model.result import (
-    Analysis,
-    Check,
-    Finding,
-    Gap,
-    IntervalCounts,
-    PartEstimate,
-    Solution,
-    StageResult,
-    TraceFacts,
-)
+from benchtool.model.result import Analysis, Finding, Gap, IntervalCounts, StageResult, TraceFacts
 from benchtool.model.timing import Jitter, Timing
 from benchtool.report.document import (
     analysis_document,

@@ -4,13 +4,13 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
-from dataclasses import dataclass
 
 import numpy as np
 
 from benchtool.formats.text.cells import last_digit, number, significant_digits
 from benchtool.formats.text.columns import ClockColumn
 from benchtool.formats.text.decoding import Convert, Wanted
+from benchtool.frozen import frozen_record
 from benchtool.model.arrays import FloatArray, middle
 
 _FLOAT_DIGITS = 15  # more are not exact in a float
@@ -19,7 +19,7 @@ _DAY_S = 86400.0
 _MOST_PLACES = 300  # a float has no finer digits
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class ClockCells:
     """How to decode a clock column.
 

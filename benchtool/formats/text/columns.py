@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass, replace
+from dataclasses import replace
 from typing import Literal
 
 import numpy as np
@@ -13,12 +13,13 @@ from benchtool.formats.text.cells import Kind, number
 from benchtool.formats.text.heading import Heading
 from benchtool.formats.text.layout import Layout
 from benchtool.formats.text.metadata import Stated
+from benchtool.frozen import frozen_record
 from benchtool.model.arrays import FloatArray
 
 ClockKind = Literal["number", "stamp", "index"]
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Column:
     """One field of the data rows.
 
@@ -44,7 +45,7 @@ class Column:
         return self.name or f"column {self.field + 1}"
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class ClockColumn:
     """A column that gives time.
 
@@ -61,7 +62,7 @@ class ClockColumn:
     date: int | None = None
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Columns:
     """Clocks and channels.
 

@@ -9,7 +9,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass, replace
+from dataclasses import replace
 
 import numpy as np
 
@@ -17,6 +17,7 @@ from benchtool.formats.text.cells import number
 from benchtool.formats.text.digits import RowForm, parse_alike
 from benchtool.formats.text.layout import Layout, is_comment
 from benchtool.formats.text.regular import wanted_cells
+from benchtool.frozen import frozen_record
 from benchtool.model.arrays import FloatArray
 
 _LEAF = 64
@@ -24,7 +25,7 @@ _LEAF = 64
 Convert = Callable[[Sequence[str]], FloatArray]
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Wanted:
     """One column to decode.
 
@@ -39,7 +40,7 @@ class Wanted:
     second: int | None = None
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Decoded:
     """The rows of one block: blank and comment lines left out.
 
@@ -59,7 +60,7 @@ class Decoded:
     n_lines: int = 0
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Decoder:
     """Decodes blocks of whole lines.
 

@@ -11,11 +11,11 @@ from __future__ import annotations
 
 import re
 from collections.abc import Iterator
-from dataclasses import dataclass
 
 import numpy as np
 from numpy.lib.stride_tricks import sliding_window_view
 
+from benchtool.frozen import frozen_record
 from benchtool.model.arrays import FloatArray, NDArray
 
 Bytes = NDArray[np.uint8]
@@ -33,7 +33,7 @@ _NUMBERS = {
 _BLANKED = re.compile(rb"\S+")
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Number:
     """Where the digits of one number stand in the rows of a kind.
 
@@ -52,7 +52,7 @@ class Number:
     divides: bool = False
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class RowForm:
     """The form that rows must have: delimiter, decimal mark, number of fields, those wanted."""
 

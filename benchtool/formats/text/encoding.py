@@ -3,10 +3,11 @@
 from __future__ import annotations
 
 import codecs
-from dataclasses import dataclass, replace
+from dataclasses import replace
 
 from benchtool.formats.content import IN_MEMORY_BYTES, Content
 from benchtool.formats.spool import Spool
+from benchtool.frozen import frozen_record
 
 _MARKS = (
     (codecs.BOM_UTF8, "utf-8"),
@@ -19,7 +20,7 @@ _CONTROL = bytes(set(range(32)) - {9, 10, 12, 13, 27})
 _HIGH = bytes(range(128, 256))
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Encoding:
     """An encoding, the bytes of its mark at the start, and what it was found from."""
 

@@ -2,18 +2,17 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
-
 from benchtool.formats.text import words
 from benchtool.formats.text.cells import kind_of
 from benchtool.formats.text.layout import COMMENT, Layout, split_cells
 from benchtool.formats.text.metadata import split_unit
+from benchtool.frozen import frozen_record
 
 _MOST_ROWS = 3
 _MOST_PASSED = 3  # lines between the header and the data, such as the title of a segment
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Heading:
     """Names and units, one a field; empty where the file gives none.
 

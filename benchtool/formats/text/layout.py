@@ -3,15 +3,16 @@
 from __future__ import annotations
 
 import re
-from dataclasses import dataclass, field
+from dataclasses import field
 
 from benchtool.formats.text.cells import Kind
+from benchtool.frozen import frozen_record
 
 DELIMITERS = {"comma": ",", "semicolon": ";", "tab": "\t", "pipe": "|", "space": " ", "none": ""}
 COMMENT = re.compile(r"^\s*(?:#|//|%|!|\*(?!\*)\s)\s*")
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Layout:
     """How the lines of a text fall into cells.
 

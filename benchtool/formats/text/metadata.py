@@ -4,13 +4,13 @@ from __future__ import annotations
 
 import re
 from collections.abc import Callable, Iterable, Iterator
-from dataclasses import dataclass
 from itertools import pairwise
 from typing import TypeVar
 
 from benchtool.formats.text import words
 from benchtool.formats.text.cells import number
 from benchtool.formats.text.layout import COMMENT, Layout, split_cells
+from benchtool.frozen import frozen_record
 
 _T = TypeVar("_T")
 _NUMBER = re.compile(r"[+-]?(?:\d+(?:[.,]\d+)?|[.,]\d+)(?:[eE][+-]?\d+)?")
@@ -19,7 +19,7 @@ _SCALED = {"k": 1e3, "K": 1e3, "M": 1e6, "G": 1e9, "m": 1e-3, "u": 1e-6, "µ": 1
 _INSTRUMENT = re.compile(r"(?:model|instrument|device|source instrument|ger[aä]t)(?: name| type)?")
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Stated:
     """A figure that the metadata state, and the words it was found in."""
 
@@ -28,7 +28,7 @@ class Stated:
     assumed_unit: bool = False
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Metadata:
     """What the lines around the data say.
 

@@ -2,8 +2,6 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
-
 import numpy as np
 
 from benchtool.errors import MalformedCaptureError
@@ -16,6 +14,7 @@ from benchtool.formats.text.scanning import Range, Scan
 from benchtool.formats.text.timebase import ShiftedStamps, Timebase
 from benchtool.formats.text.walking import DataRows, TextSamples
 from benchtool.formats.text.words import TimeUnit
+from benchtool.frozen import frozen_record
 from benchtool.model.arrays import NDArray
 from benchtool.model.capture import (
     ArraySamples,
@@ -31,7 +30,7 @@ _EMPTY = np.empty(0, np.int64)
 _INTEGERS = (np.dtype(np.int8), np.dtype(np.int16), np.dtype(np.int32), np.dtype(np.int64))
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Sampled:
     """All that waveforms are made of.
 

@@ -5,11 +5,11 @@ from __future__ import annotations
 import re
 import warnings
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass
 
 import numpy as np
 
 from benchtool.formats.text.cells import is_number, plain
+from benchtool.frozen import frozen_record
 from benchtool.model.arrays import NDArray
 
 IntArray = NDArray[np.int64]
@@ -25,7 +25,7 @@ _STAMP = re.compile(
 )
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class StampReader:
     """Reads calendar stamps as whole nanoseconds since 1970, or since midnight.
 

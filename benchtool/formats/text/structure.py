@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass, field
+from dataclasses import field
 
 import numpy as np
 
@@ -22,6 +22,7 @@ from benchtool.formats.text.readings import find_layout
 from benchtool.formats.text.timeunit import FoundUnit, find_time_unit, stated_interval
 from benchtool.formats.text.walking import DataRows
 from benchtool.formats.text.words import TimeUnit
+from benchtool.frozen import frozen_record
 from benchtool.model.arrays import FloatArray
 from benchtool.model.capture import ReadOptions
 from benchtool.model.quantity import Notice
@@ -31,7 +32,7 @@ _TAIL_ROWS = 64
 _EPOCH_S = (1e9, 4e9)  # 2001-09-09 to 2096-10-02
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Structure:
     """What was found before the first walk over the rows.
 
@@ -60,7 +61,7 @@ class Structure:
     warnings: tuple[Notice, ...]
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class _Text:
     """The file as text: its first and last lines."""
 

@@ -4,12 +4,12 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterator
-from dataclasses import dataclass
 
 import numpy as np
 
 from benchtool.formats.clock import ClockScan, Piece
 from benchtool.formats.text.words import TimeUnit
+from benchtool.frozen import frozen_record
 from benchtool.model.arrays import AnyArray, FloatArray, NDArray
 from benchtool.model.capture import Samples, Span, UniformTime
 from benchtool.model.quantity import Notice
@@ -18,7 +18,7 @@ _AGREES = 1e-6  # a stated interval this near to the stamps' own is the one mean
 _DIFFERS = 0.01  # beyond this a stated interval contradicts the stamps
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Timebase:
     """Time of the channels that share a clock.
 
@@ -172,7 +172,7 @@ def _gap_notices(
     ]
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class ShiftedStamps:
     """Stamps whose restarted segments are moved behind one another."""
 

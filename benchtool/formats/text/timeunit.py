@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
 
 import numpy as np
 
@@ -12,6 +11,7 @@ from benchtool.formats.text import words
 from benchtool.formats.text.columns import ClockColumn
 from benchtool.formats.text.metadata import Metadata, Stated
 from benchtool.formats.text.words import SECOND, TIME_UNITS, TimeUnit
+from benchtool.frozen import frozen_record
 from benchtool.model.arrays import FloatArray
 from benchtool.model.capture import ReadOptions
 from benchtool.model.quantity import Notice
@@ -20,7 +20,7 @@ _EPOCHS = ((1e9, "s"), (1e12, "ms"), (1e15, "us"), (1e18, "ns"))  # 2001-09-09 t
 _EPOCH_SPAN = 4.0
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class FoundUnit:
     """A unit of time and what it was found from."""
 

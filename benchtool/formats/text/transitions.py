@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
 
 import numpy as np
 
@@ -13,6 +12,7 @@ from benchtool.formats.grid import greatest_common_spacing
 from benchtool.formats.logic import UNKNOWN, States, logic_trace
 from benchtool.formats.text.cells import EDGE_WORDS
 from benchtool.formats.text.words import TimeUnit
+from benchtool.frozen import frozen_record
 from benchtool.model.arrays import FloatArray, NDArray, distinct, middle
 from benchtool.model.capture import LogicTrace
 from benchtool.model.quantity import Notice
@@ -51,7 +51,7 @@ def _two_valued(values: FloatArray) -> bool:
     return distinct(values[np.isfinite(values)]).size in (1, 2)
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Listed:
     """One channel of a list of transitions.
 

@@ -4,18 +4,19 @@ from __future__ import annotations
 
 from bisect import bisect_right
 from collections.abc import Iterator
-from dataclasses import dataclass, field, replace
+from dataclasses import field, replace
 
 import numpy as np
 
 from benchtool.formats.content import Content
 from benchtool.formats.text.decoding import Decoded, Decoder
+from benchtool.frozen import frozen_record
 from benchtool.model.arrays import AnyArray, NDArray
 
 BLOCK_BYTES = 1 << 20
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class DataRows:
     """The bytes of the data rows, and how to decode them.
 
@@ -63,7 +64,7 @@ class DataRows:
             yield at, self.decoder.decode(block)
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class BlockIndex:
     """Where blocks begin: row number and byte offset of each."""
 
@@ -81,7 +82,7 @@ class BlockIndex:
         return self.rows[i], self.offsets[i]
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class TextSamples:
     """One column of a text file, decoded anew each time it is walked.
 

@@ -3,10 +3,11 @@
 from __future__ import annotations
 
 import re
-from dataclasses import dataclass
+
+from benchtool.frozen import frozen_record
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class TimeUnit:
     """A unit of time: ``seconds = value * times / over``, both exact."""
 

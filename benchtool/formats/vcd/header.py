@@ -7,6 +7,7 @@ from collections.abc import Iterator
 from dataclasses import dataclass, field
 
 from benchtool.errors import MalformedCaptureError
+from benchtool.frozen import frozen_record
 
 _TIMESCALE = re.compile(r"(1|10|100)\s*(s|ms|us|ns|ps|fs)")
 PER_SECOND = {"s": 1, "ms": 10**3, "us": 10**6, "ns": 10**9, "ps": 10**12, "fs": 10**15}
@@ -16,7 +17,7 @@ _SECTIONS = {b"$scope", b"$upscope", b"$var", b"$timescale", b"$enddefinitions",
              b"$version", b"$comment"}  # fmt: skip
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Variable:
     """One declared variable.
 

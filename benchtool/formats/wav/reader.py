@@ -4,12 +4,12 @@ from __future__ import annotations
 
 import struct
 from collections.abc import Iterator
-from dataclasses import dataclass
 
 import numpy as np
 
 from benchtool.errors import MalformedCaptureError
 from benchtool.formats.content import Content
+from benchtool.frozen import frozen_record
 from benchtool.model.arrays import AnyArray, NDArray
 from benchtool.model.capture import (
     BLOCK,
@@ -36,7 +36,7 @@ _STORED = {
 }
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class WaveLayout:
     """What the ``fmt`` and ``data`` chunks say.
 
@@ -59,7 +59,7 @@ class WaveLayout:
     n_promised: int | None
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class WaveSamples:
     """One channel of a WAVE file, read anew each time it is walked."""
 

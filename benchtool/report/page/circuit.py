@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from benchtool.model.result import PartEstimate, Solution, StageResult
+from benchtool.model.judgement import PartEstimate, Solution
+from benchtool.model.result import StageResult
 from benchtool.report.page.views import Block, Facts, Grid, Prose
 from benchtool.report.phrases import product_names, quantity_text
 from benchtool.units import format_value

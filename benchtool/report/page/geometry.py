@@ -3,9 +3,9 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
 from typing import Literal
 
+from benchtool.frozen import frozen_record
 from benchtool.report.numberline import NumberLine
 from benchtool.report.page.views import Line
 
@@ -15,7 +15,7 @@ _NEAR_END = 14.0  # a label nearer to an end than this would reach beyond it
 Anchor = Literal["start", "middle", "end"]
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Tick:
     """A limit: where it is, its figure, and how the figure is set under it."""
 
@@ -24,7 +24,7 @@ class Tick:
     anchor: Anchor
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Piece:
     """A piece of the line."""
 
@@ -32,7 +32,7 @@ class Piece:
     width: float
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Drawing:
     """All marks of a number line; what is not there is None or empty."""
 

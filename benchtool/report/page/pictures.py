@@ -3,15 +3,16 @@
 from __future__ import annotations
 
 from collections.abc import Callable
-from dataclasses import dataclass
 from io import StringIO
 from typing import TYPE_CHECKING, Any, Literal
 
 import numpy as np
 
+from benchtool.frozen import frozen_record
 from benchtool.model.arrays import FloatArray
+from benchtool.model.overview import Overview
 from benchtool.model.quantity import Measured
-from benchtool.model.result import Overview, StageResult
+from benchtool.model.result import StageResult
 from benchtool.model.timing import Levels
 from benchtool.report.page.svg import ACCENT, INK, SOFT, fit_svg
 from benchtool.units import format_value
@@ -45,7 +46,7 @@ _STYLE: Any = {
 }
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Picture:
     """A picture as an SVG element, with its caption."""
 
@@ -103,7 +104,7 @@ def _draw(draw: Callable[[Axes], None], *, width_in: float, prefix: str, title: 
     return fit_svg(page.getvalue(), prefix=prefix, title=title)
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class _Centre:
     """The mean period, and the unit in which the periods differ from it."""
 

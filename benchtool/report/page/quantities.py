@@ -3,10 +3,11 @@
 from __future__ import annotations
 
 from collections.abc import Iterable
-from dataclasses import dataclass
 
+from benchtool.frozen import frozen_record
+from benchtool.model.judgement import Check, VerdictName
 from benchtool.model.quantity import Bound, Measured, Quantity
-from benchtool.model.result import Check, StageResult, VerdictName
+from benchtool.model.result import StageResult
 from benchtool.model.timing import Levels
 from benchtool.report.page.views import Grid, Line, Lines
 from benchtool.report.phrases import (
@@ -29,7 +30,7 @@ _JUDGED = ("quantity", _FIGURE, "limits", "from", "room left", "conforms", "verd
 _UNJUDGED = ("quantity", _FIGURE, "U, relative", "observations")
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class _Row:
     name: str
     label: str

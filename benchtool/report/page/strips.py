@@ -8,7 +8,8 @@ from dataclasses import replace
 import numpy as np
 
 from benchtool.model.arrays import FloatArray
-from benchtool.model.result import Overview, StageResult
+from benchtool.model.overview import Overview
+from benchtool.model.result import StageResult
 from benchtool.report.numberline import draw_line
 from benchtool.report.page.geometry import off_line
 from benchtool.report.page.views import Line

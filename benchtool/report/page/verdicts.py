@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from benchtool.model.result import Analysis, Solution, StageResult
+from benchtool.model.judgement import Solution
+from benchtool.model.result import Analysis, StageResult
 from benchtool.report.page.views import Verdict
 from benchtool.report.phrases import (
     product_names,

@@ -7,14 +7,15 @@ kind of block and nothing about analyses.
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
 from typing import ClassVar
 
-from benchtool.model.result import StageResult, VerdictName
+from benchtool.frozen import frozen_record
+from benchtool.model.judgement import VerdictName
+from benchtool.model.result import StageResult
 from benchtool.report.numberline import NumberLine
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Stamp:
     """Who made the page, when and how: what the analysis itself does not hold."""
 
@@ -24,7 +25,7 @@ class Stamp:
     command_line: str
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Verdict:
     """A word and a sentence; ``name`` is None where nothing was judged."""
 
@@ -38,7 +39,7 @@ class Verdict:
         return "The board" if self.name else "All traces"
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Prose:
     """A paragraph."""
 
@@ -46,7 +47,7 @@ class Prose:
     text: str
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Facts:
     """Names, each with what is said of it."""
 
@@ -54,7 +55,7 @@ class Facts:
     rows: tuple[tuple[str, str], ...]
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Grid:
     """A table.
 
@@ -76,7 +77,7 @@ class Grid:
     numeric: frozenset[int] = frozenset()
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Line:
     """The number line of one check, with its figures in words.
 
@@ -103,7 +104,7 @@ class Line:
     at_most: float | None = None
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Lines:
     """A number line for each check."""
 
@@ -111,7 +112,7 @@ class Lines:
     lines: tuple[Line, ...]
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Pictures:
     """What can be drawn of a result: its trace, the histogram of its periods, them over time."""
 
@@ -119,7 +120,7 @@ class Pictures:
     result: StageResult
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Note:
     """A finding or a warning."""
 
@@ -128,7 +129,7 @@ class Note:
     code: str
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Notes:
     """Findings and warnings."""
 
@@ -136,7 +137,7 @@ class Notes:
     notes: tuple[Note, ...]
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@frozen_record
 class Command:
     """A command to copy."""
 
@@ -147,7 +148,7 @@ class Command:
 Block = Prose | Facts | Grid | Lines | Pictures | Notes | Command
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Section:
     """Blocks under a title; ``key`` tells a writer where it belongs."""
 
@@ -156,7 +157,7 @@ class Section:
     blocks: tuple[Block, ...]
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Sheet:
     """All that is shown of one stage or one trace."""
 
@@ -165,7 +166,7 @@ class Sheet:
     sections: tuple[Section, ...]
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+@frozen_record(eq=False)
 class Page:
     """The whole report.
 

@@ -8,8 +8,9 @@ from itertools import zip_longest
 from rich.console import Console
 from rich.text import Text
 
+from benchtool.model.judgement import VerdictName
 from benchtool.model.quantity import Notice
-from benchtool.model.result import Analysis, StageResult, VerdictName
+from benchtool.model.result import Analysis, StageResult
 from benchtool.report.phrases import VERDICT_STYLES
 from benchtool.report.screen.letters import large
 from benchtool.report.text import printable, spelled

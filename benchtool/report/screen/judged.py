@@ -5,7 +5,8 @@ from __future__ import annotations
 from rich.console import Console
 from rich.text import Text
 
-from benchtool.model.result import Analysis, Check, StageResult
+from benchtool.model.judgement import Check
+from benchtool.model.result import Analysis, StageResult
 from benchtool.report.commands import quoted
 from benchtool.report.numberline import draw_line
 from benchtool.report.phrases import (

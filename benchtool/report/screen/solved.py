@@ -5,8 +5,9 @@ from __future__ import annotations
 from rich.console import Console
 from rich.text import Text
 
+from benchtool.model.judgement import PartEstimate, Solution
 from benchtool.model.quantity import Quantity
-from benchtool.model.result import Analysis, PartEstimate, Solution, StageResult
+from benchtool.model.result import Analysis, StageResult
 from benchtool.report.commands import quoted
 from benchtool.report.phrases import file_name, product_names, quantity_text, ratio_text
 from benchtool.report.screen.blocks import (
