@@ -88,10 +88,31 @@ class UnknownStructureError(CaptureError):
     default_code = "unknown-structure"
 
 
+@frozen_record
+class Way:
+    """One way to settle an ambiguity: fields of the read options, and what they would mean."""
+
+    options: tuple[tuple[str, str], ...]
+    meaning: str
+
+
 class AmbiguousStructureError(CaptureError):
-    """Two readings of the file are both sound."""
+    """Two readings of the file are both sound.
+
+    Args:
+        message: What is ambiguous.
+        hint: The option that settles it.
+        code: Stable name of the error.
+        ways: Options that could settle it; those that do are named in place of ``hint``.
+    """
 
     default_code = "ambiguous-structure"
+
+    def __init__(
+        self, message: str, *, hint: str, code: str | None = None, ways: tuple[Way, ...] = ()
+    ) -> None:
+        super().__init__(message, hint=hint, code=code)
+        self.ways = ways
 
 
 class MalformedCaptureError(CaptureError):

@@ -14,6 +14,8 @@ from typing import Any, NoReturn, TypeVar, dataclass_transform, overload
 
 R = TypeVar("R")
 
+_FOUND: dict[type, tuple[Field[Any], ...]] = {}  # looking for them takes longer than a record does
+
 
 @overload
 def frozen_record(record: type[R], /) -> type[R]: ...
@@ -40,7 +42,11 @@ def frozen_record(record: type[R] | None = None, /, *, eq: bool = True) -> Any:
 
 
 def _fields(record: Any) -> tuple[Field[Any], ...]:
-    return fields(record)
+    kind = type(record)
+    found = _FOUND.get(kind)
+    if found is None:
+        found = _FOUND[kind] = fields(record)
+    return found
 
 
 def _values(record: object, /) -> tuple[object, ...]:

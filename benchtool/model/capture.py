@@ -5,16 +5,23 @@ from __future__ import annotations
 import math
 from collections.abc import Iterator
 from dataclasses import dataclass
-from typing import Literal, Protocol
+from typing import TYPE_CHECKING, Literal, Protocol
 
 import numpy as np
 
 from benchtool.frozen import frozen_record
 from benchtool.model.arrays import AnyArray, BoolArray, FloatArray
 from benchtool.model.quantity import Notice
+from benchtool.model.watching import tell
+
+if TYPE_CHECKING:
+    from benchtool.model.window import Window
 
 BLOCK = 1 << 18
 """Samples in a block: small enough for the cache, large enough for numpy."""
+
+BLOCK_BYTES = 1 << 21
+"""Bytes in a block of narrow samples, which take numpy so little time that more of them fit."""
 
 
 class Samples(Protocol):
@@ -62,8 +69,11 @@ class ArraySamples:
     def blocks(self, start: int = 0, stop: int | None = None) -> Iterator[AnyArray]:
         """Yield consecutive views of the samples ``start`` to ``stop``."""
         end = self.size if stop is None else min(stop, self.size)
-        for first in range(start, end, BLOCK):
-            yield self.array[first : min(first + BLOCK, end)]
+        size = self.array.itemsize
+        length = max(BLOCK, BLOCK_BYTES // size)
+        for first in range(start, end, length):
+            yield self.array[first : min(first + length, end)]
+            tell("measuring", (min(first + length, end) - start) * size, (end - start) * size)
 
 
 @frozen_record
@@ -215,13 +225,24 @@ Trace = Waveform | LogicTrace
 Role = Literal["output", "capacitor", "supply", "trigger", "other"]
 
 
+Sureness = Literal["stated", "measured", "assumed"]
+
+
 @frozen_record
 class StructurePoint:
-    """One thing found about a file's structure, and what it was found from."""
+    """One thing found about a file's structure, and what it was found from.
+
+    Attributes:
+        name: What it is about.
+        value: What was found.
+        evidence: What it was found from.
+        sure: Stated by the file or the user, measured from the rows, or assumed.
+    """
 
     name: str
     value: str
     evidence: str
+    sure: Sureness = "measured"
 
 
 @frozen_record
@@ -245,12 +266,18 @@ class Origin:
 
 @frozen_record(eq=False)
 class Capture:
-    """One file or one acquisition: its traces, its structure and what was assumed on reading."""
+    """One file or one acquisition: its traces, its structure and what was assumed on reading.
+
+    ``window`` is the part of the record that the traces are, where they are not all of it;
+    ``channel`` names the trace to measure where neither the user nor the design names one.
+    """
 
     origin: Origin
     traces: tuple[Trace, ...]
     structure: tuple[StructurePoint, ...] = ()
     warnings: tuple[Notice, ...] = ()
+    window: Window | None = None
+    channel: str | None = None
 
     def __post_init__(self) -> None:
         if not self.traces:
@@ -263,16 +290,22 @@ class ReadOptions:
 
     Attributes:
         format: Name of the reader.
-        delimiter: One of ``, ; tab | space``.
+        delimiter: One of ``, ; tab | space none``, or any other one character.
         decimal: ``.`` or ``,``.
+        time: Name (or number, from 1) of the column that gives time; ``none`` counts the rows.
         time_unit: s, ms, us, ns, ps or fs: the unit of the time column.
-        interval_s: Sample interval in seconds, where the file has no time column.
+        interval_s: Sample interval in seconds; it wins over what the file says.
+        skip: Lines before the header or the data that are passed over.
         channel: Name (or number, from 1) of the trace to measure.
+        structure: Name of the kept structure to apply; ``none`` applies none of them.
     """
 
     format: str | None = None
     delimiter: str | None = None
     decimal: str | None = None
+    time: str | None = None
     time_unit: str | None = None
     interval_s: float | None = None
+    skip: int | None = None
     channel: str | None = None
+    structure: str | None = None

@@ -10,6 +10,7 @@ from benchtool.model.capture import ReadOptions
 
 if TYPE_CHECKING:
     from benchtool.model.design import Probe
+    from benchtool.model.window import Window
 
 TIMEBASE_REL = 50e-6
 """Half-width of a timebase of which nothing is known: common practice for crystals."""
@@ -30,6 +31,7 @@ class MeasureOptions:
         temperature_c: Temperature of the board in degrees Celsius.
         probe: The probe's load.
         read: What is overruled about the file's structure.
+        window: The part of the record to measure.
     """
 
     active: Literal["high", "low"] | None = None
@@ -39,3 +41,4 @@ class MeasureOptions:
     temperature_c: float | None = None
     probe: Probe | None = None
     read: ReadOptions = field(default_factory=ReadOptions)
+    window: Window | None = None

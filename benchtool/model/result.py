@@ -13,6 +13,7 @@ if TYPE_CHECKING:
     from benchtool.model.design import Design, Rule, Stage
     from benchtool.model.judgement import Change, Check, Solution, VerdictName
     from benchtool.model.overview import Overview
+    from benchtool.model.window import Window
 
 
 @frozen_record
@@ -50,7 +51,11 @@ class IntervalCounts:
 
 @frozen_record
 class Source:
-    """A file that went into an analysis."""
+    """A file that went into an analysis.
+
+    ``window`` is the part of it that was taken, where not all; ``options`` are the words by which
+    the user said how to read it.
+    """
 
     role: str
     name: str
@@ -59,6 +64,8 @@ class Source:
     structure: tuple[StructurePoint, ...] = ()
     start_ns: int | None = None
     instrument: str | None = None
+    window: Window | None = None
+    options: tuple[str, ...] = ()
 
 
 @frozen_record

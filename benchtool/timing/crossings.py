@@ -2,8 +2,6 @@
 
 from __future__ import annotations
 
-import math
-from collections.abc import Sequence
 from dataclasses import dataclass, field
 from typing import Any
 
@@ -11,13 +9,15 @@ import numpy as np
 
 from benchtool.frozen import frozen_record
 from benchtool.model.arrays import BoolArray, FloatArray, NDArray
-from benchtool.model.capture import Span, Waveform
+from benchtool.model.capture import Span, UniformTime, Waveform
+from benchtool.timing.changes import find_changes
 from benchtool.timing.lengths import TransitionLengths
-from benchtool.timing.pieces import Codes, Index, Piece, times_at, walk_pieces
+from benchtool.timing.pieces import Index, Piece, times_at, walk_pieces
+from benchtool.timing.rows import Codes
+from benchtool.timing.tally import Tally
 from benchtool.timing.thresholds import Thresholds
 
-ROW = 2048
-"""Samples in a row of the search for rows that hold a crossing."""
+_Choice = Index | slice
 
 
 @frozen_record(eq=False)
@@ -49,65 +49,93 @@ class Crossings:
     span: Span
 
 
+@frozen_record(eq=False)
+class Walked:
+    """What one walk over a waveform finds.
+
+    Attributes:
+        runs: Its gap-free runs.
+        lengths: Typical number of samples strictly between the outer reference levels of a rising
+            and of a falling transition.
+        tally: Range of all samples and how many are missing.
+    """
+
+    runs: tuple[Crossings, ...]
+    lengths: tuple[float, float]
+    tally: Tally
+
+
 @dataclass(slots=True, kw_only=True, eq=False)
 class _Run:
-    """What is gathered of a run while it is walked."""
+    """What is gathered of a run while it is walked; times only where they are stamped."""
 
     span: Span
     start_s: float
     first_above: bool
     end_s: float = 0.0
-    last: float = 0.0
+    last: Any
     index: list[Index] = field(default_factory=list)
-    before: list[FloatArray] = field(default_factory=list)
-    after: list[FloatArray] = field(default_factory=list)
+    before: list[Codes] = field(default_factory=list)
+    after: list[Codes] = field(default_factory=list)
     before_s: list[FloatArray] = field(default_factory=list)
     after_s: list[FloatArray] = field(default_factory=list)
     settled: list[BoolArray] = field(default_factory=list)
     open_settled: bool = False
 
 
-def find_crossings(
-    waveform: Waveform, limits: Thresholds
-) -> tuple[tuple[Crossings, ...], tuple[float, float]]:
-    """Find the completed transitions of a waveform.
+@frozen_record(eq=False)
+class _Kept:
+    """Which crossings are edges, the state after each, and what else the stretches tell."""
+
+    chosen: _Choice
+    ends_above: BoolArray
+    begins_above: bool
+    n_runts: int
+
+
+def find_crossings(waveform: Waveform, limits: Thresholds) -> Walked:
+    """Find the completed transitions of a waveform, walked once in blocks.
 
     Args:
-        waveform: The trace, walked once in blocks.
+        waveform: The trace.
         limits: Reference levels in codes.
-
-    Returns:
-        The runs, and the typical number of samples strictly between the outer reference levels
-        of a rising and of a falling transition.
     """
     runs: list[_Run] = []
-    lengths = TransitionLengths()
-    for piece in walk_pieces(waveform):
+    lengths, tally = TransitionLengths(), Tally()
+    for piece in walk_pieces(waveform, tally):
         if piece.begins_run or not runs:
             runs.append(_open_run(waveform, piece, limits))
         _extend(runs[-1], waveform, piece, limits, lengths)
-    settled = tuple(_settle(run, limits.inverted) for run in runs)
     rising, falling = lengths.typical()
-    return settled, (falling, rising) if limits.inverted else (rising, falling)
+    return Walked(
+        runs=tuple(_settle(waveform, run, limits.inverted) for run in runs),
+        lengths=(falling, rising) if limits.inverted else (rising, falling),
+        tally=tally,
+    )
 
 
-def find_runs(waveform: Waveform) -> tuple[tuple[float, float], ...]:
-    """Return when each gap-free run of a waveform starts and ends, in seconds."""
+def find_runs(waveform: Waveform) -> tuple[tuple[tuple[float, float], ...], Tally]:
+    """Return when each gap-free run of a waveform starts and ends, in seconds, and its tally."""
     runs: list[tuple[float, float]] = []
-    for piece in walk_pieces(waveform):
+    tally = Tally()
+    for piece in walk_pieces(waveform, tally):
         ends = times_at(waveform, piece, np.array([0, piece.values.size - 1]))
         if piece.begins_run or not runs:
             runs.append((float(ends[0]), float(ends[1])))
         else:
             runs[-1] = (runs[-1][0], float(ends[1]))
-    return tuple(runs)
+    return tuple(runs), tally
 
 
 def _open_run(waveform: Waveform, piece: Piece, limits: Thresholds) -> _Run:
     start_s = float(times_at(waveform, piece, np.array([0]))[0])
-    first = float(piece.values[0])
+    first = piece.values[0]
     return _Run(
-        span=piece.span, start_s=start_s, first_above=first >= limits.mid, last=first, end_s=start_s
+        span=piece.span,
+        start_s=start_s,
+        first_above=bool(first >= limits.is_above),
+        last=first,
+        end_s=start_s,
     )
 
 
@@ -116,119 +144,101 @@ def _extend(
 ) -> None:
     """Add a piece to its run: its crossings, and which stretches between them settle."""
     values = piece.values
-    mid = _as_type(math.ceil(limits.mid), limits.mid, values)
-    at = _changes(values, mid)
-    last_above = run.last >= limits.mid
-    if (values[0] >= mid) != last_above:
-        at = np.concatenate([[0], at])
-    lengths.look(values, at, limits)
-    _settle_stretches(run, values, at, limits)
-    if at.size:
-        _record(run, waveform, piece, at)
-    run.last = float(values[-1])
+    was_above = bool(run.last >= limits.is_above)
+    found = find_changes(values, piece.rows, limits, was_above=was_above)
+    settled = found.settled
+    settled[0] |= run.open_settled
+    run.open_settled = bool(settled[-1])
+    if found.at.size:
+        lengths.look(values, found.at[settled[:-1]], limits)  # the first of each transition
+        run.settled.append(settled[:-1])
+        _record(run, piece, found.at)
+    run.last = values[-1]
     run.end_s = float(times_at(waveform, piece, np.array([values.size - 1]))[0])
 
 
-def _as_type(whole: int, exact: float, values: Codes) -> Any:
-    """Return a threshold in the samples' own type: a wider scalar would slow the comparison."""
-    if values.dtype.kind in "iu":
-        info = np.iinfo(np.dtype(values.dtype.str))
-        return values.dtype.type(min(max(whole, info.min), info.max))
-    return values.dtype.type(exact)
-
-
-def _changes(values: Codes, mid: Any) -> Index:
-    """Return the positions whose sample lies on the other side of ``mid`` than the one before."""
-    if values.dtype.kind in "iu" and values.size > 4 * ROW:
-        rows = _rows_with_crossings(values, mid)
-        if rows.size * 8 < values.size // ROW:
-            found = [_row_changes(values, int(row) * ROW, mid) for row in rows]
-            return np.concatenate(found) if found else np.empty(0, np.int64)
-    above = values >= mid
-    return np.flatnonzero(above[1:] != above[:-1]) + 1
-
-
-def _rows_with_crossings(values: Codes, mid: Any) -> Index:
-    """Return rows that hold, or begin with, a change of side."""
-    starts = np.arange(0, values.size, ROW)
-    least = np.minimum.reduceat(values, starts) >= mid
-    greatest = np.maximum.reduceat(values, starts) >= mid
-    mixed = least != greatest
-    mixed[1:] |= (values[starts[1:]] >= mid) != (values[starts[1:] - 1] >= mid)
-    return np.flatnonzero(mixed)
-
-
-def _row_changes(values: Codes, start: int, mid: Any) -> Index:
-    """Return the changes whose later sample lies in the row."""
-    first = max(start - 1, 0)
-    above = values[first : start + ROW] >= mid
-    return np.flatnonzero(above[1:] != above[:-1]) + first + 1
-
-
-def _settle_stretches(run: _Run, values: Codes, at: Index, limits: Thresholds) -> None:
-    """Note for each stretch between crossings whether it reaches its outer reference level."""
-    above_now = run.last >= limits.mid
-    if not at.size:
-        run.open_settled = run.open_settled or _reaches(values, above_now, limits)
-        return
-    if at[0] > 0:
-        run.open_settled = run.open_settled or _reaches(values[: at[0]], above_now, limits)
-    body = values[at[0] :]
-    greatest = np.maximum.reduceat(body, at - at[0]) >= limits.upper
-    least = np.minimum.reduceat(body, at - at[0]) <= limits.lower
-    is_above = np.arange(at.size) % 2 == (1 if above_now else 0)
-    settled = np.where(is_above, greatest, least)
-    run.settled.append(np.concatenate([[run.open_settled], settled[:-1]]))
-    run.open_settled = bool(settled[-1])
-
-
-def _reaches(values: Codes, above: bool, limits: Thresholds) -> bool:
-    if above:
-        return bool(values.max() >= limits.upper)
-    return bool(values.min() <= limits.lower)
-
-
-def _record(run: _Run, waveform: Waveform, piece: Piece, at: Index) -> None:
-    values = piece.values
-    before = values[np.maximum(at - 1, 0)].astype(np.float64)
-    times = times_at(waveform, piece, at)
-    before_s = times_at(waveform, piece, np.maximum(at - 1, 0))
+def _record(run: _Run, piece: Piece, at: Index) -> None:
+    before = piece.values[at - 1]
     if at[0] == 0:
-        before[0], before_s[0] = run.last, run.end_s
+        before[0] = run.last
     run.index.append(at + piece.first)
     run.before.append(before)
-    run.after.append(values[at].astype(np.float64))
-    run.before_s.append(before_s)
-    run.after_s.append(times)
+    run.after.append(piece.values[at])
+    if piece.times_s is not None:
+        before_s = piece.times_s[at - 1]
+        if at[0] == 0:
+            before_s[0] = run.end_s
+        run.before_s.append(before_s)
+        run.after_s.append(piece.times_s[at])
 
 
-def _settle(run: _Run, inverted: bool) -> Crossings:
+def _settle(waveform: Waveform, run: _Run, inverted: bool) -> Crossings:
     """Keep one crossing a completed transition: hysteresis between the reference levels."""
-    index = _joined(run.index, np.int64)
-    settled = np.concatenate([_joined(run.settled, np.bool_), [run.open_settled]])
-    # Stretch i lies between crossings i-1 and i; it is above mid where its parity says so.
-    above = (np.arange(settled.size) % 2 == 0) == run.first_above
-    firm = np.flatnonzero(settled)
-    turns = np.flatnonzero(above[firm][1:] != above[firm][:-1])
-    first, last = firm[turns], firm[turns + 1] - 1  # first and last crossing of the transition
-    middle = (first + last) // 2
-    rising = above[firm[turns + 1]] != inverted if turns.size else np.empty(0, np.bool_)
-    begins = above[firm[0]] if firm.size else above[0]
-    returns = np.diff(firm)[above[firm][1:] == above[firm][:-1]]
+    settled = np.concatenate([*run.settled, [run.open_settled]])
+    if settled.all():
+        kept = _all_kept(settled.size - 1, run.first_above)
+    else:
+        kept = _middle_ones(settled, run.first_above)
+    index = _taken(run.index, kept.chosen, np.int64)
+    before_s, after_s = _times(waveform, run, index, kept.chosen)
     return Crossings(
-        index=index[middle],
-        rising=rising,
-        before=_joined(run.before, np.float64)[middle],
-        after=_joined(run.after, np.float64)[middle],
-        before_s=_joined(run.before_s, np.float64)[middle],
-        after_s=_joined(run.after_s, np.float64)[middle],
+        index=index,
+        rising=~kept.ends_above if inverted else kept.ends_above,
+        before=_taken(run.before, kept.chosen, np.float64),
+        after=_taken(run.after, kept.chosen, np.float64),
+        before_s=before_s,
+        after_s=after_s,
         start_s=run.start_s,
         end_s=run.end_s,
-        starts_high=bool(begins != inverted),
-        n_runts=int(np.sum(returns)) // 2,
+        starts_high=kept.begins_above != inverted,
+        n_runts=kept.n_runts,
         span=run.span,
     )
 
 
-def _joined(parts: Sequence[NDArray[Any]], dtype: type[np.generic]) -> NDArray[Any]:
-    return np.concatenate(parts) if parts else np.empty(0, dtype)
+def _all_kept(n: int, first_above: bool) -> _Kept:
+    """Return every crossing, where every stretch between them settles."""
+    ends_above = np.zeros(n, np.bool_)
+    ends_above[int(first_above) :: 2] = True
+    return _Kept(chosen=slice(None), ends_above=ends_above, begins_above=first_above, n_runts=0)
+
+
+def _middle_ones(settled: BoolArray, first_above: bool) -> _Kept:
+    """Return the middle crossing of each transition.
+
+    Stretch i lies between crossings i-1 and i; it is above mid where its parity says so.
+    """
+    firm = np.flatnonzero(settled)
+    above = (firm % 2 == 0) == first_above
+    turns = np.flatnonzero(above[1:] != above[:-1])
+    first, last = firm[turns], firm[turns + 1] - 1  # first and last crossing of the transition
+    returns = np.diff(firm)[above[1:] == above[:-1]]
+    return _Kept(
+        chosen=(first + last) // 2,
+        ends_above=above[turns + 1] if turns.size else np.empty(0, np.bool_),
+        begins_above=bool(above[0]) if firm.size else first_above,
+        n_runts=int(np.sum(returns)) // 2,
+    )
+
+
+def _times(
+    waveform: Waveform, run: _Run, index: Index, chosen: _Choice
+) -> tuple[FloatArray, FloatArray]:
+    """Return the times of the samples before and after the chosen crossings."""
+    if not isinstance(waveform.time, UniformTime):
+        return (
+            _taken(run.before_s, chosen, np.float64),
+            _taken(run.after_s, chosen, np.float64),
+        )
+    start_s, dt_s = run.span.start_s, waveform.time.dt_s
+    offset = (index - run.span.start).astype(np.float64)
+    return start_s + (offset - 1) * dt_s, start_s + offset * dt_s
+
+
+def _taken(parts: list[NDArray[Any]], chosen: _Choice, dtype: type[np.generic]) -> NDArray[Any]:
+    """Return the chosen of what was gathered, whose memory is given back."""
+    if not parts:
+        return np.empty(0, dtype)
+    joined = np.concatenate(parts)
+    parts.clear()
+    return joined[chosen].astype(dtype, copy=False)

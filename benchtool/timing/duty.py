@@ -8,8 +8,16 @@ import numpy as np
 
 from benchtool.model.arrays import FloatArray
 from benchtool.model.quantity import Contribution, Measured
-from benchtool.timing.budget import Setting, level_error, usual_edge_noise, width_grid, with_floor
-from benchtool.timing.scatter import mean_of_widths
+from benchtool.timing.budget import (
+    Setting,
+    grid_error,
+    level_error,
+    most_scatter,
+    usual_edge_noise,
+    width_grid,
+    with_floor,
+)
+from benchtool.timing.scatter import ENOUGH, mean_of_widths, mean_on_grid
 from benchtool.uncertainty import combine
 
 
@@ -20,10 +28,24 @@ def measure_duty(setting: Setting) -> Measured | None:
         return None
     whole_s = float(np.mean(high_s + low_s))
     duty = float(np.mean(high_s)) / whole_s
-    floor = width_grid(setting, high_s.size) / whole_s
-    own = _scatter(setting, high_s, low_s, duty, whole_s)
-    terms = [*with_floor(setting, own, floor, high_s.size), level_error(setting, 1 / whole_s)]
-    return combine(duty, "1", terms, n=high_s.size)
+    own = _scatter_and_grid(setting, duty, whole_s)
+    return combine(duty, "1", [*own, level_error(setting, 1 / whole_s)], n=high_s.size)
+
+
+def _scatter_and_grid(setting: Setting, duty: float, whole_s: float) -> list[Contribution]:
+    high_s, low_s = setting.intervals.cycle_high_s, setting.intervals.cycle_low_s
+    n, step_s = high_s.size, setting.edges.step_s
+    floor_s = width_grid(setting, n)
+    if setting.edges.resolved or n < ENOUGH or step_s == 0:
+        own = _scatter(setting, high_s, low_s, duty, whole_s)
+        return with_floor(setting, own, floor_s / whole_s, n)
+    most_s = most_scatter(setting)
+    high, low = (mean_on_grid(width_s, step_s, floor_s, most_s) for width_s in (high_s, low_s))
+    shared_s2 = min(_shared_edge_variance(high_s, low_s) - step_s**2 / 12, most_s**2)
+    alike = 2 * math.sqrt(duty * (1 - duty) * max(0.0, shared_s2) / n)
+    u = math.hypot((1 - duty) * high.u, duty * low.u, alike) / whole_s
+    scatter = Contribution(source="scatter", u=u, dof=min(high.dof, low.dof), note=high.note)
+    return [scatter, grid_error(floor_s / whole_s)]
 
 
 def _scatter(

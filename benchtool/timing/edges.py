@@ -4,14 +4,17 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
+from dataclasses import replace
 
 import numpy as np
 
 from benchtool.model.capture import LogicTrace, StampedTime, Trace, UniformTime, Waveform
 from benchtool.model.timing import EdgeRun, Edges, Levels
 from benchtool.timing.crossings import Crossings, find_crossings, find_runs
-from benchtool.timing.levels import find_levels
+from benchtool.timing.levels import find_levels, levels_of, tell_missing
 from benchtool.timing.placement import join_runs, place_edges
+from benchtool.timing.survey import exceeds, survey_samples, widen
+from benchtool.timing.tally import Tally
 from benchtool.timing.thresholds import thresholds
 
 _HIGH_FLAT_V = 1.0  # a flat trace above one volt counts as high (common practice)
@@ -33,10 +36,50 @@ def find_edges(trace: Trace, levels: Levels | None = None) -> Edges:
     """
     if isinstance(trace, LogicTrace):
         return _edges_of_logic(trace)
-    found = levels or find_levels(trace)
-    if found.kind in ("flat", "noise"):
-        return _no_edges(trace, found)
-    return _edges_of_waveform(trace, found)
+    edges = None
+    if levels is None:
+        levels, edges = find_levels_and_edges(trace)
+    return _edges_at(trace, levels)[0] if edges is None else edges
+
+
+def find_levels_and_edges(trace: Waveform) -> tuple[Levels, Edges | None]:
+    """Find levels and edges of a waveform in one walk over its samples, seldom two.
+
+    The levels of a long record are found in a part of it. The walk for the edges sees the range of
+    all samples; where that goes beyond, levels and edges are found anew.
+
+    Args:
+        trace: The waveform.
+
+    Returns:
+        As ``find_levels`` and ``find_edges``; None for the edges of a capacitor node, which are
+        its turning points.
+
+    Raises:
+        MeasurementError: If no sample is present (``no-samples``).
+    """
+    survey = survey_samples(trace)
+    if not survey.runs and not survey.is_whole:
+        levels = find_levels(trace)
+        return levels, _walk_at(trace, levels)[0]
+    levels = levels_of(trace, survey)
+    edges, tally = _walk_at(trace, levels)
+    if exceeds(trace, survey, tally):
+        levels = levels_of(trace, widen(trace, survey, tally))
+        edges, _ = _walk_at(trace, levels)
+    levels = tell_missing(trace, levels, tally.n_missing)
+    return levels, replace(edges, warnings=levels.warnings) if edges else None
+
+
+def _walk_at(trace: Waveform, levels: Levels) -> tuple[Edges | None, Tally]:
+    """Walk a waveform for its range, and for its edges where these are crossings."""
+    return (None, find_runs(trace)[1]) if levels.kind == "node" else _edges_at(trace, levels)
+
+
+def _edges_at(trace: Waveform, levels: Levels) -> tuple[Edges, Tally]:
+    if levels.kind in ("flat", "noise"):
+        return _no_edges(trace, levels)
+    return _edges_of_waveform(trace, levels)
 
 
 def _edges_of_logic(trace: LogicTrace) -> Edges:
@@ -65,13 +108,14 @@ def _edges_of_logic(trace: LogicTrace) -> Edges:
     )
 
 
-def _edges_of_waveform(trace: Waveform, levels: Levels) -> Edges:
+def _edges_of_waveform(trace: Waveform, levels: Levels) -> tuple[Edges, Tally]:
     limits = thresholds(trace, levels)
-    found, lengths = find_crossings(trace, limits)
+    walked = find_crossings(trace, limits)
+    found, lengths = walked.runs, walked.lengths
     crossings = join_runs(found)
     step_s = _grid_step(trace, found)
     placed = place_edges(trace, levels, limits, crossings, lengths, step_s)
-    return Edges(
+    edges = Edges(
         times_s=placed.times_s,
         rising=crossings.rising,
         u_s=placed.u_s,
@@ -84,17 +128,18 @@ def _edges_of_waveform(trace: Waveform, levels: Levels) -> Edges:
         n_runts=sum(run.n_runts for run in found),
         warnings=levels.warnings,
     )
+    return edges, walked.tally
 
 
-def _no_edges(trace: Waveform, levels: Levels) -> Edges:
-    extents = find_runs(trace)
+def _no_edges(trace: Waveform, levels: Levels) -> tuple[Edges, Tally]:
+    extents, tally = find_runs(trace)
     is_high = levels.mid_v > (0.5 if trace.is_logic else _HIGH_FLAT_V)
     runs = tuple(
         EdgeRun(first=0, stop=0, start_s=start_s, end_s=end_s, starts_high=is_high)
         for start_s, end_s in extents
     )
     length_s = extents[-1][1] - extents[0][0] if extents else 0.0
-    return Edges(
+    edges = Edges(
         times_s=np.empty(0),
         rising=np.empty(0, np.bool_),
         u_s=np.empty(0),
@@ -104,6 +149,7 @@ def _no_edges(trace: Waveform, levels: Levels) -> Edges:
         stretch_u_rel=_stretch(trace, length_s),
         warnings=levels.warnings,
     )
+    return edges, tally
 
 
 def _edge_runs(found: Sequence[Crossings]) -> tuple[EdgeRun, ...]:

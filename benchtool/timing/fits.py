@@ -1,4 +1,4 @@
-"""Straight and curved fits of slow edges, where many samples lie on each of them."""
+"""Fits of edges that more than two samples lie on: a common ramp, or a line or parabola each."""
 
 from __future__ import annotations
 
@@ -9,25 +9,44 @@ import numpy as np
 from benchtool.frozen import frozen_record
 from benchtool.model.arrays import FloatArray, middle
 from benchtool.model.capture import UniformTime, Waveform
-from benchtool.timing.pieces import Codes, Index, walk_pieces
+from benchtool.timing.pieces import Index, walk_pieces
+from benchtool.timing.ramps import find_ramp, place_on_ramp
+from benchtool.timing.rows import Codes
 
 _MOST = 1 << 19  # samples of windows that are fitted at once
+_SHOWN = 1000  # edges that show their common shape
 _CURVED = 2.0  # standard deviations of the mean curvature above which it is taken as real
+
+
+@frozen_record
+class Ramped:
+    """What is known of edges beforehand, in sample units.
+
+    Attributes:
+        mid: Mid reference level.
+        amplitude: Distance of the two states.
+        noise: Standard deviation of a sample.
+    """
+
+    mid: float
+    amplitude: float
+    noise: float
 
 
 @frozen_record(eq=False)
 class FittedEdges:
-    """Edges of one direction fitted by a line, or by a parabola where they are curved.
+    """Edges of one direction fitted by a common ramp, or each by a line or a parabola.
 
     Attributes:
         shift_s: Mid-level instant against the time of the edge's index, NaN without a fit, (n,).
         slew: Typical slope at the mid level in sample units per second, greater than 0.
-        per_noise_s: Standard uncertainty of an instant for noise of one sample unit, seconds.
+        per_noise_s: Standard uncertainty of an instant for noise of one sample unit, seconds,
+            of all edges or shape (n,).
     """
 
     shift_s: FloatArray
     slew: float
-    per_noise_s: float
+    per_noise_s: FloatArray | float
 
 
 def fit_edges(
@@ -66,6 +85,53 @@ def fit_edges(
     shift_s[chosen[good]] = (roots * scale_s)[good]
     spread = 1.5 if curved else 1.0  # sd at the centre of a parabola against that of a line
     return FittedEdges(shift_s=shift_s, slew=slew, per_noise_s=spread / (slew * np.sqrt(2 * half)))
+
+
+def fit_ramps(
+    waveform: Waveform, index: Index, rough_s: FloatArray, ramped: Ramped, half: int
+) -> FittedEdges | None:
+    """Fit one ramp to all edges of a direction, and place each by all of its samples.
+
+    Args:
+        waveform: The trace; walked once.
+        index: Index of the first sample past the mid level, ascending, shape (n,).
+        rough_s: Instant of each edge by two samples, against the time of its index, shape (n,).
+        ramped: Levels and noise.
+        half: Samples before and after the crossing that hold all of an edge.
+
+    Returns:
+        The fits, or None where the edges are not shown to be straight.
+    """
+    shift_s, count = np.full(index.size, np.nan), np.zeros(index.size)
+    ramp = None
+    for chosen, times, values in _shown_first(_windows(waveform, index, half)):
+        above = values - ramped.mid
+        if ramp is None:
+            ramp = find_ramp(times, above, rough_s[chosen], ramped.amplitude, ramped.noise)
+        if ramp is None:
+            return None
+        shift_s[chosen], count[chosen] = place_on_ramp(times, above, rough_s[chosen], ramp)
+    if ramp is None:
+        return None
+    shift_s[count == 0] = np.nan
+    slew = abs(ramp.slope)
+    per_noise_s = 1 / (slew * np.sqrt(np.maximum(count, 1.0)))
+    return FittedEdges(shift_s=shift_s, slew=slew, per_noise_s=per_noise_s)
+
+
+def _shown_first(
+    windows: Iterator[tuple[Index, FloatArray, FloatArray]],
+) -> Iterator[tuple[Index, FloatArray, FloatArray]]:
+    """Join the first windows, so that enough edges show their common shape."""
+    held: list[tuple[Index, FloatArray, FloatArray]] = []
+    for window in windows:
+        held.append(window)
+        if sum(part[0].size for part in held) >= _SHOWN:
+            break
+    if held:
+        chosen, times, values = (np.concatenate([part[i] for part in held]) for i in range(3))
+        yield chosen, times, values
+    yield from windows
 
 
 def _coefficients(

@@ -9,11 +9,11 @@ import numpy as np
 from benchtool.model.arrays import FloatArray
 from benchtool.model.quantity import Bound, Contribution, Measured, Notice, Quantity
 from benchtool.model.timing import Edges, Intervals, Jitter
+from benchtool.timing.rounding import own_deviation
 from benchtool.timing.scatter import lag_one, two_pass_sd
 from benchtool.uncertainty import combine
 
 _LEAST = 3
-_HARMONICS = 50
 
 
 def measure_jitter(intervals: Intervals, edges: Edges) -> Jitter:
@@ -71,26 +71,6 @@ def grid_share(grid_s: float, period_s: float) -> float:
     return grid_s * math.sqrt(f * (1 - f))
 
 
-def observed_variance(sigma_s: float, period_s: float, grid_s: float) -> float:
-    """Return the variance of periods on a grid whose true sd is ``sigma_s``, in s².
-
-    Args:
-        sigma_s: True standard deviation of the periods in seconds.
-        period_s: Mean period in seconds.
-        grid_s: Grid step Ts in seconds, above 0.
-
-    References:
-        s² = σ² + Ts²[1/6 - π⁻²·Σ_k cos(2πkf)·exp(-2π²k²σ²/Ts²)/k²], f = frac(T/Ts): two rounding
-        errors of a uniformly placed edge, correlated through the fraction of the period.
-    """
-    f = period_s / grid_s
-    total = 1 / 6
-    for k in range(1, _HARMONICS + 1):
-        damping = math.exp(-2 * (math.pi * k * sigma_s / grid_s) ** 2)
-        total -= math.cos(2 * math.pi * k * f) * damping / (math.pi * k) ** 2
-    return sigma_s**2 + grid_s**2 * max(0.0, total)
-
-
 def _without_grid(seen_s: float, period_s: FloatArray, grid_s: float, factor: float) -> Quantity:
     """Return an sd with the grid's share taken out, or an upper bound where that is unsafe.
 
@@ -100,27 +80,13 @@ def _without_grid(seen_s: float, period_s: FloatArray, grid_s: float, factor: fl
     n = period_s.size
     if grid_s == 0:
         return _deviation(seen_s, n)
-    true_s = _solve(seen_s, float(np.mean(period_s)), grid_s) if factor == 1.0 else None
+    true_s = own_deviation(seen_s, float(np.mean(period_s)), grid_s) if factor == 1.0 else None
     if factor != 1.0:
         own2 = seen_s**2 - (factor * grid_s) ** 2 / 6
         true_s = math.sqrt(own2) if own2 > 0 else 0.0
     if true_s is None or true_s < grid_s:
         return Bound(unit="s", at_most=seen_s)
     return _deviation(true_s, n, stretch=seen_s / true_s)
-
-
-def _solve(seen_s: float, mean_s: float, grid_s: float) -> float | None:
-    """Return σ whose variance on the grid is ``seen_s`` squared, by bisection."""
-    if seen_s**2 <= observed_variance(0.0, mean_s, grid_s):
-        return None
-    low, high = 0.0, seen_s
-    for _ in range(60):
-        middle = (low + high) / 2
-        if observed_variance(middle, mean_s, grid_s) < seen_s**2:
-            low = middle
-        else:
-            high = middle
-    return (low + high) / 2
 
 
 def _deviation(value_s: float, n: int, stretch: float = 1.0) -> Measured:

@@ -4,9 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 
-from benchtool.model.arrays import FloatArray, distinct, middle, quantile
 from benchtool.model.timing import LevelKind, Levels
-from benchtool.timing.plateaus import curved_noise, local_noise
 from benchtool.timing.survey import Survey
 
 _LEAST_SPACING = 0.35  # of the range
@@ -19,52 +17,56 @@ _LEAST_BARE_V = 1.0  # two values this far apart, of unknown step, are no neighb
 LEAST_CODES = 3.5
 
 
-def is_two_state(survey: Survey, values: FloatArray, levels: Levels) -> bool:
+def is_two_state(survey: Survey, levels: Levels) -> bool:
     """Tell whether two levels exist: well apart, and with few samples between them.
 
     Args:
-        survey: What one pass over the samples kept.
-        values: The kept samples in volts.
+        survey: The samples that the levels were found in.
         levels: The candidate levels.
     """
     spacing = levels.high_v - levels.low_v
-    codes = distinct(values)
-    if codes.size == 2:
+    if _has_two_values(survey):
         least_v = LEAST_CODES * survey.step_v if survey.step_v else _LEAST_BARE_V
         return spacing > least_v or _is_wave(survey)
-    between = _share_between(values, levels, _OUTER) + _share_beyond(values, levels)
-    steep = _share_between(values, levels, _INNER) <= _MOST_STEEP
+    between = _share_between(survey, levels, _OUTER) + _share_beyond(survey, levels)
+    steep = _share_between(survey, levels, _INNER) <= _MOST_STEEP
     return bool(
         spacing >= _LEAST_SPACING * (survey.greatest - survey.least)
         and spacing >= _LEAST_SNR * levels.noise_v
         and spacing >= LEAST_CODES * survey.step_v
-        and (between <= _MOST_BETWEEN or steep or _share_at_rest(values, levels) >= _LEAST_AT_REST)
+        and (between <= _MOST_BETWEEN or steep or _share_at_rest(survey, levels) >= _LEAST_AT_REST)
     )
 
 
-def _share_at_rest(values: FloatArray, levels: Levels) -> float:
+def _has_two_values(survey: Survey) -> bool:
+    first, last = survey.ordered[0], survey.ordered[-1]
+    until, since = survey.ordered.searchsorted(first, "right"), survey.ordered.searchsorted(last)
+    return bool(first != last and until == since)
+
+
+def _share_at_rest(survey: Survey, levels: Levels) -> float:
     """Return the share of samples that lie close to a state.
 
     It is a tenth for a capacitor node and 0.29 for a sine.
     """
     spacing = levels.high_v - levels.low_v
     margin = max(_CLOSE * spacing, min(3 * levels.noise_v, 3 * _CLOSE * spacing))
-    away = np.minimum(np.abs(values - levels.low_v), np.abs(values - levels.high_v))
+    away = np.minimum(np.abs(survey.values - levels.low_v), np.abs(survey.values - levels.high_v))
     return float(np.mean(away <= margin))
 
 
-def _share_beyond(values: FloatArray, levels: Levels) -> float:
+def _share_beyond(survey: Survey, levels: Levels) -> float:
     """Return the share of samples that lie clear outside both states."""
     margin = _OUTER * (levels.high_v - levels.low_v)
-    outside = (values < levels.low_v - margin) | (values > levels.high_v + margin)
-    return float(np.mean(outside))
+    below = survey.ordered.searchsorted(levels.low_v - margin)
+    above = survey.ordered.size - survey.ordered.searchsorted(levels.high_v + margin, "right")
+    return float(below + above) / survey.ordered.size
 
 
-def _share_between(values: FloatArray, levels: Levels, fraction: float) -> float:
+def _share_between(survey: Survey, levels: Levels, fraction: float) -> float:
     """Return the share of samples further than a fraction of the amplitude from both states."""
     margin = fraction * (levels.high_v - levels.low_v)
-    inside = (values > levels.low_v + margin) & (values < levels.high_v - margin)
-    return float(np.mean(inside))
+    return survey.share_between(levels.low_v + margin, levels.high_v - margin)
 
 
 def _is_wave(survey: Survey) -> bool:
@@ -74,30 +76,31 @@ def _is_wave(survey: Survey) -> bool:
     return changes < _MOST_TOGGLING * sum(run.size for run in survey.runs)
 
 
-def kind_without_states(survey: Survey, values: FloatArray) -> LevelKind:
+def kind_without_states(survey: Survey, noise_v: float) -> LevelKind:
     """Tell a capacitor node from a flat trace and from noise.
 
     Args:
-        survey: What one pass over the samples kept.
-        values: The kept samples in volts.
+        survey: The samples.
+        noise_v: Noise of neighbouring samples.
     """
-    noise_v = min(local_noise(survey.runs), curved_noise(survey.runs))
-    spread = float(np.std(values))
-    swing = quantile(values, 0.98) - quantile(values, 0.02)
+    spread = float(np.std(survey.values))
+    swing = survey.at_share(0.98) - survey.at_share(0.02)
     smooth = swing >= 3 * _LEAST_SNR * noise_v and swing >= 8 * survey.step_v
-    if smooth and not _is_sinusoid(values):
+    if smooth and not _is_sinusoid(survey):
         return "node"
-    level = abs(middle(values))
+    level = abs(survey.at_share(0.5))
     steady = spread <= 0.1 * level or spread <= max(0.05, 2 * survey.step_v)
     return "flat" if steady else "noise"
 
 
-def _is_sinusoid(values: FloatArray) -> bool:
+def _is_sinusoid(survey: Survey) -> bool:
     """Tell a sine by its histogram: its ends hold over twice as many samples as its middle.
 
     An exponential between a third and two thirds of its drive holds 1.125 times as many.
     """
-    low, high = (quantile(values, share) for share in (0.005, 0.995))
-    count, _ = np.histogram(values, bins=10, range=(low, high))
+    low, high = survey.at_share(0.005), survey.at_share(0.995)
+    edge = np.linspace(low, high, 11)
+    until = [*survey.ordered.searchsorted(edge[:-1]), survey.ordered.searchsorted(high, "right")]
+    count = np.diff(until)
     middle = max(1.0, float(count[4:6].mean()))
     return bool(min(count[0], count[-1]) > 2.2 * middle)

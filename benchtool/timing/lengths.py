@@ -4,11 +4,13 @@ from __future__ import annotations
 
 import numpy as np
 
-from benchtool.model.arrays import middle
-from benchtool.timing.pieces import Codes, Index
+from benchtool.model.arrays import BoolArray, middle
+from benchtool.timing.pieces import Index
+from benchtool.timing.rows import Codes
 from benchtool.timing.thresholds import Thresholds
 
 _SAMPLED = 48  # edges of each direction whose length is looked at
+_NEAR, _WIDER = 16, 4  # samples looked at first on each side, and how many times more after that
 
 
 class TransitionLengths:
@@ -18,15 +20,21 @@ class TransitionLengths:
         self._found: dict[bool, list[int]] = {True: [], False: []}
 
     def look(self, values: Codes, at: Index, limits: Thresholds) -> None:
-        """Measure transitions of the piece until each direction has enough."""
-        for position in at[: 4 * _SAMPLED]:
-            if position == 0 or min(len(x) for x in self._found.values()) >= _SAMPLED:
-                continue
-            rising = bool(values[position] >= limits.mid)
-            if len(self._found[rising]) < _SAMPLED:
-                length = _length(values, int(position), limits, rising=rising)
-                if length is not None:
-                    self._found[rising].append(length)
+        """Measure transitions of a piece until each direction has enough.
+
+        Args:
+            values: Samples of the piece.
+            at: Positions in them of one crossing a transition.
+            limits: Reference levels.
+        """
+        if min(len(found) for found in self._found.values()) >= _SAMPLED:
+            return
+        first = at[: 4 * _SAMPLED]
+        first = first[first > 0]
+        rising = values[first] >= limits.is_above
+        for direction, found in self._found.items():
+            chosen = first[rising == direction][: _SAMPLED - len(found)]
+            found.extend(_lengths(values, chosen, limits, rising=direction))
 
     def typical(self) -> tuple[float, float]:
         """Return the usual length of rising and falling transitions."""
@@ -41,20 +49,30 @@ def _usual(lengths: list[int]) -> float:
     return float(np.mean(found[found <= 3 * middle(found) + 2]))
 
 
-def _length(values: Codes, position: int, limits: Thresholds, *, rising: bool) -> int | None:
-    """Count samples strictly between the reference levels around a crossing, None if cut."""
-    reach = 8
-    while True:
-        ahead, behind = (
-            values[position : position + reach],
-            values[max(0, position - reach) : position],
-        )
-        past = ahead >= limits.upper if rising else ahead <= limits.lower
-        ahead_at = np.flatnonzero(past)
-        from_ = behind <= limits.lower if rising else behind >= limits.upper
-        behind_at = np.flatnonzero(from_)
-        if ahead_at.size and behind_at.size:
-            return int(ahead_at[0] + behind.size - 1 - behind_at[-1])
-        if position + reach >= values.size or position - reach <= 0:
-            return None
-        reach *= 4
+def _lengths(values: Codes, at: Index, limits: Thresholds, *, rising: bool) -> list[int]:
+    """Count samples strictly between the reference levels around crossings, the cut left out."""
+    steps = np.arange(_NEAR)
+    ahead = values[np.minimum(at[:, None] + steps, values.size - 1)]
+    behind = values[np.maximum(at[:, None] - 1 - steps, 0)]
+    past, left = _beyond(ahead, limits, above=rising), _beyond(behind, limits, above=not rising)
+    found = past.any(axis=1) & left.any(axis=1)
+    near = (past.argmax(axis=1) + left.argmax(axis=1))[found].tolist()
+    far = (_far_length(values, int(position), limits, rising=rising) for position in at[~found])
+    return [*near, *(length for length in far if length is not None)]
+
+
+def _far_length(values: Codes, at: int, limits: Thresholds, *, rising: bool) -> int | None:
+    """Count the samples of a longer transition, None where the piece cuts it."""
+    reach = _NEAR
+    while at + reach < values.size and at > reach:
+        reach *= _WIDER
+        past = _beyond(values[at : at + reach], limits, above=rising)
+        left = _beyond(values[max(0, at - reach) : at], limits, above=not rising)[::-1]
+        if past.any() and left.any():
+            return int(past.argmax() + left.argmax())
+    return None
+
+
+def _beyond(values: Codes, limits: Thresholds, *, above: bool) -> BoolArray:
+    beyond: BoolArray = values >= limits.rests_above if above else values <= limits.rests_below
+    return beyond

@@ -8,11 +8,13 @@ from dataclasses import replace
 import numpy as np
 
 from benchtool.errors import MeasurementError
-from benchtool.model.arrays import FloatArray, quantile
+from benchtool.model.arrays import quantile
 from benchtool.model.capture import Waveform
 from benchtool.model.quantity import Notice
-from benchtool.model.timing import LevelKind, Levels
+from benchtool.model.timing import Levels
 from benchtool.timing.kinds import LEAST_CODES, is_two_state, kind_without_states
+from benchtool.timing.onelevel import one_level
+from benchtool.timing.pieces import walk_pieces
 from benchtool.timing.plateaus import (
     Plateau,
     curved_noise,
@@ -20,7 +22,8 @@ from benchtool.timing.plateaus import (
     local_noise,
     values_beyond,
 )
-from benchtool.timing.survey import Survey, survey_samples
+from benchtool.timing.survey import Survey, exceeds, survey_samples, widen
+from benchtool.timing.tally import Tally
 
 _BINS = 256
 _REFERENCE = 0.2  # lower reference at 20 %, upper at 80 % of the amplitude
@@ -33,7 +36,7 @@ _INWARDS = 0.4  # as far as a wandering state may push a reference level
 
 
 def find_levels(waveform: Waveform, *, level_v: float | None = None) -> Levels:
-    """Find the state levels of a waveform.
+    """Find the state levels of a waveform; of a long one all samples are walked once.
 
     Args:
         waveform: The trace; missing samples are left out.
@@ -51,26 +54,56 @@ def find_levels(waveform: Waveform, *, level_v: float | None = None) -> Levels:
         levels in percent of the amplitude (clause 5.2, number from memory).
     """
     survey = survey_samples(waveform)
+    n_missing = _length(waveform) - survey.values.size
+    if not survey.is_whole:
+        tally = Tally()
+        for _ in walk_pieces(waveform, tally):
+            pass
+        n_missing = tally.n_missing
+        if exceeds(waveform, survey, tally):
+            survey = widen(waveform, survey, tally)
+    levels = tell_missing(waveform, levels_of(waveform, survey), n_missing)
+    return levels if level_v is None else _at_level(levels, level_v)
+
+
+def levels_of(waveform: Waveform, survey: Survey) -> Levels:
+    """Return the levels of a surveyed waveform.
+
+    Raises:
+        MeasurementError: If no sample is present (``no-samples``).
+    """
     if not survey.runs:
         raise MeasurementError(
             f"{waveform.channel} holds no sample: all values are missing",
             hint="Choose another trace with --channel; `benchtool look FILE` lists them.",
             code="no-samples",
         )
-    levels = _missing(survey, _decide(waveform, survey))
-    return levels if level_v is None else _at_level(levels, level_v)
+    return _decide(waveform, survey)
+
+
+def tell_missing(waveform: Waveform, levels: Levels, n_missing: int) -> Levels:
+    """Return the levels with a warning where samples are missing."""
+    if not n_missing:
+        return levels
+    text = f"{n_missing} of {_length(waveform)} samples are missing and were left out"
+    notice = Notice(code="missing-samples", text=text)
+    return replace(levels, warnings=(*levels.warnings, notice))
+
+
+def _length(waveform: Waveform) -> int:
+    return sum(span.stop - span.start for span in waveform.spans)
 
 
 def _decide(waveform: Waveform, survey: Survey) -> Levels:
     if survey.greatest == survey.least:
-        return _one_level("flat", survey)
+        return one_level("flat", survey, noise_v=0.0)
     if waveform.is_logic:
         return _logic_levels()
-    values = survey.values
-    levels = _two_levels(survey, values)
-    if is_two_state(survey, values, levels):
+    levels = _two_levels(survey)
+    if is_two_state(survey, levels):
         return _behind_spikes(survey, levels) or levels
-    return _one_level(kind_without_states(survey, values), survey)
+    noise_v = min(local_noise(survey.runs), curved_noise(survey.runs))
+    return one_level(kind_without_states(survey, noise_v), survey, noise_v=noise_v)
 
 
 def _behind_spikes(survey: Survey, levels: Levels) -> Levels | None:
@@ -87,16 +120,15 @@ def _behind_spikes(survey: Survey, levels: Levels) -> Levels | None:
     if n > _MOST_SPIKES * survey.values.size or n > _SPIKE_SAMPLES * n_visits:
         return None
     kept = tuple(run[~far] for run, far in zip(survey.runs, beyond, strict=True) if not far.all())
-    values = np.concatenate(kept)
-    rest = replace(survey, runs=kept, least=float(values.min()), greatest=float(values.max()))
+    rest = survey.of_runs(kept)
     if rest.greatest - rest.least < _LEAST_WAVE * (survey.greatest - survey.least):
         return None
-    within = _two_levels(rest, values)
-    return (_behind_spikes(rest, within) or within) if is_two_state(rest, values, within) else None
+    within = _two_levels(rest)
+    return (_behind_spikes(rest, within) or within) if is_two_state(rest, within) else None
 
 
-def _two_levels(survey: Survey, values: FloatArray) -> Levels:
-    modes = _modes(values, survey)
+def _two_levels(survey: Survey) -> Levels:
+    modes = _modes(survey)
     spacing = modes[1] - modes[0]
     resting = [find_plateau(survey.runs, mode, spacing * _REFERENCE) for mode in modes]
     noise_v = local_noise([piece for plateau in resting for piece in plateau.pieces])
@@ -154,16 +186,15 @@ def dither(noise_v: float, step_v: float) -> float:
     return math.exp(-2 * math.pi**2 * own)
 
 
-def _modes(values: FloatArray, survey: Survey) -> tuple[float, float]:
+def _modes(survey: Survey) -> tuple[float, float]:
     """Return the mode of each half of the histogram between the extremes."""
     span = survey.greatest - survey.least
     bins = _BINS
     if survey.step_v:
         bins = int(min(bins, max(2, round(span / survey.step_v) + 1)))
     margin = span / (bins - 1) / 2 if survey.step_v and bins < _BINS else 0.0
-    count, edge = np.histogram(
-        values, bins=bins, range=(survey.least - margin, survey.greatest + margin)
-    )
+    edge = np.linspace(survey.least - margin, survey.greatest + margin, bins + 1)
+    count = np.diff(survey.ordered.searchsorted(edge[:-1]), append=survey.ordered.size)
     centre = (edge[1:] + edge[:-1]) / 2
     half = bins // 2
     low = centre[int(np.argmax(count[:half]))]
@@ -188,45 +219,6 @@ def _references(survey: Survey, low_v: float, high_v: float, noise_v: float) -> 
         np.clip((high_v - wander_high) / amplitude + 0.05, _REFERENCE, most)
     )
     return lower, upper
-
-
-def _one_level(kind: LevelKind, survey: Survey) -> Levels:
-    values = survey.values
-    noise_v = min(local_noise(survey.runs), curved_noise(survey.runs))
-    if kind == "node":
-        return _node_levels(survey, values, noise_v)
-    mean = float(np.mean(values))
-    u = math.hypot(noise_v / math.sqrt(values.size), survey.step_v / math.sqrt(12))
-    return Levels(
-        kind=kind,
-        low_v=mean,
-        high_v=mean,
-        u_low_v=u,
-        u_high_v=u,
-        noise_v=float(np.std(values)) if kind == "noise" else noise_v,
-        lower_v=mean,
-        mid_v=mean,
-        upper_v=mean,
-        step_v=survey.step_v,
-    )
-
-
-def _node_levels(survey: Survey, values: FloatArray, noise_v: float) -> Levels:
-    low_v, high_v = (quantile(values, share) for share in (0.005, 0.995))
-    swing = high_v - low_v
-    u = math.hypot(noise_v, survey.step_v / math.sqrt(12))
-    return Levels(
-        kind="node",
-        low_v=low_v,
-        high_v=high_v,
-        u_low_v=u,
-        u_high_v=u,
-        noise_v=noise_v,
-        lower_v=low_v + 0.3 * swing,
-        mid_v=(low_v + high_v) / 2,
-        upper_v=high_v - 0.3 * swing,
-        step_v=survey.step_v,
-    )
 
 
 def _logic_levels() -> Levels:
@@ -260,14 +252,6 @@ def _clipping(survey: Survey) -> tuple[Notice, ...]:
         f"{survey.greatest:.4g} V): levels may lie beyond"
     )
     return (Notice(code="clipped", text=text),)
-
-
-def _missing(survey: Survey, levels: Levels) -> Levels:
-    if not survey.n_missing:
-        return levels
-    text = f"{survey.n_missing} of {survey.n} samples are missing and were left out"
-    notice = Notice(code="missing-samples", text=text)
-    return replace(levels, warnings=(*levels.warnings, notice))
 
 
 def _at_level(levels: Levels, level_v: float) -> Levels:

@@ -9,11 +9,11 @@ import numpy as np
 
 from benchtool.frozen import frozen_record
 from benchtool.model.arrays import FloatArray, middle
-from benchtool.model.capture import Waveform
+from benchtool.model.capture import BLOCK, Waveform
 from benchtool.model.timing import EdgeRun, Edges, Levels
 from benchtool.timing.crossings import Crossings, find_crossings
 from benchtool.timing.edges import find_edges
-from benchtool.timing.pieces import piece_times, walk_pieces
+from benchtool.timing.pieces import cut_pieces, piece_times, walk_pieces
 from benchtool.timing.thresholds import thresholds
 from benchtool.timing.turns import Turn, locate_turn
 
@@ -50,7 +50,7 @@ def find_turning_points(trace: Waveform, levels: Levels) -> Edges:
     """
     if levels.kind in ("flat", "noise"):
         return find_edges(trace, levels)
-    runs, _ = find_crossings(trace, thresholds(trace, levels))
+    runs = find_crossings(trace, thresholds(trace, levels)).runs
     noise_v = max(levels.noise_v, levels.step_v / math.sqrt(12))
     swing_v = levels.high_v - levels.low_v
     turns: list[list[Turn]] = [[] for _ in runs]
@@ -124,7 +124,7 @@ def _stretches(trace: Waveform, runs: tuple[Crossings, ...]) -> Iterator[_Stretc
     number, position = -1, 0
     held_v: list[FloatArray] = []
     held_s: list[FloatArray] = []
-    for piece in walk_pieces(trace):
+    for piece in cut_pieces(walk_pieces(trace), BLOCK):
         if piece.begins_run:
             yield from _rest(runs, number, position, held_v, held_s)
             number, position, held_v, held_s = number + 1, 0, [], []

@@ -1,13 +1,12 @@
-"""Two kinds of noise in a row of periods, told apart, and the best mean under both.
+"""Two kinds of noise in a row of periods on a grid, told apart.
 
 An oscillator's own noise adds up: each period is off by an independent amount of variance
 ``s2``. Noise of measuring an edge does not: it lengthens one period and shortens the next, by a
 variance ``q2`` an edge. Together the periods have the covariance matrix s2·I + q2·K with K the
 second difference (2 on the diagonal, -1 beside it), whose eigenvectors are sines with the
 eigenvalues 2 - 2·cos(πk/(n+1)). So in the sine transform of the periods each ordinate is
-independent: edge noise rules the upper half, the oscillator's the lowest ordinates, and the
-weighted mean with its variance follows in closed form. Rounding to a grid counts as edge noise;
-where it repeats it stands out as lines, which are cut back.
+independent: edge noise rules the upper half, the oscillator's the lowest ordinates. Rounding to a
+grid counts as edge noise; where it repeats it stands out as lines, which are cut back.
 """
 
 from __future__ import annotations
@@ -18,12 +17,6 @@ from benchtool.frozen import frozen_record
 from benchtool.model.arrays import FloatArray
 
 _SCORING_STEPS = 100
-_CAUTION = 0.5
-"""Standard errors by which the accumulating variance is raised before weights are made.
-
-Where edge noise hides the oscillator's, its estimate is often zero and never certain.
-"""
-
 _LEAST_DOF = 3.0
 _FAR = 9.0
 """Power over its expectation from which an ordinate is a line, not noise, and is cut back."""
@@ -40,22 +33,17 @@ _DIRECT = 256
 
 @frozen_record(eq=False)
 class NoiseFit:
-    """Variances of the two noises, and two means of the periods with what they are worth.
+    """Variances of the two noises, and the mean of the periods with what it is worth.
 
     Attributes:
         accumulating_s2: Variance a period of the oscillator's own noise, s².
         edge_s2: Variance of an edge's measured time, rounding to the grid included, s².
-        weighted_s: Mean under the weights that suit both noises, seconds.
-        u_weighted_s, dof_weighted: Its standard uncertainty and degrees of freedom.
         plain_s: Mean of all periods, seconds.
         u_plain_s, dof_plain: Its standard uncertainty and degrees of freedom.
     """
 
     accumulating_s2: float
     edge_s2: float
-    weighted_s: float
-    u_weighted_s: float
-    dof_weighted: float
     plain_s: float
     u_plain_s: float
     dof_plain: float
@@ -73,13 +61,12 @@ def fit_noise(period_s: FloatArray, step_s: float = 0.0) -> NoiseFit | None:
 
     References:
         Fisher scoring of the likelihood over the sine transform, the degree of freedom of the
-        mean taken out. Coverage, and rms error against the best possible, are measured in
-        tests/benchmarks/coverage_of_timing.py.
+        mean taken out. Coverage is measured in tests/benchmarks/coverage_of_timing.py.
     """
     n = period_s.size
     mean_s = float(np.mean(period_s))
-    wave = _sine_transform(period_s - mean_s)
-    ones = _ones_transformed(n)
+    wave = sine_transform(period_s - mean_s)
+    ones = ones_transformed(n)
     spread = 2 - 2 * np.cos(np.pi * np.arange(1, n + 1) / (n + 1))
     least_q2 = step_s**2 / 12
     if not np.mean(wave**2) + least_q2 > (1e-12 * mean_s) ** 2:
@@ -87,26 +74,18 @@ def fit_noise(period_s: FloatArray, step_s: float = 0.0) -> NoiseFit | None:
     s2, u_s2, q2 = _variances(wave, ones, spread, least_q2)
     q2 = max(q2, _slow_edge_variance(period_s - mean_s, s2, q2))
     covariance = np.diag([u_s2**2, 4 * q2**2 / n])
-    cautious = s2 + _CAUTION * u_s2
-    weight = ones / (cautious + q2 * spread)
-    weight /= weight @ ones
-    parts = np.array([weight @ weight, weight @ (weight * spread)])
-    u_weighted, dof_weighted = _worth(parts, np.array([cautious, q2]), covariance)
     u_plain, dof_plain = _worth(np.array([1 / n, 2 / n**2]), np.array([s2, q2]), covariance)
     return NoiseFit(
         accumulating_s2=s2,
         edge_s2=q2,
-        weighted_s=mean_s + float(weight @ wave),
-        u_weighted_s=u_weighted,
-        dof_weighted=dof_weighted,
         plain_s=mean_s,
         u_plain_s=u_plain,
         dof_plain=dof_plain,
     )
 
 
-def _sine_transform(values: FloatArray) -> FloatArray:
-    """Return the orthonormal sine transform (type I) of the values."""
+def sine_transform(values: FloatArray) -> FloatArray:
+    """Return the orthonormal sine transform (type I) of values, shape (n,)."""
     n = values.size
     if n <= _DIRECT:
         k = np.arange(1, n + 1)
@@ -120,7 +99,7 @@ def _sine_transform(values: FloatArray) -> FloatArray:
     return transform
 
 
-def _ones_transformed(n: int) -> FloatArray:
+def ones_transformed(n: int) -> FloatArray:
     """Return the sine transform of n ones: cotangents at odd k, zero at even k."""
     k = np.arange(1, n + 1)
     cotangent = 1 / np.tan(np.pi * k / (2 * (n + 1)))

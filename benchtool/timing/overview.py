@@ -6,8 +6,8 @@ import math
 
 import numpy as np
 
-from benchtool.model.arrays import FloatArray, NDArray, distinct, middle
-from benchtool.model.capture import BLOCK, LogicTrace, Trace, UniformTime, Waveform
+from benchtool.model.arrays import AnyArray, FloatArray, NDArray, distinct, middle
+from benchtool.model.capture import LogicTrace, Span, Trace, UniformTime, Waveform
 from benchtool.model.overview import Overview
 from benchtool.model.timing import Edges, Intervals
 
@@ -54,31 +54,45 @@ def _first_cycles(edges: Edges, intervals: Intervals) -> float:
 
 def _envelope(trace: Waveform, until_s: float) -> tuple[FloatArray, FloatArray, FloatArray]:
     """Return bin times with the least and greatest volt of each bin."""
-    n_wanted = _samples_until(trace, until_s)
-    bin_size = max(1, -(-n_wanted // MOST_POINTS))
-    times: list[FloatArray] = []
-    low: list[FloatArray] = []
-    high: list[FloatArray] = []
-    left = n_wanted
+    left = _samples_until(trace, until_s)
+    bin_size = max(1, -(-left // MOST_POINTS))
+    parts: list[tuple[FloatArray, FloatArray, FloatArray]] = []
     for span in trace.spans:
         stop = min(span.stop, span.start + left)
-        for first in range(span.start, stop, max(1, BLOCK // bin_size) * bin_size):
-            last = min(stop, first + max(1, BLOCK // bin_size) * bin_size)
-            values = _volts(trace, first, last)
-            starts = np.arange(0, values.size, bin_size)
-            low.append(np.fmin.reduceat(values, starts))
-            high.append(np.fmax.reduceat(values, starts))
-            times.append(_times(trace, span.start_s, span.start, first, last)[starts])
+        low, high = _extremes(trace, span.start, stop, bin_size)
+        parts.append((_bin_times(trace, span, stop, bin_size), low, high))
         left -= stop - span.start
         if left <= 0:
             break
-    at_s, lows, highs = (np.concatenate(part) for part in (times, low, high))
+    at_s, lows, highs = (np.concatenate(part) for part in zip(*parts, strict=True))
     known = np.isfinite(lows)
     return (
         at_s[known][:MOST_POINTS],
         np.minimum(lows, highs)[known][:MOST_POINTS],
         np.maximum(lows, highs)[known][:MOST_POINTS],
     )
+
+
+def _extremes(
+    trace: Waveform, start: int, stop: int, bin_size: int
+) -> tuple[FloatArray, FloatArray]:
+    """Return the volts of the least and the greatest sample of each bin, found in codes."""
+    number: list[NDArray[np.int64]] = []
+    least: list[AnyArray] = []
+    greatest: list[AnyArray] = []
+    done = 0
+    for block in trace.samples.blocks(start, stop):
+        values = np.asarray(block)
+        begins = np.maximum(np.arange(-(done % bin_size), values.size, bin_size), 0)
+        number.append((done + begins) // bin_size)
+        least.append(np.fmin.reduceat(values, begins))
+        greatest.append(np.fmax.reduceat(values, begins))
+        done += values.size
+    bins = np.flatnonzero(np.diff(np.concatenate(number), prepend=-1))  # two blocks may share one
+    low = np.fmin.reduceat(np.concatenate(least), bins).astype(np.float64)
+    high = np.fmax.reduceat(np.concatenate(greatest), bins).astype(np.float64)
+    gain, offset = trace.scale.gain, trace.scale.offset
+    return low * gain + offset, high * gain + offset
 
 
 def _samples_until(trace: Waveform, until_s: float) -> int:
@@ -99,19 +113,17 @@ def _samples_until(trace: Waveform, until_s: float) -> int:
     return max(1, min(total, seen))
 
 
-def _volts(trace: Waveform, first: int, last: int) -> FloatArray:
-    parts = [block.astype(np.float64) for block in trace.samples.blocks(first, last)]
-    volts: FloatArray = np.concatenate(parts) * trace.scale.gain + trace.scale.offset
-    return volts
-
-
-def _times(trace: Waveform, start_s: float, start: int, first: int, last: int) -> FloatArray:
+def _bin_times(trace: Waveform, span: Span, stop: int, bin_size: int) -> FloatArray:
+    """Return the time of the first sample of each bin."""
+    index = np.arange(0, stop - span.start, bin_size).astype(np.float64)
     if isinstance(trace.time, UniformTime):
-        index = np.arange(first - start, last - start, dtype=np.float64)
-        return start_s + index * trace.time.dt_s
-    parts = [block.astype(np.float64) for block in trace.time.stamps.blocks(first, last)]
-    stamps: FloatArray = np.concatenate(parts)
-    return stamps
+        return span.start_s + index * trace.time.dt_s
+    found: list[FloatArray] = []
+    done = 0
+    for block in trace.time.stamps.blocks(span.start, stop):
+        found.append(block[-done % bin_size :: bin_size].astype(np.float64))
+        done += block.size
+    return np.concatenate(found)
 
 
 def _logic_envelope(edges: Edges, until_s: float) -> tuple[FloatArray, FloatArray, FloatArray]:

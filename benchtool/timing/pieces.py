@@ -2,25 +2,21 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
-from typing import Any
+from collections.abc import Iterable, Iterator
 
 import numpy as np
 
 from benchtool.frozen import frozen_record
-from benchtool.model.arrays import FloatArray, NDArray
+from benchtool.model.arrays import AnyArray, FloatArray, NDArray
 from benchtool.model.capture import Samples, Span, UniformTime, Waveform
-
-Codes = NDArray[Any]
-"""Samples as stored: integer codes, or floating volts."""
+from benchtool.timing.holes import bridged, finite_runs, is_finite, open_hole
+from benchtool.timing.rows import ROW, Codes, Rows, find_rows
+from benchtool.timing.tally import Tally
 
 Index = NDArray[np.int64]
 
 LEAST = 1 << 15
 """Samples that short blocks are joined to before they are searched."""
-
-BRIDGE = 3
-"""Longest row of missing samples that is bridged by a straight line instead of split."""
 
 
 @frozen_record(eq=False)
@@ -33,6 +29,7 @@ class Piece:
         times_s: Time of each sample where the record is stamped, shape (n,); else None.
         span: The span that the piece lies in.
         begins_run: Whether a hole or a new span lies before it.
+        rows: Extremes of its rows of samples.
     """
 
     values: Codes
@@ -40,27 +37,39 @@ class Piece:
     times_s: FloatArray | None
     span: Span
     begins_run: bool
+    rows: Rows
 
 
-def walk_pieces(waveform: Waveform) -> Iterator[Piece]:
+def walk_pieces(waveform: Waveform, tally: Tally | None = None) -> Iterator[Piece]:
     """Yield the waveform in order, split at its spans and at rows of missing samples.
 
     Args:
         waveform: The trace; up to ``BRIDGE`` missing samples in a row are bridged.
+        tally: Takes note of the range and of missing samples on the way.
     """
+    tally = tally or Tally()
     for span in waveform.spans:
         begins = True
-        for first, values, times_s in _walk_span(waveform, span):
-            for start, stop in _finite_runs(values):
-                yield Piece(
-                    values=values[start:stop],
-                    first=first + start,
-                    times_s=None if times_s is None else times_s[start:stop],
-                    span=span,
-                    begins_run=begins or start > 0,
-                )
-                begins = stop < values.size
-            begins = begins or (values.size > 0 and not _is_finite(values[-1]))
+        for block in _walk_span(waveform, span, tally):
+            for piece in _split(block, span, begins=begins):
+                yield piece
+                begins = False
+            begins = begins or not is_finite(block.values[-1])
+
+
+def cut_pieces(pieces: Iterable[Piece], length: int) -> Iterator[Piece]:
+    """Yield the pieces cut to a length, a multiple of ``ROW``, for one who holds much a sample."""
+    for piece in pieces:
+        for at in range(0, piece.values.size, length):
+            rows = slice(at // ROW, (at + length) // ROW)
+            yield Piece(
+                values=piece.values[at : at + length],
+                first=piece.first + at,
+                times_s=None if piece.times_s is None else piece.times_s[at : at + length],
+                span=piece.span,
+                begins_run=piece.begins_run and at == 0,
+                rows=Rows(least=piece.rows.least[rows], greatest=piece.rows.greatest[rows]),
+            )
 
 
 def piece_times(waveform: Waveform, piece: Piece) -> FloatArray:
@@ -82,22 +91,56 @@ def times_at(waveform: Waveform, piece: Piece, positions: Index) -> FloatArray:
     return piece.span.start_s + (offset + positions).astype(np.float64) * waveform.time.dt_s
 
 
-def _walk_span(waveform: Waveform, span: Span) -> Iterator[tuple[int, Codes, FloatArray | None]]:
+@frozen_record(eq=False)
+class _Block:
+    """Samples in a row whose short holes are bridged; ``rows`` where none is missing."""
+
+    values: Codes
+    first: int
+    times_s: FloatArray | None
+    rows: Rows | None
+
+
+def _split(block: _Block, span: Span, *, begins: bool) -> Iterator[Piece]:
+    """Yield the pieces between the holes of a block."""
+    runs = finite_runs(block.values) if block.rows is None else [(0, block.values.size)]
+    for start, stop in runs:
+        values = block.values[start:stop]
+        yield Piece(
+            values=values,
+            first=block.first + start,
+            times_s=None if block.times_s is None else block.times_s[start:stop],
+            span=span,
+            begins_run=begins or start > 0,
+            rows=block.rows or find_rows(values),
+        )
+
+
+def _walk_span(waveform: Waveform, span: Span, tally: Tally) -> Iterator[_Block]:
     """Yield blocks whose short holes are bridged, also those that two blocks share."""
     held: tuple[Codes, FloatArray | None] | None = None
     before: float | None = None
     first = span.start
     for values, times_s in _paired_blocks(waveform, span):
         joined, joined_s = _join(held, values, times_s)
-        keep = joined.size - _open_hole(joined)
-        held = (joined[keep:], None if joined_s is None else joined_s[keep:])
-        if keep:
-            bridged = _bridged(joined[:keep], before)
-            yield first, bridged, None if joined_s is None else joined_s[:keep]
-            before = float(bridged[-1]) if _is_finite(bridged[-1]) else None
+        rows: Rows | None = find_rows(joined)
+        if rows is not None and rows.are_whole:
+            tally.add_rows(rows)
+            yield _Block(values=joined, first=first, times_s=joined_s, rows=rows)
+            held, before, keep = None, float(joined[-1]), joined.size
+        else:
+            keep = joined.size - open_hole(joined)
+            held = (joined[keep:], None if joined_s is None else joined_s[keep:])
+            if keep:
+                tally.add_holed(joined[:keep])
+                filled = bridged(joined[:keep], before)
+                kept_s = None if joined_s is None else joined_s[:keep]
+                yield _Block(values=filled, first=first, times_s=kept_s, rows=None)
+                before = float(filled[-1]) if is_finite(filled[-1]) else None
         first += keep
     if held is not None and held[0].size:
-        yield first, held[0], held[1]
+        tally.add_holed(held[0])
+        yield _Block(values=held[0], first=first, times_s=held[1], rows=None)
 
 
 def _join(
@@ -114,7 +157,7 @@ def _join(
 
 
 def _paired_blocks(waveform: Waveform, span: Span) -> Iterator[tuple[Codes, FloatArray | None]]:
-    values = _long_blocks(waveform.samples, span)
+    values = (_plain(block) for block in _long_blocks(waveform.samples, span))
     if isinstance(waveform.time, UniformTime):
         for block in values:
             yield block, None
@@ -124,9 +167,9 @@ def _paired_blocks(waveform: Waveform, span: Span) -> Iterator[tuple[Codes, Floa
         yield block, stamps.take(block.size)
 
 
-def _long_blocks(samples: Samples, span: Span) -> Iterator[Codes]:
+def _long_blocks(samples: Samples, span: Span) -> Iterator[AnyArray]:
     """Yield the blocks as they come, short ones joined."""
-    held: list[Codes] = []
+    held: list[AnyArray] = []
     size = 0
     for block in samples.blocks(span.start, span.stop):
         held.append(block)
@@ -134,7 +177,7 @@ def _long_blocks(samples: Samples, span: Span) -> Iterator[Codes]:
         if size >= LEAST:
             yield held[0] if len(held) == 1 else np.concatenate(held)
             held, size = [], 0
-    if held:
+    if size:
         yield held[0] if len(held) == 1 else np.concatenate(held)
 
 
@@ -153,59 +196,7 @@ class _Reader:
         return taken
 
 
-def _is_finite(value: np.generic) -> bool:
-    return bool(np.isfinite(value))
-
-
-def _has_holes(values: Codes) -> bool:
-    """Tell whether any sample is missing: one pass, since NaN and infinities survive a sum."""
-    if values.dtype.kind != "f" or values.size == 0:
-        return False
-    with np.errstate(all="ignore"):
-        return not _is_finite(values.min() + values.max())
-
-
-def _open_hole(values: Codes) -> int:
-    """Return how many missing samples at the end may belong to a hole that is still short."""
-    if values.dtype.kind != "f" or values.size == 0 or _is_finite(values[-1]):
-        return 0
-    present = np.flatnonzero(np.isfinite(values[-(BRIDGE + 1) :]))
-    missing = min(values.size, BRIDGE + 1) - (int(present[-1]) + 1 if present.size else 0)
-    return missing if missing <= BRIDGE else 0
-
-
-def _holes(missing: Codes) -> list[tuple[int, int]]:
-    ends = np.flatnonzero(np.diff(np.concatenate([[False], missing, [False]]).astype(np.int8)))
-    return [(int(a), int(b)) for a, b in ends.reshape(-1, 2)]
-
-
-def _bridged(values: Codes, before: float | None) -> Codes:
-    """Fill short holes between present samples by straight lines.
-
-    Args:
-        values: Samples.
-        before: The present sample just before them, None where there is none.
-    """
-    if not _has_holes(values):
-        return values
-    missing = ~np.isfinite(values)
-    short = [
-        np.arange(a, b)
-        for a, b in _holes(missing)
-        if b - a <= BRIDGE and b < values.size and (a > 0 or before is not None)
-    ]
-    if not short:
-        return values
-    where, present = np.concatenate(short), np.flatnonzero(~missing)
-    known = values[present]
-    if before is not None:
-        present, known = np.concatenate([[-1], present]), np.concatenate([[before], known])
-    filled = values.copy()
-    filled[where] = np.interp(where, present, known)
-    return filled
-
-
-def _finite_runs(values: Codes) -> list[tuple[int, int]]:
-    if not _has_holes(values):
-        return [(0, values.size)] if values.size else []
-    return _holes(np.isfinite(values))
+def _plain(block: AnyArray) -> Codes:
+    """Return samples as an array of numbers: no subclass, whose every slice costs, no bool."""
+    values = np.asarray(block)
+    return values.view(np.uint8) if values.dtype.kind == "b" else values

@@ -12,11 +12,12 @@ from benchtool.model.arrays import BoolArray, FloatArray, middle
 from benchtool.model.capture import StampedTime, Waveform
 from benchtool.model.timing import Levels
 from benchtool.timing.crossings import Crossings
-from benchtool.timing.fits import fit_edges
+from benchtool.timing.fits import Ramped, fit_edges, fit_ramps
 from benchtool.timing.levels import dither
 from benchtool.timing.pieces import Index
 from benchtool.timing.thresholds import Thresholds
 
+_RAMP_FROM = 1.75  # samples of a whole edge from which its straightness is told
 _FIT_FROM = 4.0  # samples between the references from which a fit beats two points
 _FIT_SHARE = 0.45  # half-width of the fit, of the samples between the references
 _ALIKE = 0.3  # relative difference of lengths that few edges leave uncertain
@@ -65,6 +66,16 @@ class _Direction:
 
 def join_runs(runs: Sequence[Crossings]) -> JoinedCrossings:
     """Return the crossings of all runs as one."""
+    if len(runs) == 1:
+        (run,) = runs
+        return JoinedCrossings(
+            index=run.index,
+            rising=run.rising,
+            before=run.before,
+            after=run.after,
+            before_s=run.before_s,
+            after_s=run.after_s,
+        )
     return JoinedCrossings(
         index=np.concatenate([run.index for run in runs]),
         rising=np.concatenate([run.rising for run in runs]),
@@ -98,14 +109,15 @@ def place_edges(
     setting = _Setting(
         trace=trace,
         limits=limits,
+        amplitude=(levels.high_v - levels.low_v) / gain,
         noise=max(levels.noise_v, levels.step_v / math.sqrt(12)) / gain,
         code=levels.step_v / gain,
         step_s=step_s,
     )
     placed: list[_Direction] = []
     for rising, length in zip((True, False), lengths, strict=True):
-        chosen = np.flatnonzero(crossings.rising == rising)
-        if chosen.size:
+        chosen = _of_direction(crossings.rising, rising)
+        if crossings.rising[chosen].size:
             part = _place(setting, crossings, chosen, length)
             times_s[chosen], u_s[chosen] = part.times_s, part.u_s
             placed.append(part)
@@ -113,7 +125,7 @@ def place_edges(
     share = math.sqrt(sum(part.share**2 for part in placed) / max(1, len(placed)))
     return Placement(
         times_s=_in_order(times_s),
-        u_s=np.hypot(u_s, resolution_s / math.sqrt(12)),
+        u_s=np.hypot(u_s, resolution_s / math.sqrt(12)) if resolution_s else u_s,
         resolved=any(part.share < 1 for part in placed),
         grid_s=math.hypot(share * step_s, resolution_s),
         level_u_s=_level_error(levels, gain, placed),
@@ -122,10 +134,11 @@ def place_edges(
 
 @frozen_record(eq=False)
 class _Setting:
-    """What all edges of a trace share; noise and code step in stored units."""
+    """What all edges of a trace share; amplitude, noise and code step in stored units."""
 
     trace: Waveform
     limits: Thresholds
+    amplitude: float
     noise: float
     code: float
     step_s: float
@@ -135,8 +148,15 @@ class _Setting:
         return max(1.0, reach / self.code) if self.code else 1.0
 
 
+def _of_direction(rising: BoolArray, direction: bool) -> Index | slice:
+    """Return which edges go one way: every second, unless a new run breaks the turns."""
+    if not rising.size or (rising[1:] == rising[:-1]).any():
+        return np.flatnonzero(rising == direction)
+    return slice(int(rising[0] != direction), None, 2)
+
+
 def _place(
-    setting: _Setting, crossings: JoinedCrossings, chosen: Index, length: float
+    setting: _Setting, crossings: JoinedCrossings, chosen: Index | slice, length: float
 ) -> _Direction:
     before, after = crossings.before[chosen], crossings.after[chosen]
     before_s, after_s = crossings.before_s[chosen], crossings.after_s[chosen]
@@ -145,6 +165,12 @@ def _place(
         return _halfway(before_s, after_s)
     part = (setting.limits.mid - before) / (after - before)
     rough_s = before_s + part * (after_s - before_s)
+    whole = setting.amplitude / middle(np.abs(after - before))
+    if length >= _FIT_FROM:
+        whole = length * setting.amplitude / (setting.limits.upper - setting.limits.lower)
+    ramps = _on_ramps(setting, crossings.index[chosen], rough_s, after_s, whole)
+    if ramps is not None:
+        return ramps
     if length >= _FIT_FROM:
         return _fitted(setting, crossings.index[chosen], rough_s, after_s, length)
     slew = middle(np.abs(after - before) / (after_s - before_s))
@@ -166,6 +192,30 @@ def _halfway(before_s: FloatArray, after_s: FloatArray) -> _Direction:
         share=1.0,
         per_code_s=0.0,
         codes=1.0,
+        lag_s=0.0,
+    )
+
+
+def _on_ramps(
+    setting: _Setting, index: Index, rough_s: FloatArray, after_s: FloatArray, whole: float
+) -> _Direction | None:
+    """Place straight edges by all of their ``whole`` samples, None if not shown straight."""
+    if whole < _RAMP_FROM:
+        return None
+    known = Ramped(mid=setting.limits.mid, amplitude=setting.amplitude, noise=setting.noise)
+    half = math.ceil(whole / 2) + 1
+    fit = fit_ramps(setting.trace, index, rough_s - after_s, known, half)
+    if fit is None:
+        return None
+    times_s, u_s = rough_s.copy(), setting.noise * fit.per_noise_s * np.ones(index.size)
+    good = np.isfinite(fit.shift_s)
+    times_s[good] = (after_s + fit.shift_s)[good]
+    return _Direction(
+        times_s=times_s,
+        u_s=u_s,
+        share=0.0,
+        per_code_s=1 / fit.slew,
+        codes=setting.codes(setting.amplitude),
         lag_s=0.0,
     )
 
@@ -221,4 +271,5 @@ def _unlike_lag(placed: Sequence[_Direction]) -> float:
 
 def _in_order(times_s: FloatArray) -> FloatArray:
     """Keep the order of edges that fits may have moved past each other."""
-    return np.maximum.accumulate(times_s) if times_s.size else times_s
+    moved = bool((times_s[1:] < times_s[:-1]).any())
+    return np.maximum.accumulate(times_s) if moved else times_s

@@ -11,8 +11,7 @@ from benchtool.frozen import frozen_record
 from benchtool.model.arrays import FloatArray, middle
 from benchtool.model.capture import Capture, LogicTrace, Role, Trace
 from benchtool.model.timing import Edges, Levels
-from benchtool.timing.edges import find_edges
-from benchtool.timing.levels import find_levels
+from benchtool.timing.edges import find_edges, find_levels_and_edges
 
 _SUPPLY_SWING = 0.3  # a supply moves by less than this share of its mean
 _LEAST_SUPPLY_V = 1.0
@@ -28,7 +27,8 @@ class Shape:
     Attributes:
         trace: The trace.
         levels: Its levels; None for a logic trace and for one without a sample.
-        edges: Its edges; None where it has no two states.
+        edges: Its edges, none of a flat one; None of a capacitor node, whose turning points are
+            found when it is measured, and without levels.
     """
 
     trace: Trace
@@ -62,8 +62,9 @@ def find_roles(shapes: Sequence[Shape]) -> tuple[Role, ...]:
     """
     roles = [_own_role(shape) for shape in shapes]
     outputs = [i for i, role in enumerate(roles) if role == "output"]
+    pulses = {i: _pulses(shapes[i]) for i in outputs}
     for i in outputs:
-        if any(_triggers(shapes[i], shapes[j]) for j in outputs if j != i):
+        if any(_triggers(pulses[i], pulses[j]) for j in outputs if j != i):
             roles[i] = "trigger"
         elif any(_comes_up_before(shapes[i], shapes[j]) for j in outputs if j != i):
             roles[i] = "supply"
@@ -76,10 +77,9 @@ def _shape(trace: Trace) -> Shape:
     if isinstance(trace, LogicTrace):
         return Shape(trace=trace, levels=None, edges=find_edges(trace))
     try:
-        levels = find_levels(trace)
+        levels, edges = find_levels_and_edges(trace)
     except MeasurementError:
         return Shape(trace=trace, levels=None, edges=None)
-    edges = find_edges(trace, levels) if levels.kind == "two-state" else None
     return Shape(trace=trace, levels=levels, edges=edges)
 
 
@@ -125,18 +125,18 @@ def _comes_up_before(supply: Shape, other: Shape) -> bool:
     return bool(up_s <= edges.times_s[0] + 2 * max(ups.step_s, edges.step_s))
 
 
-def _triggers(trigger: Shape, output: Shape) -> bool:
-    """Tell whether each pulse of one trace begins with a narrow pulse of another."""
-    pulses = min(_pulses(trigger), key=lambda pulse: pulse.width_s, default=None)
-    return pulses is not None and any(_starts(pulses, answer) for answer in _pulses(output))
-
-
 @frozen_record(eq=False)
 class _Pulses:
     """The intervals of one state: when they begin, and how long they usually are."""
 
     starts_s: FloatArray
     width_s: float
+
+
+def _triggers(trigger: list[_Pulses], output: list[_Pulses]) -> bool:
+    """Tell whether each pulse of one trace begins with a narrow pulse of another."""
+    narrow = min(trigger, key=lambda pulse: pulse.width_s, default=None)
+    return narrow is not None and any(_starts(narrow, answer) for answer in output)
 
 
 def _pulses(shape: Shape) -> list[_Pulses]:

@@ -8,17 +8,19 @@ import numpy as np
 
 from benchtool.frozen import frozen_record
 from benchtool.model.arrays import FloatArray
+from benchtool.model.timing import Intervals
+from benchtool.timing.blend import blend_period
 from benchtool.timing.noise import NoiseFit
-from benchtool.uncertainty import coverage_factor
+from benchtool.timing.rounding import own_deviation
 
 ENOUGH = 30
 """Intervals from which the two kinds of noise can be told apart."""
 
-_SPREAD = 0.4
-"""Edge noise in grid steps (rounding alone: 0.29) from which rounding errors are random."""
+ENOUGH_FOR_BOTH_WAYS = 8
+"""Periods from which the edges of both directions are weighted together."""
 
 _BATCHES = 12
-_LEAST_FOR_BATCHES = 36
+LEAST_FOR_BATCHES = 36
 _SLOW_NOISE = 2.5  # variance of batch means over what neighbours explain: 1 % of chance at F(11,∞)
 
 
@@ -31,12 +33,14 @@ class Mean:
         u: Its standard uncertainty from the scatter, in the same unit.
         dof: Degrees of freedom of ``u``.
         note: How ``u`` was come by.
+        slow: Whether changes were seen that are slower than neighbours show.
     """
 
     value: float
     u: float
     dof: float
     note: str
+    slow: bool = False
 
 
 def two_pass_sd(values: FloatArray) -> float:
@@ -80,7 +84,7 @@ def mean_of_widths(values: FloatArray, neighbours: float = 0.0) -> Mean:
     """
     n = values.size
     value = float(np.mean(values))
-    if n >= _LEAST_FOR_BATCHES:
+    if n >= LEAST_FOR_BATCHES:
         u = two_pass_sd(_batch_means(values)) / math.sqrt(_BATCHES)
         note = f"sd of {_BATCHES} batch means over √{_BATCHES}"
         return Mean(value=value, u=u, dof=_BATCHES - 1, note=note)
@@ -88,57 +92,93 @@ def mean_of_widths(values: FloatArray, neighbours: float = 0.0) -> Mean:
     return Mean(value=value, u=math.sqrt(variance / n), dof=n - 1, note=f"sd of {n} over √{n}")
 
 
-def mean_of_periods(
-    period_s: FloatArray, n_chains: int, step_s: float, fit: NoiseFit | None
-) -> Mean:
-    """Return the mean period with what its scatter says.
+def mean_of_periods(period_s: FloatArray, n_chains: int, fit: NoiseFit | None) -> Mean:
+    """Return the mean period on a grid, first to last edge, with what its scatter says.
 
     Args:
         period_s: Complete periods in order, seconds, shape (n,) with n >= 2.
         n_chains: Unbroken successions they come in.
-        step_s: Grid that the edges lie on, 0 where they are interpolated. Weights gain nothing
-            over rounding to a grid unless the edges' own noise spreads it.
         fit: Their two noises told apart, None where they are too few or do not scatter.
     """
     n = period_s.size
     if fit is None:
         return mean_of_widths(period_s)
-    length = n // _BATCHES
-    slow = _slow_excess(period_s, fit.accumulating_s2 / length + 2.2 * fit.edge_s2 / length**2)
+    slow = slow_excess(period_s, fit.accumulating_s2, fit.edge_s2)
     if slow:
         return _with_slow(fit.plain_s, fit.u_plain_s, slow)
-    weighable = n_chains == 1 and fit.edge_s2 >= (_SPREAD * step_s) ** 2
-    return _better_mean(fit, n, n_chains, weighable=weighable)
-
-
-def _better_mean(fit: NoiseFit, n: int, n_chains: int, *, weighable: bool) -> Mean:
-    """Return the mean with the smaller U."""
     plain_u = math.sqrt(fit.accumulating_s2 / n + 2 * n_chains * fit.edge_s2 / n**2)
-    plain = Mean(
+    return Mean(
         value=fit.plain_s,
         u=max(plain_u, fit.u_plain_s),
         dof=fit.dof_plain,
         note=f"first to last edge over {n}, accumulating and edge noise told apart",
     )
-    weighted = Mean(
-        value=fit.weighted_s,
-        u=fit.u_weighted_s,
-        dof=fit.dof_weighted,
-        note=f"weighted mean of {n}, accumulating and edge noise told apart",
+
+
+def mean_of_both_ways(intervals: Intervals, u_edge_s: float) -> Mean:
+    """Return the period from the edges of both directions, whose places are interpolated.
+
+    Args:
+        intervals: Intervals of the trace with enough periods to be told apart from chance.
+        u_edge_s: What the noise of the samples gives an edge.
+    """
+    period_s = intervals.period_s
+    blend = blend_period(intervals, u_edge_s)
+    if blend is None:
+        return mean_of_widths(period_s)
+    slow = slow_excess(period_s, 2 * blend.width_s2, blend.edge_s2)
+    if slow:
+        return _with_slow(blend.period_s, blend.u_s, slow)
+    return Mean(
+        value=blend.period_s,
+        u=blend.u_s,
+        dof=blend.dof,
+        note="edges of both directions, weighted as accumulating and edge noise ask for",
     )
-    if not weighable:
-        return plain
-    return min(plain, weighted, key=lambda mean: coverage_factor(mean.dof) * mean.u)
 
 
-def _slow_excess(values: FloatArray, expected: float) -> float:
+def mean_on_grid(width_s: FloatArray, step_s: float, u_grid_s: float, most_s: float) -> Mean:
+    """Return the mean of many widths on a grid, their scatter without that of the grid.
+
+    Args:
+        width_s: Widths in order, seconds, shape (n,) with n >= 30.
+        step_s: Grid step.
+        u_grid_s: What the grid gives their mean.
+        most_s: Most that a width can scatter by itself.
+    """
+    n = width_s.size
+    own_s = own_deviation(two_pass_sd(width_s), float(np.mean(width_s)), step_s) or 0.0
+    own_s = min(own_s, most_s)
+    batch = own_s**2 * _BATCHES / n + _BATCHES**2 * u_grid_s**2
+    slow = _batch_excess(width_s, batch)
+    if slow:
+        return _with_slow(float(np.mean(width_s)), own_s / math.sqrt(n), slow)
+    note = f"sd of {n} over √{n}, without that of the grid"
+    return Mean(value=float(np.mean(width_s)), u=own_s / math.sqrt(n), dof=n - 1, note=note)
+
+
+def slow_excess(period_s: FloatArray, accumulating_s2: float, edge_s2: float) -> float:
     """Return the variance of the mean from changes too slow for neighbours to show, or 0.
+
+    Args:
+        period_s: Periods in order.
+        accumulating_s2: Variance a period of accumulating noise.
+        edge_s2: Variance of an edge's time.
+    """
+    length = period_s.size // _BATCHES
+    if not length:
+        return 0.0
+    return _batch_excess(period_s, accumulating_s2 / length + 2.2 * edge_s2 / length**2)
+
+
+def _batch_excess(values: FloatArray, expected: float) -> float:
+    """Return the variance of the mean that batch means show beyond what is expected, or 0.
 
     Args:
         values: Observations in order.
         expected: Variance of a batch mean that the fast noise explains.
     """
-    if values.size < _LEAST_FOR_BATCHES:
+    if values.size < LEAST_FOR_BATCHES:
         return 0.0
     variance = two_pass_sd(_batch_means(values)) ** 2
     if variance <= _SLOW_NOISE * expected or variance <= (1e-12 * float(np.mean(values))) ** 2:
@@ -158,4 +198,5 @@ def _with_slow(value: float, fast_u: float, slow: float) -> Mean:
         u=max(fast_u, math.sqrt(slow)),
         dof=_BATCHES - 1,
         note=f"sd of {_BATCHES} batch means over √{_BATCHES}: slow changes",
+        slow=True,
     )

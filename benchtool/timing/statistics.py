@@ -6,14 +6,14 @@ import math
 
 from benchtool.model.arrays import FloatArray
 from benchtool.model.options import JITTER_REL, TIMEBASE_REL
-from benchtool.model.quantity import Contribution, Measured
+from benchtool.model.quantity import Measured
 from benchtool.model.timing import Edges, Intervals, Timing
 from benchtool.timing.bounds import bound_duration, bound_frequency, bound_period
 from benchtool.timing.budget import (
     Setting,
     grid_error,
     level_error,
-    noise_of,
+    mean_width,
     scale_errors,
     settle_budget,
     single_interval,
@@ -22,10 +22,8 @@ from benchtool.timing.budget import (
 )
 from benchtool.timing.drift import find_drift
 from benchtool.timing.duty import measure_duty
-from benchtool.timing.grid import period_floor
-from benchtool.timing.noise import NoiseFit
+from benchtool.timing.periods import measure_period, one_way_period
 from benchtool.timing.remarks import direction_notice, few_notice
-from benchtool.timing.scatter import ENOUGH, Mean, mean_of_periods, mean_of_widths
 from benchtool.uncertainty import combine, propagate
 
 
@@ -53,10 +51,8 @@ def measure_timing(
     setting = settle_budget(intervals, edges, timebase_rel, jitter_rel)
     t_high = _width(setting, intervals.high_s, sign=1.0)
     t_low = _width(setting, intervals.low_s, sign=-1.0)
-    n_chains = len(intervals.chains) or 1
-    period = _period(setting, intervals.period_s, n_chains, setting.noise)
-    others_noise = noise_of(intervals.other_period_s, edges)
-    other = _period(setting, intervals.other_period_s, n_chains, others_noise)
+    period = measure_period(setting)
+    ways = [one_way_period(setting, x) for x in (intervals.period_s, intervals.other_period_s)]
     return Timing(
         t_high=t_high or bound_duration(intervals, "high"),
         t_low=t_low or bound_duration(intervals, "low"),
@@ -65,7 +61,7 @@ def measure_timing(
         duty=measure_duty(setting),
         first_high=_first_high(setting),
         drift=find_drift(intervals),
-        warnings=(*few_notice(setting), *direction_notice(intervals, period, other)),
+        warnings=(*few_notice(setting), *direction_notice(intervals, *ways)),
     )
 
 
@@ -73,41 +69,17 @@ def _width(setting: Setting, values: FloatArray, *, sign: float) -> Measured | N
     """Return t_high (``sign`` 1) or t_low (-1): a level error moves them opposite ways."""
     if not values.size:
         return None
-    value, own = float(values[0]), single_interval(setting, float(values[0]))
+    value = float(values[0])
     if values.size > 1:
-        value, own = _from_scatter(mean_of_widths(values))
-    terms = [
-        *with_floor(setting, own, width_grid(setting, values.size), values.size),
-        level_error(setting, sign),
-        *scale_errors(setting, value),
-    ]
+        value, own = mean_width(setting, values)
+    else:
+        own = with_floor(setting, single_interval(setting, value), width_grid(setting, 1), 1)
+    terms = [*own, level_error(setting, sign), *scale_errors(setting, value)]
     return combine(value, "s", terms, n=values.size)
 
 
-def _period(
-    setting: Setting, values: FloatArray, n_chains: int, noise: NoiseFit | None
-) -> Measured | None:
-    if not values.size:
-        return None
-    resolved = setting.edges.resolved
-    value, own = float(values[0]), single_interval(setting, float(values[0]))
-    if values.size > 1:
-        step_s = 0.0 if resolved else setting.edges.step_s
-        value, own = _from_scatter(mean_of_periods(values, n_chains, step_s, noise))
-    floor_s = period_floor(setting.grid_s, values.size, n_chains)
-    if resolved and values.size >= ENOUGH:
-        floor_s = 0.0
-    terms = with_floor(setting, own, floor_s, values.size)
-    return combine(value, "s", [*terms, *scale_errors(setting, value)], n=values.size)
-
-
-def _from_scatter(mean: Mean) -> tuple[float, list[Contribution]]:
-    scatter = Contribution(source="scatter", u=mean.u, dof=mean.dof, note=mean.note)
-    return mean.value, [scatter]
-
-
 def _frequency(period: Measured | None) -> Measured | None:
-    if period is None:
+    if period is None or period.value <= 0:  # 0 where all times round to one
         return None
     return propagate(1 / period.value, "Hz", [(-1 / period.value**2, period)])
 

@@ -1,136 +1,181 @@
-"""One pass over a waveform: its full range and a representative part of its samples."""
+"""What the levels are found from: a part of the samples, and the range of all of them."""
 
 from __future__ import annotations
+
+from dataclasses import replace
 
 import numpy as np
 
 from benchtool.frozen import frozen_record
-from benchtool.model.arrays import AnyArray, FloatArray, distinct, middle, quantile
+from benchtool.model.arrays import FloatArray, distinct, middle, quantile
 from benchtool.model.capture import Waveform
+from benchtool.timing.pieces import Piece, walk_pieces
+from benchtool.timing.rows import ROW
+from benchtool.timing.sampling import sample_runs
+from benchtool.timing.tally import Tally
 
-KEPT = 1 << 20
-"""Samples kept for the histogram, as contiguous runs spread over the record."""
+WHOLE = 1 << 20
+"""Samples up to which a record is taken as a whole."""
 
-_GOLDEN = 0.6180339887498949
+_SEEN = 0.05  # of the range of a sampled part: what all samples may exceed it by
 
 
 @frozen_record(eq=False)
 class Survey:
-    """What one pass over the samples kept.
+    """A part of the samples, and the range of all as far as it is known.
 
     Attributes:
         runs: Contiguous runs of finite samples in volts.
-        least, greatest: Extremes of all samples in volts.
-        n: Samples in the record.
-        n_missing: Samples that the file did not give.
+        values: All of them, shape (n,).
+        ordered: The same in order of size.
+        least, greatest: Extremes in volts.
         step_v: Code step in volts, 0 where none is known or found.
         code_low_v, code_high_v: Ends of the code range, where the samples are integers.
+        is_whole: Whether the extremes are those of all samples.
     """
 
     runs: tuple[FloatArray, ...]
+    values: FloatArray
+    ordered: FloatArray
     least: float
     greatest: float
-    n: int
-    n_missing: int
     step_v: float
     code_low_v: float | None
     code_high_v: float | None
+    is_whole: bool
 
-    @property
-    def values(self) -> FloatArray:
-        """All kept samples in volts."""
-        return np.concatenate(self.runs) if self.runs else np.empty(0)
+    def of_runs(self, runs: tuple[FloatArray, ...]) -> Survey:
+        """Return a survey of other runs of the trace, with their own extremes."""
+        values = np.concatenate(runs)
+        ordered = np.sort(values)
+        return replace(
+            self,
+            runs=runs,
+            values=values,
+            ordered=ordered,
+            least=float(ordered[0]),
+            greatest=float(ordered[-1]),
+        )
+
+    def share_between(self, low_v: float, high_v: float) -> float:
+        """Return the share of samples strictly between two values."""
+        ends = (self.ordered.searchsorted(low_v, "right"), self.ordered.searchsorted(high_v))
+        return max(0, int(ends[1] - ends[0])) / self.ordered.size
+
+    def at_share(self, share: float) -> float:
+        """Return the value below which lies a share of the samples, as ``quantile`` does."""
+        place = share * (self.ordered.size - 1)
+        low = int(place)
+        high = min(low + 1, self.ordered.size - 1)
+        step = self.ordered[high] - self.ordered[low]
+        return float(self.ordered[low] + (place - low) * step)
 
 
 def survey_samples(waveform: Waveform) -> Survey:
-    """Walk a waveform once.
+    """Return all samples of a short record, and of a long one runs spread over it."""
+    n = sum(span.stop - span.start for span in waveform.spans)
+    runs = _all_runs(waveform) if n <= WHOLE else sample_runs(waveform)
+    return _survey(waveform, runs, is_whole=n <= WHOLE)
 
-    Args:
-        waveform: The trace; at most ``KEPT`` of its samples are held.
+
+def exceeds(waveform: Waveform, survey: Survey, tally: Tally) -> bool:
+    """Tell whether samples lie clear outside the range that levels were found in."""
+    if survey.is_whole or tally.greatest < tally.least:
+        return False
+    if not survey.values.size:
+        return True
+    least, greatest = tally.volts(waveform.scale)
+    margin = _SEEN * (survey.greatest - survey.least)
+    return least < survey.least - margin or greatest > survey.greatest + margin
+
+
+def widen(waveform: Waveform, survey: Survey, tally: Tally) -> Survey:
+    """Return the survey with the range of all samples.
+
+    Where no sampled one lies in one half of it, the waveform is walked for those that do.
     """
-    runs, least, greatest, n_missing = _collect(waveform, None)
-    survey = _build(waveform, runs, least, greatest, n_missing)
-    empty = _empty_half(survey)
-    if empty is None:
-        return survey
-    more, *_ = _collect(waveform, empty)
-    return _build(waveform, [*runs, *more], least, greatest, n_missing)
+    least, greatest = tally.volts(waveform.scale)
+    empty = _empty_half(survey, least, greatest)
+    if empty is not None:
+        survey = _survey(waveform, (*survey.runs, *_inside(waveform, empty)), is_whole=True)
+    return replace(survey, least=least, greatest=greatest, is_whole=True)
 
 
-def _collect(
-    waveform: Waveform, inside: tuple[float, float] | None
-) -> tuple[list[FloatArray], float, float, int]:
-    """Keep runs of samples; with ``inside``, only those in that range of volts."""
+def _all_runs(waveform: Waveform) -> tuple[FloatArray, ...]:
     gain, offset = waveform.scale.gain, waveform.scale.offset
-    share = 1.0 if inside else min(1.0, KEPT / max(waveform.samples.size, 1))
     runs: list[FloatArray] = []
-    least, greatest, n_missing, room, number = np.inf, -np.inf, 0, KEPT, 0
     for span in waveform.spans:
-        first_run = len(runs)
-        for block in waveform.samples.blocks(span.start, span.stop):
-            number += 1
-            finite = block
-            if block.dtype.kind == "f":
-                finite = block[np.isfinite(block)]
-                n_missing += block.size - finite.size
-            if finite.size == 0:
-                continue
-            ends = sorted(float(x) * gain + offset for x in (finite.min(), finite.max()))
-            least, greatest = min(least, ends[0]), max(greatest, ends[1])
-            kept = _part(finite, share, number) * gain + offset
-            if inside:
-                kept = kept[(kept >= inside[0]) & (kept <= inside[1])]
-            if kept.size and room > 0:
-                runs.append(kept[:room])
-                room -= kept.size
-        if share == 1.0 and len(runs) > first_run:
-            runs[first_run:] = [np.concatenate(runs[first_run:])]
-    return runs, float(least), float(greatest), n_missing
+        blocks = [b.astype(np.float64) for b in waveform.samples.blocks(span.start, span.stop)]
+        values = np.concatenate([np.empty(0), *blocks])
+        present = values[np.isfinite(values)] * gain + offset
+        if present.size:
+            runs.append(present)
+    return tuple(runs)
 
 
-def _part(block: AnyArray, share: float, number: int) -> FloatArray:
-    """Return a contiguous part; its place varies so that it cannot beat with the signal."""
-    length = min(block.size, max(int(np.ceil(block.size * share)), 1))
-    start = int((number * _GOLDEN % 1.0) * (block.size - length))
-    return block[start : start + length].astype(np.float64)
-
-
-def _empty_half(survey: Survey) -> tuple[float, float] | None:
-    """Return the half of the range in which no sample was kept, if there is one."""
-    values = survey.values
-    if values.size in (0, survey.n) or survey.greatest <= survey.least:
-        return None
-    middle = (survey.least + survey.greatest) / 2
-    if not (values > middle).any():
-        return middle, survey.greatest
-    if not (values < middle).any():
-        return survey.least, middle
+def _empty_half(survey: Survey, least: float, greatest: float) -> tuple[float, float] | None:
+    """Return the half of a range in which no sample was kept, if there is one."""
+    middle_v = (least + greatest) / 2
+    if not survey.values.size:
+        return least, greatest
+    if survey.ordered[-1] <= middle_v:
+        return middle_v, greatest
+    if survey.ordered[0] >= middle_v:
+        return least, middle_v
     return None
 
 
-def _build(
-    waveform: Waveform, runs: list[FloatArray], least: float, greatest: float, n_missing: int
-) -> Survey:
+def _inside(waveform: Waveform, extent_v: tuple[float, float]) -> tuple[FloatArray, ...]:
+    """Return the samples in a range of volts, as many as are taken of a whole record."""
+    gain, offset = waveform.scale.gain, waveform.scale.offset
+    low, high = sorted((v - offset) / gain for v in extent_v)
+    runs: list[FloatArray] = []
+    room = WHOLE
+    for piece in walk_pieces(waveform):
+        volts = _piece_inside(piece, low, high) * gain + offset
+        kept = volts[(volts >= extent_v[0]) & (volts <= extent_v[1])][:room]
+        if kept.size:
+            runs.append(kept)
+            room -= kept.size
+        if room <= 0:
+            break
+    return tuple(runs)
+
+
+def _piece_inside(piece: Piece, low: float, high: float) -> FloatArray:
+    """Return the rows of a piece that reach into a range of codes."""
+    reaching = (piece.rows.greatest >= low - 1) & (piece.rows.least <= high + 1)
+    starts = reaching.nonzero()[0] * ROW
+    parts = [piece.values[start : start + ROW].astype(np.float64) for start in starts]
+    return np.concatenate([np.empty(0), *parts])
+
+
+def _survey(waveform: Waveform, runs: tuple[FloatArray, ...], *, is_whole: bool) -> Survey:
+    values = np.concatenate([np.empty(0), *runs])
+    ordered = np.sort(values)
+    step_v, ends = _codes(waveform, ordered)
+    return Survey(
+        runs=runs,
+        values=values,
+        ordered=ordered,
+        least=float(ordered[0]) if ordered.size else np.inf,
+        greatest=float(ordered[-1]) if ordered.size else -np.inf,
+        step_v=step_v,
+        code_low_v=ends[0] if ends else None,
+        code_high_v=ends[1] if ends else None,
+        is_whole=is_whole,
+    )
+
+
+def _codes(waveform: Waveform, ordered: FloatArray) -> tuple[float, list[float] | None]:
+    """Return the code step, and of integers the ends of their range, in volts."""
     scale, dtype = waveform.scale, waveform.samples.dtype
     step_v = scale.step_v or 0.0
-    ends: list[float] | list[None] = [None, None]
     if dtype.kind in "iu":
         info = np.iinfo(np.dtype(dtype.str))
         ends = sorted(float(x) * scale.gain + scale.offset for x in (info.min, info.max))
-        step_v = step_v or abs(scale.gain)
-    elif not step_v:
-        step_v = find_step(np.concatenate(runs)) if runs else 0.0
-    n = sum(span.stop - span.start for span in waveform.spans)
-    return Survey(
-        runs=tuple(runs),
-        least=least,
-        greatest=greatest,
-        n=n,
-        n_missing=n_missing,
-        step_v=step_v,
-        code_low_v=ends[0],
-        code_high_v=ends[1],
-    )
+        return step_v or abs(scale.gain), ends
+    return step_v or find_step(ordered), None
 
 
 def find_step(values: FloatArray) -> float:

@@ -3,9 +3,11 @@
     python tests/benchmarks/coverage_of_timing.py [captures a cell] [processes]
 
 Each cell draws captures with exact truth: a random period over more than one sampling interval,
-a random duty and phase, a timebase error from its stated rectangle. Printed are the share of
-captures whose interval covers the truth, and the mean U over the half-width that holds 95 % of
-the errors.
+a random duty and phase, a timebase error from its stated rectangle. One interval cannot show its
+jitter, so where N is 1 that is drawn as it is assumed: every interval from a rectangle of 0.1 %.
+Cells in step draw their period within a tenth of a step over the record around whole and half
+steps. Printed are the share of captures whose interval covers the truth, and the mean U over the
+half-width that holds 95 % of the errors.
 """
 
 from __future__ import annotations
@@ -22,6 +24,7 @@ sys.path.insert(0, str(Path(__file__).parent.parent / "timing"))
 import timing_waves as waves
 
 from benchtool.model.capture import Trace
+from benchtool.model.options import JITTER_REL
 from benchtool.timing import find_edges, find_intervals, measure_timing
 from benchtool.uncertainty import expanded
 
@@ -32,7 +35,11 @@ NOISES = {  # accumulating and edge noise, relative to the period
     "edge": (0.0, 2e-3),
     "both": (1e-3, 1e-3),
     "small": (1e-5, 0.0),
+    "assumed": (0.0, 0.0),
 }
+
+
+SINGLE = {"none": "none", "small": "small"} | dict.fromkeys(("wander", "edge", "both"), "assumed")
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -45,6 +52,7 @@ class Cell:
     n: int
     edge: str
     timebase_rel: float = 0.0
+    in_step: bool = False
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -59,13 +67,19 @@ def capture(cell: Cell, rng: np.random.Generator) -> tuple[Trace, waves.Board]:
     """Draw one capture."""
     wander, edge_noise = NOISES[cell.noise]
     dt_s = 1e-5
+    part = rng.uniform(0, 1)
+    if cell.in_step:
+        part = rng.integers(0, 2) / 2 + rng.uniform(-0.1, 0.1) / cell.n
     board = waves.Board(
-        period_s=(cell.rate + rng.uniform(0, 1)) * dt_s,
+        period_s=(cell.rate + part) * dt_s,
         duty=rng.uniform(0.4, 0.68),
         wander=wander,
         edge_noise=edge_noise,
     )
     edges = waves.edge_times(board, cell.n + 2, rng)
+    if cell.noise == "assumed":
+        widths_s = np.diff(edges) * (1 + JITTER_REL * rng.uniform(-1, 1, edges.size - 1))
+        edges = np.concatenate([[0.0], np.cumsum(widths_s)])
     kind, _, length = cell.edge.partition(":")
     margin_s = (1.5 + float(length or 0) * (2.5 if kind == "rc" else 0.5)) * dt_s
     start_s, end_s = waves.cut_record(edges, cell.n, margin_s, rng)
@@ -109,7 +123,7 @@ def cells() -> list[Cell]:
     """Return the grid: all counts for the main cases, fewer for the others."""
     counts = (1, 2, 3, 5, 10, 30, 100, 1000)
     grid = [
-        Cell(rate=rate, noise=noise, bits=8, n=n, edge=edge)
+        Cell(rate=rate, noise=noise if n > 1 else SINGLE[noise], bits=8, n=n, edge=edge)
         for n in counts
         for rate, noise, edge in (
             (5, "none", "logic"),
@@ -141,6 +155,16 @@ def cells() -> list[Cell]:
             (6, "small", 8, 300, "ticks"),
         )
     ]
+    grid += [
+        Cell(rate=rate, noise=noise, bits=8, n=n, edge="ticks", in_step=True)
+        for rate, noise, n in (
+            (20, "none", 30),
+            (20, "none", 100),
+            (50, "small", 100),
+            (20, "edge", 30),
+            (20, "none", 1000),
+        )
+    ]
     return grid
 
 
@@ -156,7 +180,8 @@ def main() -> None:
         for cell, scores in zip(
             grid, pool.imap(partial(measure_cell, captures=captures), grid), strict=True
         ):
-            row = f"{cell.rate:7d} {cell.noise:>7} {cell.bits:4d} {cell.n:5d} {cell.edge:>14}"
+            edge = "ticks in step" if cell.in_step else cell.edge
+            row = f"{cell.rate:7d} {cell.noise:>7} {cell.bits:4d} {cell.n:5d} {edge:>14}"
             row += "".join(f"{s.coverage:8.3f}/{s.excess:5.2f}" for s in scores.values())
             marks = [s.coverage < 0.93 for s in scores.values()]
             wide = [s.coverage > 0.985 and s.excess > 1.25 for s in scores.values()]

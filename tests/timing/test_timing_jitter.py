@@ -9,7 +9,8 @@ import pytest
 from benchtool.model.quantity import Bound, Measured
 from benchtool.model.timing import EdgeRun, Edges
 from benchtool.timing import find_intervals, measure_jitter
-from benchtool.timing.jitter import grid_share, neighbour_steps, observed_variance
+from benchtool.timing.jitter import grid_share, neighbour_steps
+from benchtool.timing.rounding import observed_variance
 
 VECTORS = tomllib.loads(
     (Path(__file__).parents[1] / "reference" / "jitter_vectors.toml").read_text(encoding="utf-8")

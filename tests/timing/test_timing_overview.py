@@ -1,9 +1,12 @@
 from __future__ import annotations
 
+from dataclasses import replace
+
 import numpy as np
 import pytest
 from timing_waves import Board, as_waveform, edge_times, transitions, trapezoid
 
+from benchtool.model.capture import ArraySamples, StampedTime
 from benchtool.timing import find_edges, find_intervals, make_overview
 
 
@@ -41,3 +44,23 @@ def test_a_flat_trace_is_drawn_whole() -> None:
     view = make_overview(trace, edges, find_intervals(edges))
     assert view.envelope_s[-1] == pytest.approx(0.099)
     assert view.periods_s.size == view.histogram_count.size == 0
+
+
+@pytest.mark.parametrize("stamped", [False, True])
+def test_bins_that_blocks_share_hold_all_of_their_samples(stamped: bool) -> None:
+    n = 2_345_678  # bins of 1173 samples, which divide no block
+    values = np.resize(np.random.default_rng(2).normal(5, 0.02, 70_001), n).astype(np.float32)
+    values[[400_000, 1_500_000]] = 5.4, 4.6
+    values[30_000:33_000] = np.nan
+    trace = as_waveform(values, 1e-6)
+    if stamped:
+        stamps = ArraySamples(np.arange(n) * 1e-6)
+        trace = replace(trace, time=StampedTime(stamps=stamps))
+    edges = find_edges(trace)
+    view = make_overview(trace, edges, find_intervals(edges))
+    size = -(-n // 2000)
+    bins = [values[first : first + size] for first in range(0, n, size)]
+    kept = [k for k, part in enumerate(bins) if np.isfinite(part).any()]
+    assert view.envelope_low_v.tolist() == [np.nanmin(bins[k]) for k in kept]
+    assert view.envelope_high_v.tolist() == [np.nanmax(bins[k]) for k in kept]
+    np.testing.assert_allclose(view.envelope_s, np.array(kept) * size * 1e-6, rtol=1e-12)
