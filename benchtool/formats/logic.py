@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from typing import TypeVar
+
 import numpy as np
 
 from benchtool.model.arrays import FloatArray, NDArray
@@ -33,23 +35,43 @@ def logic_trace(
         end_stated: Whether ``end_s`` is stated rather than the last edge.
         opens_with_edge: Whether the first entry is itself an edge, not a state found.
     """
-    last = np.append(times_s[1:] != times_s[:-1], True)  # of several at one time the last holds
-    times_s, states = times_s[last], states[last]
-    new = np.concatenate([[True], states[1:] != states[:-1]])
-    times_s, states = times_s[new], states[new]
+    times_s, states = _kept(times_s, states, times_s[1:] != times_s[:-1], at_end=True)
+    times_s, states = _kept(times_s, states, states[1:] != states[:-1], at_end=False)
     known = states != UNKNOWN
-    opens = known & np.concatenate([[True], ~known[:-1]])
+    opens = known.copy()
+    opens[1:] &= ~known[:-1]
     edges = known & ~opens
     if opens_with_edge:
         edges[0] = known[0]
     return LogicTrace(
-        times_s=times_s[edges],
-        states=states[edges] == 1,
+        times_s=_chosen(times_s, edges),
+        states=_chosen(states == 1, edges),
         spans=_spans(times_s, states, opens, end_s, opens_with_edge=opens_with_edge),
         tick_s=tick_s,
         channel=channel,
         end_known=end_stated or end_s > times_s[-1],
     )
+
+
+def _kept(
+    times_s: FloatArray, states: States, differs: NDArray[np.bool_], *, at_end: bool
+) -> tuple[FloatArray, States]:
+    """Return the entries that differ from a neighbour.
+
+    Of several at one time the last is kept (``at_end``), of several alike the first.
+    """
+    if differs.all():
+        return times_s, states
+    kept = np.append(differs, True) if at_end else np.append(True, differs)
+    return times_s[kept], states[kept]
+
+
+_Row = TypeVar("_Row", bound=np.generic)
+
+
+def _chosen(row: NDArray[_Row], chosen: NDArray[np.bool_]) -> NDArray[_Row]:
+    """Return the chosen entries; a view where they are all but the first."""
+    return row[1:] if chosen[1:].all() and not chosen[0] else row[chosen]
 
 
 def _spans(

@@ -9,8 +9,9 @@ import pytest
 from read_back import Read, codes_of, point
 from vcd import VCDWriter
 
-from benchtool.errors import AmbiguousStructureError, MalformedCaptureError
+from benchtool.errors import AmbiguousStructureError, MalformedCaptureError, UsageError
 from benchtool.model.capture import Capture, LogicTrace, StampedTime, Waveform
+from benchtool.targets import find_channel
 
 HEAD = (
     "$timescale 1 us $end\n$scope module top $end\n$var wire 1 ! OUT $end\n"
@@ -149,7 +150,7 @@ def test_vectors_give_their_bits(read: Read) -> None:
 
 
 def test_short_vector_values_are_extended_as_the_standard_says() -> None:
-    from benchtool.formats.vcd.body import extended
+    from benchtool.formats.vcd.changes import extended
 
     # IEEE 1364-2005, table 18-1: 10 -> 0010, X10 -> XX10, ZX0 -> ZZX0, 0X10 -> 0X10
     assert [extended(v, 4) for v in ("10", "X10", "ZX0", "0X10")] == [
@@ -244,6 +245,12 @@ def test_cut_dump_is_read_to_the_change_before(read: Read, end: str) -> None:
         (HEAD + "#0\n0!\n#10\n1!\n#5\n0!\n#30\n", "time-disorder"),
         (HEAD + "#0\n0!\n#10\nvalve\n#30\n", "malformed-capture"),
         (HEAD.replace("1 us", "3 us") + "#0\n0!\n", "malformed-capture"),
+        (HEAD + "0!\n1!\n", "no-values"),
+        (HEAD + "#-5\n0!\n#30\n", "malformed-capture"),
+        (HEAD + f"#0\n0!\n#5\n1!\n#{2**63}\n0!\n", "malformed-capture"),
+        (HEAD + f"#0\n0!\n#5\n1!\n#{'9' * 5000}\n0!\n", "malformed-capture"),
+        (HEAD + "#0\n0!\n#10\n1!\n" + HEAD + "#0\n0!\n#10\n", "malformed-capture"),
+        (HEAD + "#0\n0!\n#10\n" + "x" * (5 << 20) + "\n#11\n", "malformed-capture"),
     ],
 )
 def test_each_damage_has_its_code(read: Read, text: str, code: str) -> None:
@@ -259,3 +266,109 @@ def test_blocks_do_not_cut_words(read: Read, monkeypatch: pytest.MonkeyPatch) ->
     whole = logic(read(text, "a.vcd"))
     monkeypatch.setattr(body, "_BLOCK", 7)
     assert logic(read(text, "a.vcd")).times_s.tolist() == whole.times_s.tolist()
+
+
+BUS = (
+    "$timescale 1us $end\n$scope module bench $end\n$var wire 4 # bus [3:0] $end\n"
+    "$scope module mist $end\n$var wire 1 ! OUT $end\n$var wire 1 ! copy $end\n$upscope $end\n"
+    '$scope module vent $end\n$var wire 1 " OUT $end\n$upscope $end\n'
+    '$upscope $end\n$enddefinitions $end\n#0\nb0 #\n0!\n0"\n#1\nb11 #\n#2\nb101 #\n1!\n'
+    '#3\nbx #\n1"\n#9\n'
+)
+
+
+@pytest.mark.parametrize(
+    ("asked", "found"),
+    [
+        ("mist.OUT", "mist.OUT"),
+        ("bench.mist.OUT", "mist.OUT"),
+        ("bench.vent.OUT", "vent.OUT"),
+        ("copy", "mist.copy"),
+        ("bench.mist.copy", "mist.copy"),
+        ("bus[2]", "bus[2]"),
+        ("bench.bus[2]", "bus[2]"),
+        ("bus", "bus"),
+        ("bench.bus", "bench.bus"),
+    ],
+)
+def test_signal_is_found_by_path_and_by_short_name(read: Read, asked: str, found: str) -> None:
+    capture = read(BUS, "a.vcd", channel=asked)
+    assert capture.traces[find_channel(capture, asked)].channel == found
+
+
+@pytest.mark.parametrize("asked", ["OUT", "vent.copy", "bench.pump.OUT"])
+def test_name_that_fits_several_signals_or_none_is_refused(read: Read, asked: str) -> None:
+    with pytest.raises(UsageError):
+        find_channel(read(BUS, "a.vcd", channel=asked), asked)
+
+
+def test_vector_that_is_asked_for_is_a_staircase_of_its_value(read: Read) -> None:
+    capture = read(BUS, "a.vcd", channel="bus")
+    trace = capture.traces[find_channel(capture, "bus")]
+    assert isinstance(trace, Waveform)
+    values = np.concatenate(list(trace.samples.blocks()))
+    assert values.tolist() == pytest.approx([0, 3, 5] + [np.nan] * 3, nan_ok=True)
+    assert codes_of(capture) == ["assumed-volts"]
+
+
+def test_two_signals_of_one_name_are_told_apart(read: Read) -> None:
+    text = HEAD.replace("$upscope", '$var wire 1 " OUT $end\n$upscope')
+    capture = read(text + '#0\n0!\n0"\n#10\n1!\n#20\n1"\n#30\n', "a.vcd")
+    assert [trace.channel for trace in capture.traces] == ["OUT (1)", "OUT (2)"]
+
+
+def test_ports_of_an_extended_dump_give_their_states(read: Read) -> None:
+    # IEEE 1364-2005, 18.4.3: states, strength of 0, strength of 1, code
+    text = (
+        "$timescale 1 ns $end\n$scope module bench $end\n$var port 1 <0 OUT $end\n"
+        "$var port [1:0] <1 D $end\n$upscope $end\n$enddefinitions $end\n#0\n$dumpports\n"
+        "pD 6 0 <0\npLU 66 00 <1\n$end\n#5\npU 0 6 <0\npHX 66 00 <1\n#9\npD 6 0 <0\n"
+        "$vcdclose #12 $end\n"
+    )
+    capture = read(text, "a.evcd")
+    assert [trace.channel for trace in capture.traces] == ["OUT", "D[1]", "D[0]"]
+    assert logic(capture).times_s == pytest.approx([5e-9, 9e-9])
+    assert logic(capture).spans[0].end_s == pytest.approx(12e-9)
+    assert logic(capture, 1).times_s == pytest.approx([5e-9])
+    assert logic(capture, 2).spans[0].end_s == pytest.approx(5e-9)
+
+
+def test_declarations_without_an_end_are_read_and_said(read: Read) -> None:
+    text = HEAD.replace("$enddefinitions $end\n", "") + "#0\n0!\n#10\n1!\n#20\n"
+    capture = read(text, "a.vcd")
+    assert logic(capture).times_s == pytest.approx([10e-6])
+    assert codes_of(capture) == ["declarations-unended"]
+
+
+@pytest.mark.parametrize("start", [2**53 + 1, 2**62 + 3, 2**70 + 1])
+def test_counts_beyond_the_whole_numbers_of_a_float_are_exact(read: Read, start: int) -> None:
+    text = HEAD + f"#{start}\n0!\n#{start + 3}\n1!\n#{start + 10}\n0!\n#{start + 20}\n1!\n"
+    assert logic(read(text, "a.vcd")).times_s == pytest.approx([3e-6, 10e-6, 20e-6], rel=1e-14)
+
+
+def test_given_time_unit_overrules_the_timescale(read: Read) -> None:
+    trace = logic(read(HEAD + "#0\n0!\n#10\n1!\n#20\n", "a.vcd", time_unit="ns"))
+    assert trace.times_s == pytest.approx([10e-9])
+
+
+def test_zeros_of_a_power_loss_behind_the_changes_are_left_out(read: Read) -> None:
+    trace = logic(read(HEAD + "#0\n0!\n#10\n1!\n#20\n0!\n" + "\0" * (6 << 20), "a.vcd"))
+    assert trace.times_s == pytest.approx([10e-6, 20e-6])
+
+
+def test_code_that_may_have_been_meant_to_go_on_is_not_taken(read: Read) -> None:
+    text = HEAD.replace("$upscope", "$var wire 1 !! two $end\n$upscope")
+    capture = read(text + "#0\n0!\n0!!\n#10\n1!!\n#20\n1!", "a.vcd")
+    assert logic(capture).times_s.size == 0
+    assert codes_of(capture) == ["file-cut"]
+
+
+def test_dump_switched_off_is_a_gap_of_a_real(read: Read) -> None:
+    text = (
+        "$timescale 1us $end $var real 64 ! NODE $end $enddefinitions $end\n#0\nr0 !\n#1\n"
+        "r1.5 !\n#3\nr3 !\n#4\n$dumpoff $end\n#9\n$dumpon r2 ! $end\n#12\n"
+    )
+    trace = read(text, "a.vcd").traces[0]
+    assert isinstance(trace, Waveform)
+    values = np.concatenate(list(trace.samples.blocks())).tolist()
+    assert values == pytest.approx([0, 1.5, 1.5, 3, np.nan, np.nan, 2, 2, 2], nan_ok=True)

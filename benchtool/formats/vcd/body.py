@@ -1,218 +1,95 @@
-"""Value changes of a dump (IEEE 1364-2005, 18.2.1), walked in blocks."""
+"""Value changes of a dump (IEEE 1364-2005, 18.2.1), walked in blocks.
+
+A block in which every word is of the common kinds is taken by whole-array arithmetic; any other,
+and any in which something is wrong, word by word, which is where the rules stand.
+"""
 
 from __future__ import annotations
 
-from array import array
-from collections.abc import Iterator
-from dataclasses import dataclass, field
+from typing import BinaryIO
 
 from benchtool.errors import MalformedCaptureError
 from benchtool.formats.content import Content
+from benchtool.formats.vcd.blocks import BlockWalk
+from benchtool.formats.vcd.changes import Body
+from benchtool.formats.vcd.splitting import PAD, TAIL
+from benchtool.formats.vcd.words import WordWalk
+from benchtool.model.watching import tell
 
-_BLOCK = 1 << 18
-_STATES = {48: 0, 49: 1, 120: -1, 88: -1, 122: -1, 90: -1}  # 0 1 x X z Z
-_BIT = {"0": 0, "1": 1}
-_HASH, _DOLLAR, _B, _b, _R, _r, _S, _s = b"#$BbRrSs"
-
-
-@dataclass(slots=True)
-class Changes:
-    """The changes of one scalar, or of one bit of a vector: time counts and states."""
-
-    times: array[int] = field(default_factory=lambda: array("q"))
-    states: array[int] = field(default_factory=lambda: array("b"))
+_BLOCK = 1 << 19
+_LONGEST_WORD = 1 << 22
+_SPACES = (b"\n", b"\r", b" ", b"\t", b"\v", b"\f")
 
 
-@dataclass(slots=True)
-class RealChanges:
-    """The changes of one real."""
-
-    times: array[int] = field(default_factory=lambda: array("q"))
-    values: array[float] = field(default_factory=lambda: array("d"))
-
-
-@dataclass(slots=True)
-class Body:
-    """All changes of the wanted variables.
-
-    Attributes:
-        bits: Code to the changes of each bit, most significant first.
-        reals: Code to the changes of a real.
-        start: First time of the dump, None where it has none.
-        end: Last time of the dump.
-        cut: The words that a cut file ends in, if it does.
-    """
-
-    bits: dict[bytes, list[Changes]]
-    reals: dict[bytes, RealChanges]
-    start: int | None = None
-    end: int = 0
-    cut: str = ""
-
-
-def read_body(content: Content, offset: int, body: Body, known: set[bytes]) -> None:
+def read_body(content: Content, offset: int, body: Body) -> None:
     """Walk the value changes from byte ``offset`` on and fill ``body``.
 
     Args:
         content: The file.
         offset: Where the changes begin.
         body: Its dictionaries name the wanted variables.
-        known: Codes of all declared variables.
 
     Raises:
         MalformedCaptureError: If times run backwards or a word is no value change.
     """
-    walk = _Walk(body, known, content.source)
-    for words, last in _words(content, offset):
-        walk.take(words, last=last)
-    body.start = walk.start
-    body.end = walk.time
-
-
-def _words(content: Content, offset: int) -> Iterator[tuple[list[bytes], bool]]:
-    """Yield whole words block by block, and whether the last may be cut."""
-    rest = b""
+    words, blocks = WordWalk(body), BlockWalk(body)
     with content.open() as file:
         file.seek(offset)
-        while block := file.read(_BLOCK):
-            data = rest + block
-            at = max(data.rfind(b"\n"), data.rfind(b"\r")) + 1
-            rest = data[at:]
-            if at:
-                yield data[:at].split(), False
-    yield rest.rstrip(b"\0").split(), True
+        rest = _walk(file, content.size - offset, words, blocks)
+    final = rest.rstrip(b"\0").split()
+    if final and _may_be_cut(final[-1], rest, body.known):
+        words.take(final[:-1], last=True)
+        body.cut = body.cut or final[-1].decode("latin-1")
+    else:
+        words.take(final, last=True)
 
 
-class _Walk:
-    """State of the walk: current time, and what an open word still needs."""
-
-    def __init__(self, body: Body, known: set[bytes], source: str) -> None:
-        self.body, self.known, self.source = body, known, source
-        self.time = 0
-        self.start: int | None = None
-        self._vector: bytes | None = None
-        self._comment = False
-        self._scalars = {code: bits[0] for code, bits in body.bits.items() if len(bits) == 1}
-
-    def take(self, words: list[bytes], *, last: bool) -> None:
-        """Take the words of a block."""
-        scalars, states = self._scalars, _STATES
-        for word in words:
-            first = word[0]
-            if self._vector is None and not self._comment and first in states:
-                changes = scalars.get(word[1:])
-                if changes is not None:
-                    changes.times.append(self.time)
-                    changes.states.append(states[first])
-                    continue
-            try:
-                self._other(word, first)
-            except _DamagedError:
-                if last:
-                    self.body.cut = word.decode("latin-1")
-                    return
-                raise self._damage(word) from None
-        if last and self._vector is not None:
-            self.body.cut = self._vector.decode("latin-1")
-
-    def _other(self, word: bytes, first: int) -> None:
-        """Take a word that is no change of a wanted scalar."""
-        if self._comment:
-            self._comment = word != b"$end"
-        elif self._vector is not None:
-            vector, self._vector = self._vector, None
-            self._take_vector(vector, word)
-        elif first == _HASH:
-            self._take_time(word)
-        elif first in (_B, _b, _R, _r, _S, _s):
-            self._vector = word
-        elif first == _DOLLAR:
-            self._keyword(word)
-        elif first not in _STATES or (word[1:] not in self.known):
-            raise _DamagedError
-
-    def _take_time(self, word: bytes) -> None:
-        if not word[1:].isdigit():
-            raise _DamagedError
-        time = int(word[1:])
-        if time < self.time and self.start is not None:
-            raise _DamagedError
-        self.time = time
-        if self.start is None:
-            self.start = time
-            self._move_start()
-
-    def _move_start(self) -> None:
-        """Values before the first time stand at that time."""
-        bits = [changes for row in self.body.bits.values() for changes in row]
-        for times in [c.times for c in bits] + [c.times for c in self.body.reals.values()]:
-            for i in range(len(times)):
-                times[i] = self.time
-
-    def _keyword(self, word: bytes) -> None:
-        if word == b"$comment":
-            self._comment = True
-        elif word == b"$dumpoff":
-            self._forget()
-        elif word not in (b"$end", b"$dumpon", b"$dumpall", b"$dumpvars"):
-            raise _DamagedError
-
-    def _forget(self) -> None:
-        """Nothing is known of any variable from here on."""
-        for bits in self.body.bits.values():
-            for changes in bits:
-                changes.times.append(self.time)
-                changes.states.append(-1)
-
-    def _take_vector(self, value: bytes, code: bytes) -> None:
-        if code not in self.known:
-            raise _DamagedError
-        kind = value[0]
-        if kind in (_R, _r):
-            real = self.body.reals.get(code)
-            if real is not None:
-                real.times.append(self.time)
-                real.values.append(_real(value))
-            return
-        bits = self.body.bits.get(code)
-        if bits is None or kind in (_S, _s):
-            return
-        for changes, digit in zip(
-            bits, extended(value[1:].decode("latin-1"), len(bits)), strict=True
-        ):
-            changes.times.append(self.time)
-            changes.states.append(_BIT.get(digit, -1))
-
-    def _damage(self, word: bytes) -> MalformedCaptureError:
-        backwards = word[:1] == b"#" and word[1:].isdigit()
-        what = "time runs backwards at" if backwards else "no value change:"
-        return MalformedCaptureError(
-            f"{self.source} is damaged, {what} {word[:30].decode('latin-1')!r} "
-            f"(after time {self.time})",
-            hint="Save the capture again.",
-            path=self.source,
-            code="time-disorder" if backwards else None,
-        )
+def _walk(file: BinaryIO, n_bytes: int, words: WordWalk, blocks: BlockWalk) -> bytes:
+    """Take the words of the next bytes; return what is left over, which may be cut."""
+    rest, total = b"", n_bytes
+    while block := file.read(min(_BLOCK, n_bytes)):
+        n_bytes -= len(block)
+        tell("reading", total - n_bytes, total)
+        taken = None
+        if not words.in_comment and b"\0" not in block:
+            data = b"".join((PAD, rest, block, TAIL))
+            taken = blocks.take(data)
+        if taken is None:
+            rest = _take_words(rest + block, words)
+        else:
+            rest = data[len(PAD) + taken : -len(TAIL)]
+    return rest
 
 
-class _DamagedError(Exception):
-    """A word that fits nowhere."""
+def _take_words(data: bytes, words: WordWalk) -> bytes:
+    """Take the whole words of a block one by one; return what is left over."""
+    if len(data) > _LONGEST_WORD:
+        data = _without_zeros(data, words.body.source)
+    at = 1 + max(data.rfind(space) for space in _SPACES)
+    left = words.take(data[:at].replace(b"\0", b"").split())
+    return b"".join(word + b"\n" for word in left) + data[at:]
 
 
-def _real(value: bytes) -> float:
-    try:
-        return float(value[1:])
-    except ValueError:
-        raise _DamagedError from None
+def _without_zeros(data: bytes, source: str) -> bytes:
+    """Return a long piece without its zero bytes.
 
-
-def extended(digits: str, width: int) -> str:
-    """Return a vector value in full width.
-
-    References:
-        IEEE 1364-2005, table 18-1: a shorter value is extended on the left with 0 where it
-        begins with 0 or 1, else with its first digit.
+    Raises:
+        MalformedCaptureError: If it is one word of endless length.
     """
-    digits = digits.lower()
-    fill = digits[:1] if digits[:1] in ("x", "z") else "0"
-    return digits.rjust(width, fill)[-width:]
+    kept = data.replace(b"\0", b"")
+    if len(kept) <= _LONGEST_WORD or len(kept.split(None, 1)) > 1:
+        return kept
+    raise MalformedCaptureError(
+        f"{source} is damaged: a word of more than {_LONGEST_WORD} bytes begins with "
+        f"{data[:20].decode('latin-1')!r}",
+        hint="Save the capture again.",
+        path=source,
+    )
+
+
+def _may_be_cut(word: bytes, rest: bytes, known: frozenset[bytes]) -> bool:
+    """Whether the file ends in a word whose code may have been meant to go on."""
+    code = word[1:] if word[0] in b"01xXzZ" else b""
+    if not code or rest[-1:].isspace() or code not in known:
+        return False
+    return any(other != code and other.startswith(code) for other in known)

@@ -6,11 +6,13 @@ from benchtool.formats.claim import Claim, Format
 from benchtool.formats.content import Content
 from benchtool.model.capture import Capture, ReadOptions
 
+_MARKS = (b"RIFF", b"RIFX", b"RF64", b"BW64")
+
 
 def sniff(head: bytes, suffix: str) -> Claim:
     """Claim by magic bytes."""
     del suffix
-    return Claim.YES if head[:4] == b"RIFF" and head[8:12] == b"WAVE" else Claim.NO
+    return Claim.YES if head[:4] in _MARKS and head[8:12] == b"WAVE" else Claim.NO
 
 
 def _read(content: Content, options: ReadOptions) -> Capture:
