@@ -14,61 +14,16 @@ from itertools import pairwise
 import numpy as np
 
 from benchtool.errors import MalformedCaptureError
-from benchtool.frozen import frozen_record
-from benchtool.model.arrays import FloatArray, NDArray, middle
+from benchtool.formats.steps import Steps
+from benchtool.model.arrays import FloatArray, NDArray
 
-_EVEN_SHARE = 0.8  # of the first steps must agree for the column to count as even
 _SLACK = 0.01  # of a step: stamps that near to the grid lose nothing by being put on it
 _RESTART = 0.05  # a step back into this part of the segment is a restart
 _MOST_BACKWARDS = 0.05  # of all rows
+_LEAST_DIGITS = 3  # that a piece spans: the step of a grid of fewer is as good as unknown
 _HELD = 2  # rows kept back, so that a backward step is judged with its neighbours in sight
 
 IntArray = NDArray[np.int64]
-
-
-@frozen_record(eq=False)
-class Steps:
-    """What the first stamps of a column say of its steps, in the column's own unit.
-
-    Attributes:
-        typical: Median step.
-        resolution: Last printed digit.
-        even: Whether the steps agree to within the printed digits.
-    """
-
-    typical: float
-    resolution: float
-    even: bool
-
-    @property
-    def coarse(self) -> bool:
-        """Whether the digits are too few to tell neighbouring stamps apart."""
-        return self.typical < 1.5 * self.resolution
-
-    @property
-    def gap(self) -> float:
-        """The step above which rows are missing."""
-        return max(1.5 * self.typical, self.typical + 1.5 * self.resolution)
-
-
-def examine_steps(stamps: FloatArray, resolution: float) -> Steps:
-    """Look at the first stamps of a column.
-
-    Args:
-        stamps: The first rows, shape (n,), NaN allowed.
-        resolution: Last printed digit in the same unit, 0 where unknown.
-    """
-    steps = np.diff(stamps[np.isfinite(stamps)])
-    steps = steps[steps >= 0]
-    if steps.size == 0:
-        return Steps(typical=0.0, resolution=resolution, even=False)
-    moving = steps if 2 * np.count_nonzero(steps) < steps.size else steps[steps > 0]
-    typical = middle(moving)
-    if typical < 1.5 * resolution:
-        typical = middle(steps)
-    near = np.abs(steps - typical) <= 1.01 * resolution + 0.02 * typical
-    even = typical + resolution > 0 and np.count_nonzero(near) >= _EVEN_SHARE * steps.size
-    return Steps(typical=typical, resolution=resolution, even=bool(even))
 
 
 @dataclass(slots=True)
@@ -123,6 +78,8 @@ class ClockScan:
 
     def feed(self, stamps: FloatArray) -> None:
         """Take the next stamps, NaN where a row has none."""
+        if self._runs_on(stamps):
+            return
         readable = np.isfinite(stamps)
         rows = np.arange(self._n_fed, self._n_fed + stamps.size)
         self._n_fed += stamps.size
@@ -133,6 +90,22 @@ class ClockScan:
         self._held_rows, self._held = rows[cut:], stamps[cut:]
         self._take(rows[:cut], stamps[:cut], self._held)
 
+    def _runs_on(self, stamps: FloatArray) -> bool:
+        """Take stamps that only go on, without a hole; say whether they do."""
+        if not self.steps.even or self._last is None or stamps.size < _HELD:
+            return False
+        run = np.concatenate([[self._last], self._held, stamps])
+        steps = np.diff(run)
+        if not (steps.min() > 0 and steps.max() <= self.steps.gap):  # NaN is neither
+            return False
+        self._n_fed += stamps.size
+        self._held_rows, self._held = np.arange(self._n_fed - _HELD, self._n_fed), run[-_HELD:]
+        taken = run[1:-_HELD]
+        self._extend(taken, opens=False, restarts=False)
+        self._last = float(taken[-1])
+        self._peak = max(self._peak, self._last)
+        return True
+
     def finish(self) -> None:
         """Take what was held back.
 
@@ -140,7 +113,10 @@ class ClockScan:
             MalformedCaptureError: If more than a few rows step backwards.
         """
         self._take(self._held_rows, self._held, np.empty(0))
-        if self.n_backwards > max(_MOST_BACKWARDS * self._n_fed, 1):
+        n_restarts = sum(piece.restarts for piece in self.pieces)
+        if self.n_backwards > max(_MOST_BACKWARDS * self._n_fed, 1) or (
+            2 * n_restarts > max(2, self._n_kept)
+        ):
             raise self._disorder()
 
     def _drop(self, rows: IntArray) -> int:
@@ -245,7 +221,7 @@ class ClockScan:
     def _disorder(self) -> MalformedCaptureError:
         return MalformedCaptureError(
             f"the time column of {self._source} runs backwards in too many rows",
-            hint="Sort the rows by time, or delete the time column and give --interval.",
+            hint="Sort the rows by time, or count them with --time none and --interval.",
             path=self._source,
             code="time-disorder",
         )
@@ -266,6 +242,8 @@ class ClockScan:
         """Whether all stamps lie on an even grid to within the printed digits."""
         step = self.mean_step
         if not (self.steps.even and step > 0):
+            return False
+        if self.steps.coarse and self.longest < _LEAST_DIGITS * self.steps.resolution:
             return False
         largest = max(max(abs(p.first_t), abs(p.last_t)) for p in self.pieces)
         near = max(1.05 * self.steps.resolution, _SLACK * step) + 8 * math.ulp(largest)

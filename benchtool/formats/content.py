@@ -1,12 +1,11 @@
 """The edge to the file system: opening a file, hashing it and peeling its gz shell.
 
-Nothing else in this room opens a file by name. What comes out is a ``Content``: the bytes of
+Nothing else in this room opens a capture by name. What comes out is a ``Content``: the bytes of
 the capture itself, in memory where they are few, on disk otherwise.
 """
 
 from __future__ import annotations
 
-import contextlib
 import errno
 import hashlib
 import io
@@ -15,19 +14,21 @@ import sys
 from collections.abc import Iterator
 from dataclasses import field, replace
 from pathlib import Path
-from typing import BinaryIO, Protocol
+from typing import TYPE_CHECKING, BinaryIO
 
 from benchtool.errors import InputError, MalformedCaptureError
 from benchtool.formats.spool import Spool
 from benchtool.frozen import frozen_record
-from benchtool.model.capture import StructurePoint
+from benchtool.model.capture import Capture, StructurePoint
 from benchtool.model.quantity import Notice
+
+if TYPE_CHECKING:
+    from benchtool.formats.hashing import Hashing
 
 HEAD_BYTES = 1 << 16
 IN_MEMORY_BYTES = 32 << 20
 _CHUNK = 1 << 20
-_GZ_CHUNK = 1 << 16  # one chunk may swell a thousandfold
-_GZ_MAGIC = b"\x1f\x8b\x08"
+GZ_MAGIC = b"\x1f\x8b\x08"
 
 
 @frozen_record(eq=False)
@@ -37,12 +38,14 @@ class Content:
     Attributes:
         source: File name as given, or ``-``.
         suffix: Suffix in lower case with its dot, ``.gz`` taken off.
-        sha256: Of the bytes as stored, before peeling.
+        sha256: Of the bytes as stored, before peeling; empty while ``hashing`` goes on.
         size: Number of bytes after peeling.
+        stored: Number of bytes before it, where the file is large.
         data: The bytes, where they are few.
         path: The file that holds them, where they are many.
         warnings: What was seen on the way here.
         structure: What was found about the outer structure.
+        hashing: The hash of a large file, being taken meanwhile.
     """
 
     source: str
@@ -53,6 +56,8 @@ class Content:
     path: Path | None = None
     warnings: tuple[Notice, ...] = ()
     structure: tuple[StructurePoint, ...] = ()
+    stored: int = 0
+    hashing: Hashing | None = None
 
     def open(self) -> BinaryIO:
         """Open the bytes for reading; the caller closes."""
@@ -63,19 +68,49 @@ class Content:
     def head(self, n_bytes: int = HEAD_BYTES) -> bytes:
         """Return the first bytes."""
         with self.open() as file:
-            return file.read(n_bytes)
+            return file.read(min(n_bytes, self.size))
 
     def tail(self, n_bytes: int = HEAD_BYTES) -> bytes:
         """Return the last bytes."""
         with self.open() as file:
             file.seek(max(0, self.size - n_bytes))
-            return file.read()
+            return file.read(min(n_bytes, self.size))
 
     def chunks(self, n_bytes: int = _CHUNK) -> Iterator[bytes]:
         """Yield the bytes in pieces."""
+        left = self.size
         with self.open() as file:
-            while chunk := file.read(n_bytes):
+            while left and (chunk := file.read(min(n_bytes, left))):
+                left -= len(chunk)
                 yield chunk
+
+    def settled(self, capture: Capture) -> Capture:
+        """Return a capture that was read from here, with its hash, and what is said of both.
+
+        Raises:
+            InputError: If the file could not be read to its end.
+        """
+        if self.hashing is None:
+            return capture
+        try:
+            origin = replace(capture.origin, sha256=self.hashing.finish())
+        except OSError as error:
+            raise input_error(error, self.source) from error
+        return replace(capture, origin=origin, warnings=(*self._growth(), *capture.warnings))
+
+    def _growth(self) -> tuple[Notice, ...]:
+        """Say that the file grew meanwhile, if it did."""
+        try:
+            more = Path(self.source).stat().st_size - self.stored
+        except OSError:
+            return ()
+        if more <= 0:
+            return ()
+        text = (
+            f"{self.source} grew by {more} bytes while it was read; the {self.stored} bytes that "
+            "it had at first were read"
+        )
+        return (Notice(code="file-grew", text=text),)
 
 
 def open_content(source: str | Path, in_memory_bytes: int = IN_MEMORY_BYTES) -> Content:
@@ -100,9 +135,11 @@ def open_content(source: str | Path, in_memory_bytes: int = IN_MEMORY_BYTES) -> 
             path=stored.source,
             code="empty-file",
         )
-    if stored.head(3) != _GZ_MAGIC:
+    if stored.head(3) != GZ_MAGIC:
         return stored
-    return _peel_gz(stored, in_memory_bytes)
+    from benchtool.formats.peeling import peel_gz
+
+    return peel_gz(stored, in_memory_bytes)
 
 
 def input_error(error: OSError, source: str) -> InputError:
@@ -145,9 +182,17 @@ def _open_stored(source: str, limit: int) -> Content:
             return _spool(file, source, limit)
         if status.st_size <= limit:
             return _in_memory(file.read(), source)
-        digest = hashlib.file_digest(file, "sha256").hexdigest()
+    from benchtool.formats.hashing import Hashing
+
+    size = status.st_size
     return Content(
-        source=source, suffix=_suffix(source), sha256=digest, size=status.st_size, path=path
+        source=source,
+        suffix=_suffix(source),
+        sha256="",
+        size=size,
+        path=path,
+        stored=size,
+        hashing=Hashing(path, size),
     )
 
 
@@ -175,71 +220,3 @@ def _spool(stream: BinaryIO, source: str, limit: int) -> Content:
 def _suffix(source: str) -> str:
     name = source.lower().removesuffix(".gz")
     return Path(name).suffix
-
-
-def _peel_gz(stored: Content, limit: int) -> Content:
-    """Decompress, keeping what can be had of a cut or damaged file."""
-    spool = Spool(limit)
-    notice = _inflate(stored, spool)
-    data, path = spool.finish()
-    if spool.size == 0:
-        raise MalformedCaptureError(
-            f"{stored.source} is a gz file that holds nothing readable",
-            hint="Copy or download the file again.",
-            path=stored.source,
-            code="empty-file",
-        )
-    point = StructurePoint(name="compression", value="gz", evidence="magic bytes 1f 8b")
-    warnings = () if notice is None else (notice,)
-    return replace(
-        stored, data=data, path=path, size=spool.size, warnings=warnings, structure=(point,)
-    )
-
-
-def _inflate(stored: Content, spool: Spool) -> Notice | None:
-    """Write the members of a gz file to ``spool``; return what was wrong with it."""
-    import zlib
-
-    inflater = zlib.decompressobj(wbits=31)
-    for chunk in stored.chunks(_GZ_CHUNK):
-        rest = chunk
-        while rest:
-            before = inflater.copy()
-            try:
-                spool.write(inflater.decompress(rest))
-            except zlib.error as error:
-                _salvage(before, rest, spool)
-                return _damaged(stored, str(error), spool.size)
-            rest = inflater.unused_data
-            if not inflater.eof or not rest:
-                break
-            if not rest.startswith(_GZ_MAGIC[: len(rest)]):
-                return None  # padding after the last member
-            inflater = zlib.decompressobj(wbits=31)
-    if inflater.eof:
-        return None
-    return Notice(
-        code="file-cut",
-        text=f"{stored.source} ends inside its gz shell; the first {spool.size} bytes were read",
-    )
-
-
-def _salvage(inflater: _Inflater, chunk: bytes, spool: Spool) -> None:
-    """Take byte by byte what comes before the damage."""
-    import zlib
-
-    with contextlib.suppress(zlib.error):
-        for i in range(len(chunk)):
-            spool.write(inflater.decompress(chunk[i : i + 1]))
-
-
-class _Inflater(Protocol):
-    def decompress(self, data: bytes, /) -> bytes: ...
-
-
-def _damaged(stored: Content, reason: str, n_bytes: int) -> Notice:
-    return Notice(
-        code="gz-damaged",
-        text=f"the gz shell of {stored.source} is damaged ({reason}); "
-        f"the first {n_bytes} bytes were read",
-    )

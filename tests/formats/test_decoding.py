@@ -12,7 +12,7 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 from read_back import Read, codes_of, values_of
 
-from benchtool.formats import read_capture
+from benchtool.formats import read_capture, spool
 from benchtool.formats.text import walking
 from benchtool.formats.text.walking import TextSamples
 from benchtool.model.capture import ArraySamples, Waveform
@@ -155,6 +155,7 @@ def test_reading_a_file_in_blocks_holds_no_table(
     tmp_path: Path, monkeypatch: pytest.MonkeyPatch
 ) -> None:
     monkeypatch.setattr(walking, "BLOCK_BYTES", 1 << 14)
+    monkeypatch.setattr(spool, "COLUMNS_IN_MEMORY_BYTES", 1 << 16)
     big_table(tmp_path / "a.csv", 60_000)
     read_capture(tmp_path / "a.csv", in_memory_bytes=0)  # imports are not counted
     tracemalloc.start()

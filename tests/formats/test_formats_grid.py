@@ -8,8 +8,9 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from benchtool.errors import MalformedCaptureError
-from benchtool.formats.clock import ClockScan, examine_steps
+from benchtool.formats.clock import ClockScan
 from benchtool.formats.grid import code_step, greatest_common_spacing, value_step
+from benchtool.formats.steps import examine_steps
 
 
 @pytest.mark.parametrize(
@@ -98,3 +99,15 @@ def test_noise_for_time_is_refused() -> None:
     with pytest.raises(MalformedCaptureError) as caught:
         scan(np.random.default_rng(1).uniform(0, 1, 5000), 1e-6, [700] * 7)
     assert caught.value.code == "time-disorder"
+
+
+@pytest.mark.parametrize("sizes", [[], [150], [50, 50, 50, 50, 50, 50]])
+@pytest.mark.parametrize("back", [1, 170])
+def test_a_step_that_is_never_caught_up_is_seen_in_any_block(sizes: list[int], back: int) -> None:
+    """A row written twice, or a segment that begins again: no later step is too long."""
+    stamps = np.arange(300.0)
+    stamps[170:] -= back
+    clock = scan(stamps, 1e-3, sizes)
+    assert clock.dropped.tolist() == ([170] if back == 1 else [])
+    assert clock.n_repeated == (1 if back == 1 else 0)
+    assert [piece.restarts for piece in clock.pieces] == ([False] if back == 1 else [False, True])

@@ -6,24 +6,33 @@ import math
 import re
 from typing import Literal
 
-Kind = Literal["N", "S", "W", "M", "E", "T"]
-"""Number, stamp, state word, mark of a missing value, empty, other text."""
+from benchtool.formats.magnitudes import in_range
 
+Kind = Literal["N", "S", "W", "H", "L", "M", "E", "T"]
+"""Number, stamp, state word, word of bits, label, mark of a missing value, empty, other text."""
+
+_LONG_STAMP = 14  # digits of a day and a time of day run together
 _EXPONENT = r"(?:[eEdD][+-]?\d+)?"
-_POINT = re.compile(rf"[+-]?(?:\d+\.?\d*|\.\d+){_EXPONENT}")
-_COMMA = re.compile(rf"[+-]?(?:\d+,?\d*|,\d+){_EXPONENT}")
+_POINT = re.compile(rf"[+-]?(?:\d+(?:\.\d*)?|\.\d+){_EXPONENT}")  # \d+\.?\d* takes n² steps
+_COMMA = re.compile(rf"[+-]?(?:\d+(?:,\d*)?|,\d+){_EXPONENT}")
 _GROUPED_BY_COMMA = re.compile(r"[+-]?[1-9]\d{0,2}(?:,\d{3})+(?:\.\d*)?")
 _GROUPED_BY_POINT = re.compile(r"[+-]?[1-9]\d{0,2}(?:\.\d{3})+(?:,\d*)?")
 _GROUPED = re.compile(r"[+-]?[1-9]\d{0,2}(?:,\d{3})+")
 _BLANKS = " \u00a0\u202f'’"  # that part thousands where neither comma nor point does
 _SPACED = re.compile(rf"[+-]?\d{{1,3}}(?:[{_BLANKS}]\d{{3}})+(?:[.,]\d*)?")
 _DROP_BLANKS = str.maketrans("", "", _BLANKS)
+_MONTH = r"(?:[jJ]an|[fF]eb|[mM]ar|[aA]pr|[mM]ay|[jJ]u[nl]|[aA]ug|[sS]ep|[oO]ct|[nN]ov|[dD]ec)"
+_BASIC = r"(?:19|20)\d{2}[01]\d[0-3]\d[T _-]?[0-2]\d[0-5]\d[0-5]\d"
+_LONG_DATE = rf"{_BASIC}(?:\.\d+)?"
 _DATE = r"(?:\d{4}[-/.]\d{1,2}[-/.]\d{1,2}|\d{1,2}[-/.]\d{1,2}[-/.](?:\d{4}|\d{2}))"
-_CLOCK = r"\d{1,4}:\d{2}(?::\d{2})?(?:[.,]\d+)?(?: ?[aApP][mM])?"
+_DATE = rf"(?:{_DATE}|\d{{1,2}}[- ]{_MONTH}[- ]\d{{4}})"
+_CLOCK = r"\d{1,4}:\d{2}(?::\d{2}(?::\d{3})?)?(?:[.,]\d+)?(?: ?[aApP][mM])?"
 _ZONE = r"(?: ?Z| ?[+-]\d{2}:?\d{2}| ?UTC)?"
 _STAMP = re.compile(
-    rf"{_DATE}(?:[T ]{_CLOCK}{_ZONE})?|{_CLOCK}{_ZONE}|\d{{8}}T\d{{6}}(?:[.,]\d+)?Z?"
+    rf"\[?(?:{_DATE}(?:[T ]{_CLOCK}{_ZONE})?|{_CLOCK}{_ZONE}|{_BASIC}(?:[.,]\d+)?Z?)\]?"
 )
+
+_BITS = re.compile(r"0[xX][0-9a-fA-F]{1,8}|0[bB][01]{1,32}|(?=.*\d)[0-9A-F]{2,8}h|[01]{2,32}b")
 
 _RISES = frozenset({"rising", "rise", "posedge", "up", "r", "↑", "0->1", "0→1"})
 _FALLS = frozenset({"falling", "fall", "negedge", "down", "f", "↓", "1->0", "1→0"})
@@ -35,7 +44,8 @@ _STATE_WORDS = (HIGH_WORDS | LOW_WORDS | UNKNOWN_WORDS) - {"0", "1"}
 _MISSING = frozenset(
     {"nan", "inf", "-inf", "+inf", "infinity", "-infinity", "-", "--", "---", "----", "n/a", "na",
      "#n/a", "null", "none", "nil", "*", "**", "***", "?", "overflow", "ovr", "-nan", "+nan",
-     "1.#inf", "-1.#inf", "1.#qnan", "-1.#ind", "#num!", "#div/0!", "missing", "invalid"}
+     "∞", "-∞", "+∞", "1.#inf", "-1.#inf", "1.#qnan", "-1.#ind", "#num!", "#div/0!", "missing",
+     "invalid"}
 )  # fmt: skip
 
 
@@ -44,13 +54,16 @@ def kind_of(cell: str, decimal: str) -> Kind:
     if not cell:
         return "E"
     if is_number(cell, decimal):
-        return "N"
+        long = len(cell) >= _LONG_STAMP and re.fullmatch(_LONG_DATE, cell)
+        return "S" if long and "." not in cell[:_LONG_STAMP] else "N"
     word = cell.lower()
     if word in _STATE_WORDS:
         return "W"
     if word in _MISSING:
         return "M"
-    return "S" if _STAMP.fullmatch(cell) else "T"
+    if _STAMP.fullmatch(cell):
+        return "S"
+    return "H" if _BITS.fullmatch(cell) else "T"
 
 
 def is_number(cell: str, decimal: str) -> bool:
@@ -76,7 +89,7 @@ def number(cell: str, decimal: str) -> float:
     text = cell.strip().strip('"').strip()
     if not text or not is_number(text, decimal):
         return math.nan
-    return float(plain(text, decimal))
+    return in_range(float(plain(text, decimal)))
 
 
 def plain(text: str, decimal: str) -> str:

@@ -8,7 +8,7 @@ from collections.abc import Sequence
 import numpy as np
 
 from benchtool.formats.text.cells import last_digit, number, significant_digits
-from benchtool.formats.text.columns import ClockColumn
+from benchtool.formats.text.column import ClockColumn
 from benchtool.formats.text.decoding import Convert, Wanted
 from benchtool.frozen import frozen_record
 from benchtool.model.arrays import FloatArray, middle
@@ -16,6 +16,7 @@ from benchtool.model.arrays import FloatArray, middle
 _FLOAT_DIGITS = 15  # more are not exact in a float
 _FINE = 1e-5  # of a step: how well a float must place a stamp
 _DAY_S = 86400.0
+_FEW_LEADING = 4  # cells of the leading decade that may all have lost their zeros
 _MOST_PLACES = 300  # a float has no finer digits
 
 
@@ -117,6 +118,10 @@ def printed_resolution(cells: Sequence[str], decimal: str) -> float:
     if not known:
         return 0.0
     largest = max(value for value, _ in known)
-    step = min(digit for value, digit in known if value >= largest / 10)
+    decade = 10.0 ** math.floor(math.log10(largest)) if largest > 0 else 0.0
+    leading = [digit for value, digit in known if value >= decade]
+    if len(leading) < _FEW_LEADING:
+        leading = [digit for value, digit in known if value >= largest / 10]
+    step = min(leading)
     step = max(-_MOST_PLACES, min(_MOST_PLACES, step))
     return 10.0**step if step > 0 else 1 / 10.0**-step

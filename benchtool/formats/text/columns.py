@@ -1,65 +1,34 @@
-"""Which column is time, which are running numbers, and which hold the channels."""
+"""Which columns are clocks, which are running numbers, and which hold the channels."""
 
 from __future__ import annotations
 
 import math
+from collections.abc import Iterable, Iterator
 from dataclasses import replace
-from typing import Literal
 
 import numpy as np
 
 from benchtool.formats.text import words
 from benchtool.formats.text.cells import Kind, number
+from benchtool.formats.text.clocks import (
+    advances,
+    clock_of_each,
+    clocks_by_values,
+    counts_by_one,
+    is_named_time,
+    named_clocks,
+    rival_clocks,
+    swept_axis,
+)
+from benchtool.formats.text.column import ClockColumn, Column
 from benchtool.formats.text.heading import Heading
 from benchtool.formats.text.layout import Layout
 from benchtool.formats.text.metadata import Stated
+from benchtool.formats.text.wordcells import is_bit_row, n_bits, names_bits
 from benchtool.frozen import frozen_record
-from benchtool.model.arrays import FloatArray
 
-ClockKind = Literal["number", "stamp", "index"]
-
-
-@frozen_record(eq=False)
-class Column:
-    """One field of the data rows.
-
-    Attributes:
-        field: Its index, from 0.
-        name: Name, unit taken off; empty where the file gives none.
-        unit: Unit as printed.
-        raw: Header cell as printed.
-        kind: What most of its cells are.
-        head: Its first values, NaN where no number.
-    """
-
-    field: int
-    name: str
-    unit: str
-    raw: str
-    kind: Kind
-    head: FloatArray
-
-    @property
-    def title(self) -> str:
-        """The name, or ``column 2`` where there is none."""
-        return self.name or f"column {self.field + 1}"
-
-
-@frozen_record(eq=False)
-class ClockColumn:
-    """A column that gives time.
-
-    Attributes:
-        column: The column.
-        kind: Numbers, calendar stamps, or a running number.
-        date: Field of the date, where date and time of day stand apart.
-        evidence: What it was recognised by.
-    """
-
-    column: Column
-    kind: ClockKind
-    evidence: str
-    date: int | None = None
+_MOST_CHANNELS = 32  # that the rows of one file are told apart by
+_DAYS = (19000101, 21001231)
 
 
 @frozen_record(eq=False)
@@ -72,6 +41,12 @@ class Columns:
         clock_of: Each channel's clock, None where rows count.
         intervals: Sample intervals that stand in columns of their own.
         disordered: Columns named for time that do not go forward.
+        axis: What the table is swept over, where that is no time; None where it is a capture.
+        key: The column that tells which channel a row is of.
+        dates: Days without a time of day.
+        edges: Whether the two clocks are the times of rising and of falling edges.
+        lasting: Whether the clock is how long each state lasted.
+        rivals: Clocks side by side that run over different spans.
     """
 
     clocks: tuple[ClockColumn, ...]
@@ -79,6 +54,12 @@ class Columns:
     clock_of: tuple[int | None, ...]
     intervals: tuple[Stated, ...] = ()
     disordered: tuple[str, ...] = ()
+    axis: Column | None = None
+    key: Column | None = None
+    dates: tuple[Column, ...] = ()
+    edges: bool = False
+    lasting: bool = False
+    rivals: tuple[tuple[Column, Column], ...] = ()
 
 
 def assign_columns(layout: Layout, heading: Heading, *, stated: bool, unit_given: bool) -> Columns:
@@ -90,48 +71,123 @@ def assign_columns(layout: Layout, heading: Heading, *, stated: bool, unit_given
         stated: Whether an interval or rate is known from metadata or options.
         unit_given: Whether the user names the unit of the time column.
     """
-    columns = _columns(layout, heading)
-    intervals, columns = _figures(columns, layout, heading)
+    intervals, columns = _figures(columns_of(layout, heading), layout, heading)
     stated = stated or bool(intervals)
-    columns = [c for c in columns if not _is_segment(c)]
-    disordered = tuple(c.title for c in columns if _is_named_time(c) and not _advances(c.head))
-    clocks = _named_clocks(columns)
+    key = next((c for c in columns if _is_key(c, layout)), None)
+    columns = [c for c in columns if c is not key and c.kind != "L" and not _is_segment(c)]
+    disordered = tuple(c.title for c in columns if is_named_time(c) and not advances(c.head))
+    clocks = named_clocks(columns, stated=stated)
     if not clocks and not disordered:
-        clocks = _unnamed_clocks(
-            columns, named=heading.is_named, stated=stated, unit_given=unit_given
-        )
-    clocks = _with_dates(clocks)
-    taken = {f for clock in clocks for f in (clock.column.field, clock.date)}
-    values = tuple(
-        c
-        for c in columns
-        if c.field not in taken
-        and c.kind in "NW"
-        and c.title not in disordered
-        and not _is_running(c, stated=stated or bool(clocks))
-    )
-    chosen, clock_of = _nearest(clocks, values)
+        named = heading.is_named
+        clocks = clocks_by_values(columns, named=named, stated=stated, unit_given=unit_given)
+    lengths = tuple(c for c in columns if _is_length(c))
+    rest = _channels(columns, clocks, {*disordered, *(c.title for c in lengths)})
+    rest = _without_running(rest, stated=stated or bool(clocks))
+    values = tuple(bit for c in rest for bit in _bits(c, layout))
+    listed = _listed(columns, clocks, values, lengths)
+    if listed is not None:
+        return replace(listed, intervals=intervals)
+    chosen, clock_of = clock_of_each(clocks, values)
     return Columns(
         clocks=chosen,
         values=values,
         clock_of=clock_of,
         intervals=intervals,
         disordered=disordered,
+        axis=None if clocks else swept_axis(columns),
+        key=key,
+        dates=tuple(c for c in columns if c.date_only),
+        rivals=rival_clocks(clocks),
     )
 
 
-def _columns(layout: Layout, heading: Heading) -> list[Column]:
+def _listed(
+    columns: list[Column],
+    clocks: list[ClockColumn],
+    values: tuple[Column, ...],
+    lengths: tuple[Column, ...],
+) -> Columns | None:
+    """Return the columns of a list of transitions that gives no time beside a state, if any."""
+    if clocks and values:
+        return None
+    pair = edge_columns(columns)
+    if pair is None and not clocks and len(values) == 1:
+        return lasting_states(values[0], lengths)
+    return pair
+
+
+def edge_columns(columns: list[Column]) -> Columns | None:
+    """Return the two columns that hold the times of rising and of falling edges, if any."""
+    numbers = [c for c in columns if c.kind == "N" and not words.is_index_name(c.name)]
+    if len(numbers) != 2 or not all(_is_edge_time(c) for c in numbers):
+        return None
+    first, second = (c.head for c in numbers)
+    size = min(first.size, second.size)
+    order = np.ravel(np.column_stack([first[:size], second[:size]]))
+    order = order[np.isfinite(order)]
+    names = [words.edge_of(c.name) for c in numbers]
+    if names[0] == names[1] or order.size < 4 or not np.all(np.diff(order) > 0):
+        return None
+    pair = numbers if names[0] == "rise" else numbers[::-1]
+    clocks = tuple(
+        ClockColumn(column=c, kind="number", evidence=f"header {c.raw!r}: edges") for c in pair
+    )
+    return Columns(clocks=clocks, values=(), clock_of=(), edges=True)
+
+
+def _is_edge_time(column: Column) -> bool:
+    timed = words.time_unit(column.unit) is not None or words.is_time_name(column.name)
+    return bool(words.edge_of(column.name)) and timed
+
+
+def lasting_states(value: Column, lengths: tuple[Column, ...]) -> Columns | None:
+    """Return the columns of a list of states and how long each lasted, if they are one."""
+    told = value.head[np.isfinite(value.head)]
+    states = value.kind == "W" or (told.size > 2 and set(told.tolist()) == {0.0, 1.0})
+    if len(lengths) != 1 or not states or not words.is_lasting(lengths[0].name):
+        return None
+    evidence = f"header {lengths[0].raw!r}: how long each state lasted"
+    clock = ClockColumn(column=lengths[0], kind="number", evidence=evidence)
+    return Columns(clocks=(clock,), values=(value,), clock_of=(0,), lasting=True)
+
+
+def columns_of(layout: Layout, heading: Heading) -> list[Column]:
+    """Return the fields that hold data, with their names."""
     return [
         Column(
             field=i,
             name=heading.names[i],
             unit=heading.units[i],
             raw=heading.raw[i],
-            kind=layout.kinds[i],
+            kind=_kind_of([row[i] for row in layout.rows], layout.kinds[i]),
             head=np.array([number(row[i], layout.decimal) for row in layout.rows]),
+            date_only=_is_date_only([row[i] for row in layout.rows], layout.kinds[i]),
         )
-        for i in layout.fields
+        for i, kind in enumerate(layout.kinds)
+        if kind in "NSWHL"
     ]
+
+
+def _kind_of(cells: list[str], kind: Kind) -> Kind:
+    """Return the kind of a column as a whole: ``0101`` and ``0010`` are bits and no numbers."""
+    return "H" if kind == "N" and is_bit_row(cells) else kind
+
+
+def _is_date_only(cells: list[str], kind: str) -> bool:
+    """Say whether cells are days: ``2031-03-02``, or ``20310302`` as a number."""
+    told = [cell for cell in cells if cell]
+    if kind == "S":
+        return not any(":" in cell or "T" in cell or len(cell) > _LONGEST_DATE for cell in told)
+    return kind == "N" and bool(told) and all(_is_day(cell) for cell in told)
+
+
+_LONGEST_DATE = 10
+
+
+def _is_day(cell: str) -> bool:
+    if not (len(cell) == 8 and cell.isdigit() and _DAYS[0] <= int(cell) <= _DAYS[1]):
+        return False
+    return 1 <= int(cell[4:6]) <= 12 and 1 <= int(cell[6:]) <= 31
 
 
 def _figures(
@@ -168,129 +224,56 @@ def _is_segment(column: Column) -> bool:
     return words.is_segment_name(column.name) and not words.is_time_name(column.name)
 
 
+def _channels(
+    columns: list[Column], clocks: list[ClockColumn], others: set[str]
+) -> Iterator[Column]:
+    """Yield the columns that may be channels."""
+    taken = {f for clock in clocks for f in (clock.column.field, clock.date)}
+    for column in columns:
+        passed = column.field in taken or column.title in others or column.date_only
+        if column.kind in "NWH" and not passed:
+            yield column
+
+
+def _bits(column: Column, layout: Layout) -> Iterator[Column]:
+    """Yield a channel, or one for each bit of the words it holds."""
+    if column.kind != "H":
+        yield column
+        return
+    if names_bits(column.name):
+        cells = [row[column.field] for row in layout.rows]
+        for bit in range(n_bits(cells)):
+            yield replace(column, bit=bit)
+
+
+def _is_key(column: Column, layout: Layout) -> bool:
+    """Say whether a column tells which channel a row is of."""
+    if not words.is_channel_key(column.name) or column.kind not in "NL" or column.unit:
+        return False
+    names = {row[column.field] for row in layout.rows}
+    few = len(names) <= min(_MOST_CHANNELS, len(layout.rows) / 2)
+    return few and (column.kind == "L" or all(name.isdigit() for name in names))
+
+
+def _is_length(column: Column) -> bool:
+    """Say whether a column holds lengths of time."""
+    named = words.is_length_name(column.name) or words.is_interval_key(column.name)
+    return column.kind == "N" and named and words.time_unit(column.unit) is not None
+
+
+def _without_running(columns: Iterable[Column], *, stated: bool) -> Iterator[Column]:
+    """Leave out columns that only count their rows."""
+    for column in columns:
+        if not _is_running(column, stated=stated):
+            yield column
+
+
 def _is_running(column: Column, *, stated: bool) -> bool:
     """Say whether a column only counts its rows."""
-    if words.is_index_name(column.name):
+    if words.is_index_name(column.name) and column.unit.lower() in ("", *words.COUNT_UNITS):
         return True
-    unnamed = not column.name and column.field == 0
-    return unnamed and stated and _counts_by_one(column.head)
-
-
-def _counts_by_one(head: FloatArray) -> bool:
-    steps = np.diff(head)
-    return bool(steps.size >= 1 and np.all(steps == 1) and head[0] == np.rint(head[0]))
-
-
-def _named_clocks(columns: list[Column]) -> list[ClockColumn]:
-    clocks = []
-    for column in columns:
-        if column.kind == "S":
-            clocks.append(ClockColumn(column=column, kind="stamp", evidence="calendar stamps"))
-        elif _is_named_time(column) and _advances(column.head):
-            kind: ClockKind = "index" if _is_count(column) else "number"
-            clocks.append(ClockColumn(column=column, kind=kind, evidence=f"header {column.raw!r}"))
-    return clocks
-
-
-def _is_named_time(column: Column) -> bool:
-    if column.kind != "N":
+    if not stated or not counts_by_one(column.head):
         return False
-    named = words.is_time_name(column.name) and not words.volt_factor(column.unit)
-    return named or words.time_unit(column.unit) is not None
-
-
-def _is_count(column: Column) -> bool:
-    return column.unit.lower() in words.COUNT_UNITS and column.unit != "n"
-
-
-def _advances(head: FloatArray) -> bool:
-    """Say whether most steps of a column are forward, so that it can be time."""
-    steps = np.diff(head[np.isfinite(head)])
-    if steps.size == 0:
-        return True
-    n_back = np.count_nonzero(steps < 0)
-    return bool(n_back <= max(1, 0.3 * steps.size) and np.any(steps > 0))
-
-
-def _unnamed_clocks(
-    columns: list[Column], *, named: bool, stated: bool, unit_given: bool
-) -> list[ClockColumn]:
-    """Find time by its values, where no name and no unit tells."""
-    clocks: list[ClockColumn] = []
-    for place, column in enumerate(columns):
-        if column.kind != "N" or not _advances(column.head) or len(columns) == 1:
-            continue
-        if words.is_index_name(column.name) or (not column.name and _counts_by_one(column.head)):
-            if unit_given and not clocks:
-                clocks.append(_by_values(column, "number"))
-            elif stated and place == 0:
-                return [_by_values(column, "index")]
-            continue
-        if column.name and (place > 0 or words.is_channel_name(column.name)):
-            continue
-        if _rises_strictly(column.head) and (place == 0 or not named):
-            clocks.append(_by_values(column, "number"))
-    return _alike(clocks, columns)
-
-
-def _by_values(column: Column, kind: ClockKind) -> ClockColumn:
-    what = "counts its rows" if kind == "index" else "rises from row to row"
-    return ClockColumn(column=column, kind=kind, evidence=f"{column.title} {what}")
-
-
-def _rises_strictly(head: FloatArray) -> bool:
-    """Say whether a column rises in nearly every row; repeats and a restart are allowed."""
-    steps = np.diff(head[np.isfinite(head)])
-    n_back = int(np.count_nonzero(steps < 0))
-    return bool(steps.size >= 1 and np.any(steps > 0) and n_back <= max(0.1 * steps.size, 0))
-
-
-def _alike(clocks: list[ClockColumn], columns: list[Column]) -> list[ClockColumn]:
-    """Keep the first unnamed clock; more of them only where they alternate with channels."""
-    if len(clocks) < 2:
-        return clocks
-    fields = {clock.column.field for clock in clocks}
-    order = [c.field for c in columns]
-    alternate = len(order) % 2 == 0 and fields >= set(order[::2]) and order[1] not in fields
-    return [c for c in clocks if c.column.field in order[::2]] if alternate else clocks[:1]
-
-
-def _with_dates(clocks: list[ClockColumn]) -> list[ClockColumn]:
-    """Join a date column with the time of day beside it."""
-    if len(clocks) < 2 or clocks[0].kind != "stamp":
-        return clocks
-    first, second = clocks[0], clocks[1]
-    adjoining = second.column.field == first.column.field + 1
-    if second.kind == "stamp" and adjoining:
-        return [replace(second, date=first.column.field), *clocks[2:]]
-    return clocks
-
-
-def _nearest(
-    clocks: list[ClockColumn], values: tuple[Column, ...]
-) -> tuple[tuple[ClockColumn, ...], tuple[int | None, ...]]:
-    """Give each channel the clock to its left, numbers before stamps where several adjoin."""
-    if not clocks:
-        return (), tuple(None for _ in values)
-    chosen: list[ClockColumn] = []
-    clock_of: list[int | None] = []
-    for value in values:
-        left = [c for c in clocks if c.column.field < value.field]
-        clock = _preferred(left or clocks[:1], values)
-        if clock not in chosen:
-            chosen.append(clock)
-        clock_of.append(chosen.index(clock))
-    return tuple(chosen), tuple(clock_of)
-
-
-def _preferred(left: list[ClockColumn], values: tuple[Column, ...]) -> ClockColumn:
-    """Of the clocks to the left take the last group without a channel between, best first."""
-    between = {v.field for v in values}
-    group = [left[-1]]
-    for clock in reversed(left[:-1]):
-        gap = range(clock.column.field + 1, group[-1].column.field)
-        if any(f in between for f in gap):
-            break
-        group.append(clock)
-    ranks = {"number": 0, "stamp": 1, "index": 2}
-    return min(group, key=lambda c: (ranks[c.kind], not c.column.unit, c.column.field))
+    if not column.name:
+        return column.field == 0
+    return not column.unit and not words.is_channel_name(column.name)

@@ -1,8 +1,8 @@
-"""Numbers from blocks of text: in bulk where a block is clean, row by row where it is not.
+"""Numbers from blocks of text: in bulk where lines are sound, one by one where they are not.
 
-A block is clean if every line has the same delimiters and every data cell holds exactly one
-token of digits, signs, points and exponents. An unclean block is halved until the damage is
-confined to a few lines, and those alone are read cell by cell.
+A block whose lines differ in nothing but digits is read straight from its bytes. Of any other the
+cells are found first, and the numbers in them read all at once. What is left, lines with another
+number of cells and cells with something else in them, is read line by line.
 """
 
 from __future__ import annotations
@@ -13,14 +13,19 @@ from dataclasses import replace
 
 import numpy as np
 
+from benchtool.formats.magnitudes import in_range
+from benchtool.formats.text.alike import RowForm, parse_alike
 from benchtool.formats.text.cells import number
-from benchtool.formats.text.digits import RowForm, parse_alike
 from benchtool.formats.text.layout import Layout, is_comment
-from benchtool.formats.text.regular import wanted_cells
+from benchtool.formats.text.lineends import with_newlines
+from benchtool.formats.text.numerals import ROOM, parse_cells
+from benchtool.formats.text.regular import Cells, find_cells
 from benchtool.frozen import frozen_record
-from benchtool.model.arrays import FloatArray
+from benchtool.model.arrays import FloatArray, IntArray, NDArray
 
-_LEAF = 64
+_PART_BYTES = 1 << 18
+_PLAIN = b"0123456789+-.eE"
+_BEGINS = np.isin(np.arange(256), np.frombuffer(b"0123456789+-.,", np.uint8))
 
 Convert = Callable[[Sequence[str]], FloatArray]
 
@@ -67,7 +72,6 @@ class Decoder:
     Attributes:
         layout: Layout of the rows.
         wanted: The columns, in the order of the table.
-        carriage: Whether a lone carriage return ends a line.
         codec: Encoding of words in cells.
         n_clocks: How many of the wanted columns, the first ones, are clocks; a row without any
             time is none.
@@ -76,125 +80,153 @@ class Decoder:
 
     layout: Layout
     wanted: tuple[Wanted, ...]
-    carriage: bool = False
     codec: str = "utf-8"
     n_clocks: int = 0
     may_be_short: bool = False
 
     def decode(self, block: bytes) -> Decoded:
         """Decode a block of whole lines."""
-        lines = block.replace(b"\r", b"\n" if self.carriage else b"")
-        body = lines.rstrip(b"\n") + b"\n"
-        return _merged(self._pieces(body), len(lines) - len(body))
+        lines = with_newlines(block)
+        body = lines
+        if lines.endswith(b"\n\n") or not lines.endswith(b"\n"):
+            body = lines.rstrip(b"\n") + b"\n"
+        n_blank = len(lines) - len(body)
+        plain = tuple(wanted.field for wanted in self.wanted if wanted.convert is None)
+        if len(plain) == len(self.wanted) and not self.layout.paired:
+            alike = parse_alike(body, self._form(plain))
+            if alike is not None and alike[1] is None:
+                return Decoded(table=alike[0], n_lines=alike[0].shape[0] + n_blank)
+        table, odd = self._in_parts(body)
+        n_lines = table.shape[0] + n_blank
+        if not odd.size:
+            return Decoded(table=table, n_lines=n_lines)
+        return replace(self._with_odd(body, table, odd), n_lines=n_lines)
 
     def only(self, place: int) -> Decoder:
         """Return a decoder of one of the wanted columns; it sees the same rows."""
         return replace(self, wanted=(self.wanted[place],), n_clocks=0)
 
-    def _pieces(self, block: bytes) -> list[Decoded]:
-        """Decode in bulk, halving where that fails."""
-        table = self._bulk(block)
-        if table is not None:
-            return [Decoded(table=table, n_lines=table.shape[0])]
-        middle = block.find(b"\n", len(block) // 2) + 1
-        if 0 < middle < len(block) and block.count(b"\n") > _LEAF:
-            return [*self._pieces(block[:middle]), *self._pieces(block[middle:])]
-        return [self._by_rows(block)]
+    def _in_parts(self, body: bytes) -> tuple[FloatArray, IntArray]:
+        """Return what ``_bulk`` does, few lines at a time: their arrays stay in the cache."""
+        tables: list[FloatArray] = []
+        odd: list[IntArray] = []
+        at = n_lines = 0
+        while at < len(body):
+            stop = body.find(b"\n", min(at + _PART_BYTES, len(body) - 1)) + 1
+            table, lines = self._bulk(body[at:stop])
+            tables.append(table)
+            odd.append(lines + n_lines)
+            at, n_lines = stop, n_lines + table.shape[0]
+        return (np.concatenate(tables), np.concatenate(odd)) if tables[1:] else (tables[0], odd[0])
 
-    def _bulk(self, block: bytes) -> FloatArray | None:
-        """Decode a clean block; None where it is not clean."""
-        if self.layout.paired or not block:
-            return None
-        text = self._marked(block if block.endswith(b"\n") else block + b"\n")
+    def _bulk(self, body: bytes) -> tuple[FloatArray, IntArray]:
+        """Return a row of the table for each line, and the lines left to be read one by one."""
+        plain = [i for i, wanted in enumerate(self.wanted) if wanted.convert is None]
+        fields = [self.wanted[i].field for i in plain]
+        text = self._marked(body)
         if text is None:
-            return None
-        plain = [i for i, w in enumerate(self.wanted) if w.convert is None]
-        numbers = self._numbers(text, tuple(self.wanted[i].field for i in plain))
-        if numbers is None:
-            return None
-        if len(plain) == len(self.wanted):
-            return numbers
-        return self._with_words(block, numbers, plain)
+            n_lines = body.count(b"\n")
+            return np.full((n_lines, len(self.wanted)), np.nan), np.arange(n_lines)
+        cells = find_cells(text, self.layout.delimiter.encode(), self.layout.n_fields)
+        table = np.full((cells.n_lines, len(self.wanted)), np.nan, order="F")
+        rows = np.delete(np.arange(cells.n_lines), cells.odd) if cells.odd.size else slice(None)
+        sound = not cells.odd.size
+        if cells.starts.size:
+            for i, field in zip(plain, fields, strict=True):
+                table[rows, i], all_told = self._column(text, cells, field)
+                sound = sound and all_told
+            if len(plain) < len(self.wanted):
+                sound = self._fill_words(body, table, rows) and sound
+        empty: IntArray = np.empty(0, np.int64)
+        return table, empty if sound else np.flatnonzero(np.isnan(table).any(axis=1))
+
+    def _form(self, fields: tuple[int, ...]) -> RowForm:
+        return RowForm(
+            mark=self.layout.delimiter.encode(),
+            decimal=self.layout.decimal.encode(),
+            n_fields=self.layout.n_fields,
+            fields=fields,
+        )
 
     def _marked(self, block: bytes) -> bytes | None:
-        """Return the block without its quotes; None where they shield a delimiter."""
+        """Return the block without its quotes; None where cells are not what lies between marks."""
+        if self.layout.paired:
+            return None
         if b'"' not in block:
             return block
         mark = self.layout.delimiter
         return None if mark and _quotes_shield(block, mark) else block.replace(b'"', b"")
 
-    def _numbers(self, text: bytes, fields: tuple[int, ...]) -> FloatArray | None:
-        if not fields:
-            return np.empty((text.count(b"\n"), 0))
-        mark = self.layout.delimiter.encode()
-        form = RowForm(
-            mark=mark,
-            decimal=self.layout.decimal.encode(),
-            n_fields=self.layout.n_fields,
-            fields=fields,
+    def _column(self, text: bytes, cells: Cells, field: int) -> tuple[FloatArray, bool]:
+        """Return the numbers of a field, and whether all of its cells hold one."""
+        starts, stops = cells.starts[:, field], cells.stops[:, field]
+        values, odd = parse_cells(
+            bytes(ROOM) + text, starts + ROOM, stops + ROOM, self.layout.decimal.encode()
         )
-        values = parse_alike(text, form)
-        if values is not None:
-            return values
-        return self._floats(text, fields)
+        if odd is None:
+            return values, True
+        for i in np.flatnonzero(odd).tolist():
+            values[i] = self._number(text[starts[i] : stops[i]])
+        return values, not np.isnan(values[odd]).any()
 
-    def _floats(self, text: bytes, fields: tuple[int, ...]) -> FloatArray | None:
-        """Give every cell to ``float``: for rows that differ in more than their digits."""
-        n_rows = text.count(b"\n")
-        if self.layout.decimal == ",":
-            if b"." in text:
-                return None
-            text = text.replace(b",", b".")
-        mark = self.layout.delimiter.encode()
-        cells = wanted_cells(text, mark, self.layout.n_fields, fields, n_rows)
-        tokens = cells.split() if cells is not None else []
-        if len(tokens) != n_rows * len(fields):
-            return None
-        try:
-            floats = np.fromiter(map(float, tokens), np.float64, len(tokens))
-        except ValueError:
-            return None
-        return floats.reshape(n_rows, len(fields))
+    def _number(self, cell: bytes) -> float:
+        """Return the number in one cell, NaN where it holds none."""
+        if self.layout.decimal == "." and not cell.strip().translate(None, _PLAIN):
+            try:
+                return in_range(float(cell))
+            except ValueError:
+                return math.nan
+        return number(cell.decode(self.codec, errors="replace"), self.layout.decimal)
 
-    def _with_words(self, block: bytes, numbers: FloatArray, plain: list[int]) -> FloatArray | None:
-        """Fill in the columns of stamps and words."""
-        rows = [self.layout.split(line) for line in self._lines(block)]
-        table = np.empty((len(rows), len(self.wanted)))
-        if len(rows) != numbers.shape[0]:
-            return None
-        table[:, plain] = numbers
+    def _fill_words(self, body: bytes, table: FloatArray, rows: IntArray | slice) -> bool:
+        """Fill in the columns of stamps and words; say whether all cells told something."""
+        lines = body.decode(self.codec, errors="replace")[:-1].split("\n")
+        chosen = lines if isinstance(rows, slice) else [lines[i] for i in rows.tolist()]
+        split = [self.layout.split(line) for line in chosen]
+        sound = True
         for i, wanted in enumerate(self.wanted):
             if wanted.convert is not None:
-                table[:, i] = wanted.convert([_cell(row, wanted) for row in rows])
-        return None if np.isnan(table).any() else table
+                values = wanted.convert([_cell(row, wanted) for row in split])
+                table[rows, i] = values
+                sound = sound and not np.isnan(values).any()
+        return sound
 
-    def _lines(self, block: bytes) -> list[str]:
-        text = block.decode(self.codec, errors="replace")
-        return text[:-1].split("\n") if text.endswith("\n") else text.split("\n")
-
-    def _by_rows(self, block: bytes) -> Decoded:
-        """Decode line by line, forgiving."""
-        rows: list[list[float]] = []
+    def _with_odd(self, body: bytes, table: FloatArray, odd: IntArray) -> Decoded:
+        """Read the odd lines one by one, forgiving."""
+        stops = np.flatnonzero(np.frombuffer(body, np.uint8) == ord("\n"))
+        starts = np.concatenate([[0], stops[:-1] + 1])
+        known = self._only_lacks_values(body, table, odd, starts)
+        missing = odd[known].tolist()
         skipped: list[tuple[int, int, bool]] = []
-        missing: list[int] = []
-        lines = self._lines(block) if block else []
-        for i, line in enumerate(lines):
+        left_out: list[int] = []
+        for i in odd[~known].tolist():
+            line = body[starts[i] : stops[i]].decode(self.codec, errors="replace")
             if not line.strip("\0 \t\r") or is_comment(line):
+                left_out.append(i)
                 continue
             values = self._row(line)
             if values is None or all(map(math.isnan, values[: self.n_clocks or None])):
-                skipped.append((len(rows), i, self._is_text(line)))
+                skipped.append((i - len(left_out), i, self._is_text(line)))
                 values = [math.nan] * len(self.wanted)
             elif any(map(math.isnan, values)):
                 missing.append(i)
-            rows.append(values)
+            table[i] = values
         return Decoded(
-            table=np.array(rows).reshape(len(rows), len(self.wanted)),
+            table=np.delete(table, left_out, axis=0) if left_out else table,
             skipped=tuple(skipped),
             n_missing=len(missing),
-            first_missing=missing[0] if missing else None,
-            n_lines=len(lines),
+            first_missing=min(missing, default=None),
         )
+
+    def _only_lacks_values(
+        self, body: bytes, table: FloatArray, odd: IntArray, starts: IntArray
+    ) -> NDArray[np.bool_]:
+        """Say which lines have their time and all cells, and lack no more than a number."""
+        if not self.n_clocks:
+            return np.zeros(odd.size, np.bool_)
+        timed = np.isfinite(table[odd, : self.n_clocks]).any(axis=1)
+        begins: NDArray[np.bool_] = _BEGINS[np.frombuffer(body, np.uint8)[starts[odd]]]
+        return timed & begins
 
     def _row(self, line: str) -> list[float] | None:
         cells = self.layout.split(line)
@@ -217,7 +249,10 @@ class Decoder:
 
     def _is_text(self, line: str) -> bool:
         """Say whether a line that is no row begins with text: a footer, not a damaged row."""
-        return math.isnan(number(self.layout.split(line)[:1][0], self.layout.decimal))
+        cell, *others = self.layout.split(line)
+        if not cell and not any(others):
+            return True  # nothing but delimiters, as spreadsheets leave below the rows
+        return bool(cell) and cell[0] not in "+-.,0123456789" and cell.lower() != "nan"
 
 
 def _quotes_shield(block: bytes, mark: str) -> bool:
@@ -232,24 +267,3 @@ def _cell(row: Sequence[str], wanted: Wanted) -> str:
     if wanted.second is not None and wanted.second < len(row):
         return f"{row[wanted.second]} {cell}"
     return cell
-
-
-def _merged(pieces: list[Decoded], n_blank: int) -> Decoded:
-    """Join the pieces of a block, counting rows and lines from its start."""
-    skipped: list[tuple[int, int, bool]] = []
-    n_rows = n_lines = n_missing = 0
-    first: int | None = None
-    for piece in pieces:
-        skipped += [(row + n_rows, line + n_lines, text) for row, line, text in piece.skipped]
-        if first is None and piece.first_missing is not None:
-            first = piece.first_missing + n_lines
-        n_rows += piece.table.shape[0]
-        n_lines += piece.n_lines
-        n_missing += piece.n_missing
-    return Decoded(
-        table=np.concatenate([piece.table for piece in pieces]) if pieces[1:] else pieces[0].table,
-        skipped=tuple(skipped),
-        n_missing=n_missing,
-        first_missing=first,
-        n_lines=n_lines + n_blank,
-    )

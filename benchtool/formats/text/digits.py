@@ -1,206 +1,174 @@
-"""Decimal numbers of rows that look alike, by whole-array arithmetic, bit for bit as ``float``.
+"""Decimal numbers from digits, by whole-array arithmetic, bit for bit as ``float``.
 
-Rows are alike where they differ in nothing but which digits they hold. One row of each kind is
-read by the rules; of the others only the digits are gathered. A decimal number is a whole
-mantissa and a power of ten; where the mantissa is below 2**53 and the power within 10**22 both
-are exact in binary, so that one multiplication or division rounds once and correctly
-(W. D. Clinger, "How to read floating point numbers accurately", PLDI 1990).
+Eight digits are folded at a time inside one 64-bit word: pairs, then fours, then all eight. A
+decimal number is a whole mantissa and a power of ten. Where the mantissa is below 2**53 and the
+power within 10**22 both are exact in binary, so that one multiplication or division rounds once
+and correctly (W. D. Clinger, "How to read floating point numbers accurately", PLDI 1990). A
+longer mantissa is divided in two parts, with the remainder of the first quotient taken exactly
+(T. J. Dekker, "A floating-point technique for extending the available precision", 1971).
 """
 
 from __future__ import annotations
 
-import re
-from collections.abc import Iterator
-
 import numpy as np
-from numpy.lib.stride_tricks import sliding_window_view
 
-from benchtool.frozen import frozen_record
-from benchtool.model.arrays import FloatArray, NDArray
+from benchtool.model.arrays import BoolArray, FloatArray, NDArray
 
 Bytes = NDArray[np.uint8]
+Words = NDArray[np.uint64]
 
-_MOST_KINDS = 48
-_SHORT = 9  # digits that fit uint32
-_MOST_DIGITS = 15  # any mantissa of so many digits is below 2**53
-_EXACT_POWER = 22  # 10**22 is the last power of ten that is exact in a float
-_TENS = 10.0 ** np.arange(_EXACT_POWER + 1)
-_ZERO, _NEWLINE = ord("0"), ord("\n")
-_NUMBERS = {
-    mark: re.compile(rb"([+-]?)(\d*)(?:" + re.escape(mark) + rb"(\d*))?(?:[eE]([+-]?)(\d+))?")
-    for mark in (b".", b",")
-}
-_BLANKED = re.compile(rb"\S+")
+EXACT_POWER = 22
+"""10**22 is the last power of ten that is exact in a float."""
+
+_TENS: FloatArray = np.array([float(10**n) for n in range(EXACT_POWER + 1)])
+_EXACT = np.uint64(1 << 53)
+_SPLIT = 134217729.0  # 2**27 + 1
+_NEAR = 1e-6  # of the last place: nearer to half of it the sum of two parts does not tell
+_TIE = 0.5 - _NEAR
 
 
-@frozen_record(eq=False)
-class Number:
-    """Where the digits of one number stand in the rows of a kind.
-
-    Attributes:
-        negative: Whether it has a minus sign.
-        digits: Places of its mantissa's digits.
-        n_fraction: How many of them come after the mark.
-        exponent: Places of its exponent's digits.
-        divides: Whether the exponent has a minus sign.
-    """
-
-    negative: bool
-    digits: tuple[int, ...]
-    n_fraction: int
-    exponent: tuple[int, ...] = ()
-    divides: bool = False
+def _each(byte: int) -> np.uint64:
+    """Return a word of eight equal bytes."""
+    return np.uint64(byte * 0x0101010101010101)
 
 
-@frozen_record(eq=False)
-class RowForm:
-    """The form that rows must have: delimiter, decimal mark, number of fields, those wanted."""
+ZEROS = _each(ord("0"))
+_SEVENS, _TOPS, _SIX = _each(0x7F), _each(0x80), _each(0x76)
+_PAIRS = np.uint64(0x00FF00FF00FF00FF)
+_FOURS = np.uint64(0x000000FF000000FF)
+_HUNDREDS = np.uint64(100 + (1000000 << 32))
+_ONES = np.uint64(1 + (10000 << 32))
+_PLACES = np.uint64(0x0001020304050607)
+_TEN, _ONE = np.uint64(10), np.uint64(1)
+_BITS_7, _BITS_8, _BITS_16, _BITS_32, _BITS_56 = (np.uint64(n) for n in (7, 8, 16, 32, 56))
 
-    mark: bytes
-    decimal: bytes
-    n_fields: int
-    fields: tuple[int, ...]
 
-
-def parse_alike(block: bytes, form: RowForm) -> FloatArray | None:
-    """Return the numbers of a block of whole lines; None where its rows are of too many kinds.
+def fold(digits: Words) -> Words:
+    """Return the numbers that words of eight digit values spell, the first in the lowest byte.
 
     Args:
-        block: Lines, each with its line end.
-        form: The form of a row.
+        digits: Values 0 to 9 a byte, shape (n,); overwritten.
+    """
+    later = digits >> _BITS_8
+    digits *= _TEN
+    digits += later
+    np.right_shift(digits, _BITS_16, out=later)
+    later &= _FOURS
+    later *= _ONES
+    digits &= _FOURS
+    digits *= _HUNDREDS
+    digits += later
+    digits >>= _BITS_32
+    return digits
+
+
+def find_byte(words: Words, byte: np.uint64) -> Words:
+    """Return words with a 1 in the lowest bit of each byte that equals ``byte``."""
+    away = words ^ byte
+    low = away & _SEVENS
+    low += _SEVENS
+    low |= away
+    low |= _SEVENS
+    np.invert(low, out=low)
+    low >>= _BITS_7
+    return low
+
+
+def place_of(single: Words) -> NDArray[np.int64]:
+    """Return which byte of each word holds its only 1, from 0."""
+    return ((single * _PLACES) >> _BITS_56).view(np.int64)
+
+
+def close_hole(digits: Words, hole: Words) -> Words:
+    """Move the bytes before a hole up by one, over it; words without a hole stay.
+
+    Args:
+        digits: Words of digit values.
+        hole: A 1 in the lowest bit of the byte that is no digit, 0 where there is none.
+    """
+    before = hole - np.minimum(hole, _ONE)
+    moved = digits & before
+    moved <<= _BITS_8
+    before |= hole * np.uint64(0xFF)
+    np.invert(before, out=before)
+    before &= digits
+    before |= moved
+    return before
+
+
+def all_digits(values: Words) -> BoolArray:
+    """Say which words hold nothing but 0 to 9 in their bytes."""
+    above = values + _SIX
+    above |= values
+    above &= _TOPS
+    sound: BoolArray = above == 0
+    return sound
+
+
+def scaled(mantissa: Words, power: NDArray[np.int64] | int) -> tuple[FloatArray, BoolArray | None]:
+    """Return ``mantissa`` times ten to ``power``, correctly rounded.
+
+    Args:
+        mantissa: Whole numbers, shape (n,).
+        power: Powers of ten, one for each or one for all.
 
     Returns:
-        Values, shape (lines, fields), or None where some row needs another way of reading.
+        The values, and where they are not sure to be correct; None where all are.
     """
-    buffer = np.frombuffer(block, np.uint8)
-    stops = np.flatnonzero(buffer == _NEWLINE)
-    starts = np.concatenate([[0], stops[:-1] + 1])
-    table = np.empty((stops.size, len(form.fields)))
-    budget = _MOST_KINDS
-    for rows, columns in _same_length(buffer, starts, stops):
-        for alike, kind in _kinds(columns):
-            values = _parse_kind(kind, form)
-            budget -= 1
-            if values is None or budget < 0:
-                return None
-            table[rows[alike]] = values
-    return table
+    whole = mantissa.astype(np.float64)
+    long = mantissa >= _EXACT
+    if not isinstance(power, int) and power.size and (power == power[0]).all():
+        power = int(power[0])
+    if isinstance(power, int):
+        if abs(power) > EXACT_POWER:
+            return whole, np.ones(whole.size, np.bool_)
+        values = whole / _TENS[-power] if power <= 0 else whole * _TENS[power]
+        unsure = None
+    else:
+        size = np.abs(power)
+        beyond = size > EXACT_POWER
+        unsure = beyond if beyond.any() else None
+        tens = _TENS[np.minimum(size, EXACT_POWER)]
+        values = whole / tens if (power <= 0).all() else _times(whole, tens, power)
+    if not long.any():
+        return values, unsure
+    where = np.flatnonzero(long)
+    powers = np.broadcast_to(np.asarray(power), whole.shape)[where]
+    values[where], doubtful = _divided(mantissa[where], powers)
+    unsure = np.zeros(whole.size, np.bool_) if unsure is None else unsure
+    unsure[where] |= doubtful
+    return values, unsure
 
 
-def _same_length(
-    buffer: Bytes, starts: NDArray[np.intp], stops: NDArray[np.intp]
-) -> Iterator[tuple[NDArray[np.intp], Bytes]]:
-    """Yield row numbers and bytes, shape (length, rows), of the rows of each length."""
-    lengths = stops - starts
-    for length in np.flatnonzero(np.bincount(lengths)):
-        rows = np.flatnonzero(lengths == length)
-        if length == 0:
-            yield rows, np.empty((0, rows.size), np.uint8)
-            continue
-        windows = sliding_window_view(buffer, int(length))
-        yield rows, np.ascontiguousarray(windows[starts[rows]].T)
-
-
-def _kinds(columns: Bytes) -> Iterator[tuple[NDArray[np.intp], Bytes]]:
-    """Yield the rows of each kind, equal but for the digits: their numbers and their bytes."""
-    left = np.arange(columns.shape[1])
-    while left.size:
-        alike = np.ones(left.size, bool)
-        for column in columns:
-            model = column[0]
-            if _ZERO <= model < _ZERO + 10:
-                alike &= column - np.uint8(_ZERO) < 10
-            else:
-                alike &= column == model
-        if alike.all():
-            yield left, columns
-            return
-        yield left[alike], columns[:, alike]
-        left, columns = left[~alike], columns[:, ~alike]
-
-
-def _parse_kind(columns: Bytes, form: RowForm) -> FloatArray | None:
-    """Return the numbers of rows that are alike."""
-    numbers = _read_form(columns[:, 0].tobytes(), form)
-    if numbers is None:
-        return None
-    values = np.empty((columns.shape[1], len(numbers)))
-    for k, number in enumerate(numbers):
-        column = _values(columns, number)
-        if column is None:
-            return None
-        values[:, k] = column
+def _times(whole: FloatArray, tens: FloatArray, power: NDArray[np.int64]) -> FloatArray:
+    values: FloatArray = np.where(power < 0, whole / tens, whole * tens)
     return values
 
 
-def _read_form(row: bytes, form: RowForm) -> list[Number] | None:
-    """Find the digits of the wanted fields in one row; None if it is no row of the form."""
-    spans = _spans(row, form.mark)
-    if len(spans) != form.n_fields:
-        return None
-    numbers = []
-    for field in form.fields:
-        number = _number(row, *spans[field], form.decimal)
-        if number is None:
-            return None
-        numbers.append(number)
-    return numbers
+def _divided(mantissa: Words, power: NDArray[np.int64]) -> tuple[FloatArray, BoolArray]:
+    """Divide whole numbers beyond 2**53 by powers of ten; say where the rounding is in doubt."""
+    tens = _TENS[np.clip(-power, 0, EXACT_POWER)]
+    high = mantissa.astype(np.float64)
+    low = (mantissa - high.astype(np.uint64)).view(np.int64).astype(np.float64)
+    first = high / tens
+    product, rest = _product(first, tens)
+    second = ((high - product) - rest + low) / tens
+    values = first + second
+    left = np.abs(second - (values - first)) / np.spacing(values)
+    # below a power of two the places are half as wide
+    tie = (left > _TIE) | (np.abs(left - 0.25) < _NEAR)
+    return values, (power > 0) | tie
 
 
-def _spans(row: bytes, mark: bytes) -> list[tuple[int, int]]:
-    """Return where the cells of a row begin and end."""
-    if mark == b" ":
-        return [match.span() for match in _BLANKED.finditer(row)]
-    if not mark:
-        return [(0, len(row))]
-    stops = [i for i, byte in enumerate(row) if byte == mark[0]]
-    return list(zip([0, *(i + 1 for i in stops)], [*stops, len(row)], strict=True))
+def _product(a: FloatArray, b: FloatArray) -> tuple[FloatArray, FloatArray]:
+    """Return a product and what its rounding left out, exactly."""
+    product = a * b
+    (a_high, a_low), (b_high, b_low) = _halves(a), _halves(b)
+    rest = a_low * b_low - (((product - a_high * b_high) - a_low * b_high) - a_high * b_low)
+    return product, rest
 
 
-def _number(row: bytes, start: int, stop: int, decimal: bytes) -> Number | None:
-    cell = row[start:stop]
-    text = cell.strip().removeprefix(b'"').removesuffix(b'"').strip()
-    match = _NUMBERS[decimal].fullmatch(text)
-    if match is None or not (match[2] or match[3]):
-        return None
-    at = start + cell.index(text)
-    digits = [*range(*match.span(2)), *range(*match.span(3))]
-    if len(digits) > _MOST_DIGITS:
-        return None
-    return Number(
-        negative=match[1] == b"-",
-        digits=tuple(at + i for i in digits),
-        n_fraction=len(match[3] or b""),
-        exponent=tuple(at + i for i in range(*match.span(5))) if match[5] else (),
-        divides=match[4] == b"-",
-    )
-
-
-def _whole(columns: Bytes, places: tuple[int, ...]) -> NDArray[np.int64]:
-    """Return the whole numbers whose digits stand at ``places``."""
-    whole = np.zeros(columns.shape[1], np.int64)
-    for start in range(0, len(places), _SHORT):
-        few = places[start : start + _SHORT]
-        part = np.zeros(columns.shape[1], np.uint32)
-        for place in few:
-            part *= np.uint32(10)
-            part += columns[place] - np.uint8(_ZERO)
-        whole = whole * 10 ** len(few) + part
-    return whole
-
-
-def _values(columns: Bytes, number: Number) -> FloatArray | None:
-    """Put mantissa and power together; None where the power is not exact in a float."""
-    mantissa = _whole(columns, number.digits).astype(np.float64)
-    if number.exponent:
-        if len(number.exponent) > 3:
-            return None
-        power = _whole(columns, number.exponent)
-        power = (-power if number.divides else power) - number.n_fraction
-        if np.abs(power).max() > _EXACT_POWER:
-            return None
-        scale = _TENS[np.abs(power)]
-        values: FloatArray = np.where(power < 0, mantissa / scale, mantissa * scale)
-    else:
-        values = mantissa / _TENS[number.n_fraction]
-    return -values if number.negative else values
+def _halves(a: FloatArray) -> tuple[FloatArray, FloatArray]:
+    shifted = _SPLIT * a
+    high = shifted - (shifted - a)
+    return high, a - high

@@ -68,7 +68,7 @@ def looks_like_text(head: bytes) -> bool:
     if encoding.is_wide:
         text = encoding.decode(head)
         return text.isascii() or sum(c < "\u0500" for c in text) > 0.95 * len(text)
-    body = head.rstrip(b"\0")  # a power cut leaves a tail of zeros
+    body = head.replace(b"\0" * 16, b"").rstrip(b"\0")  # a power cut leaves zeros
     n_control = len(body) - len(body.translate(None, _CONTROL))
     n_high = len(body) - len(body.translate(None, _HIGH))
     foreign = n_high if encoding.name == "latin-1" else 0

@@ -5,12 +5,13 @@ from __future__ import annotations
 from benchtool.formats.content import Content
 from benchtool.formats.text.cells import kind_of
 from benchtool.formats.text.layout import Layout, is_comment
+from benchtool.formats.text.lineends import with_newlines
 from benchtool.model.quantity import Notice
 
 
-def last_lines(content: Content, codec: str, *, carriage: bool) -> list[str]:
+def last_lines(content: Content, codec: str) -> list[str]:
     """Return the last lines of the file, the first of which may lack its beginning."""
-    tail = content.tail(1 << 14).replace(b"\r", b"\n" if carriage else b"")
+    tail = with_newlines(content.tail(1 << 14))
     return tail.decode(codec, errors="replace").split("\n")
 
 

@@ -6,7 +6,10 @@ from collections.abc import Sequence
 
 from benchtool.formats.text.scanning import Scan
 from benchtool.formats.text.structure import Structure
-from benchtool.model.capture import StructurePoint
+from benchtool.formats.text.timeunit import FoundUnit
+from benchtool.model.capture import StructurePoint, Sureness
+
+_Point = tuple[str, str, str, Sureness]
 
 _SHOWN = {"\t": "tab", " ": "space", "": "none"}
 
@@ -22,21 +25,33 @@ def structure_points(
         kind: ``samples`` or ``transitions``.
         interval: Sample interval as shown, and its evidence.
     """
-    layout = structure.layout
-    points = [
-        ("encoding", structure.encoding.name, structure.encoding.evidence),
-        ("delimiter", _SHOWN.get(layout.delimiter, layout.delimiter), layout.evidence),
-        ("decimal", layout.decimal, _decimal_evidence(structure)),
-        ("header", _header_value(structure), _header_evidence(structure)),
+    layout, named = structure.layout, structure.heading.is_named
+    titles = ", ".join(column.title for column in structure.columns.values)
+    points: list[_Point] = [
+        ("encoding", structure.encoding.name, structure.encoding.evidence, "measured"),
+        ("delimiter", _SHOWN.get(layout.delimiter, layout.delimiter), layout.evidence, "measured"),
+        ("decimal", layout.decimal, _decimal_evidence(structure), "measured"),
+        ("header", _header_value(structure), _header_evidence(structure), "measured"),
         *_clock_points(structure),
-        ("kind", kind, _KINDS[kind]),
-        *([("interval", *interval)] if interval else []),
-        ("channels", ", ".join(c.title for c in structure.columns.values), "columns of numbers"),
-        ("rows", str(scan.n_rows), f"from line {structure.rows.first_line}"),
+        ("kind", kind, _KINDS[kind], "measured"),
+        *(
+            [("interval", *interval, _interval_sureness(structure, interval[1]))]
+            if interval
+            else []
+        ),
+        ("channels", titles, "columns of numbers", "stated" if named else "measured"),
+        ("rows", str(scan.n_rows), f"from line {structure.rows.first_line}", "measured"),
     ]
     if scan.n_footer:
-        points.append(("footer", f"{scan.n_footer} lines", "text after the last row"))
-    return tuple(StructurePoint(name=n, value=v, evidence=e) for n, v, e in points)
+        points.append(("footer", f"{scan.n_footer} lines", "text after the last row", "measured"))
+    return tuple(StructurePoint(name=n, value=v, evidence=e, sure=s) for n, v, e, s in points)
+
+
+def _interval_sureness(structure: Structure, evidence: str) -> Sureness:
+    """Say how sure an interval is: without a clock, as sure as the statement of it."""
+    if structure.columns.clocks:
+        return "stated" if evidence.startswith("stated") else "measured"
+    return "assumed" if structure.stated and structure.stated.assumed_unit else "stated"
 
 
 _KINDS = {
@@ -66,13 +81,24 @@ def _header_evidence(structure: Structure) -> str:
     return f"line {rows[0] + 1}" if len(rows) == 1 else f"lines {rows[0] + 1} to {rows[-1] + 1}"
 
 
-def _clock_points(structure: Structure) -> list[tuple[str, str, str]]:
+def _clock_points(structure: Structure) -> list[_Point]:
     clocks = structure.columns.clocks
     if not clocks:
-        return [("time", "none", "no column gives time; rows are counted")]
+        return [("time", "none", "no column gives time; rows are counted", "measured")]
     titles = ", ".join(clock.column.title for clock in clocks)
-    unit = structure.units[0]
+    unit, evidence = structure.units[0], clocks[0].evidence
     return [
-        ("time", titles, clocks[0].evidence),
-        ("time_unit", unit.unit.name, unit.evidence),
+        ("time", titles, evidence, "stated" if _is_told(evidence) else "measured"),
+        ("time_unit", unit.unit.name, unit.evidence, _unit_sureness(unit)),
     ]
+
+
+def _unit_sureness(unit: FoundUnit) -> Sureness:
+    if unit.warnings:
+        return "assumed"
+    return "stated" if _is_told(unit.evidence) else "measured"
+
+
+def _is_told(evidence: str) -> bool:
+    """Say whether evidence is words of the file or an option of the user."""
+    return evidence.startswith(("header", "metadata", "--"))

@@ -8,6 +8,7 @@ from benchtool.formats.text.layout import COMMENT, Layout, split_cells
 from benchtool.formats.text.metadata import split_unit
 from benchtool.frozen import frozen_record
 
+_LETTERS = ("V", "v", "U", "u", "I", "i")
 _MOST_ROWS = 3
 _MOST_PASSED = 3  # lines between the header and the data, such as the title of a segment
 
@@ -44,7 +45,10 @@ def read_heading(lines: list[str], layout: Layout) -> Heading:
     for place, (_, cells) in enumerate(rows):
         spread = place == 0 and len(rows) > 1 and _is_group_row(cells, rows[1][1])
         for i, cell in enumerate((_spread(cells) if spread else cells)[: layout.n_fields]):
-            _take(cell, i, names, units, raw)
+            if spread:
+                names[i] = raw[i] = cell
+            else:
+                _take(cell, i, names, units, raw)
     return Heading(
         names=tuple(names),
         units=tuple(units),
@@ -79,6 +83,8 @@ def _take(cell: str, i: int, names: list[str], units: list[str], raw: list[str])
 def _named(cell: str) -> tuple[str, str]:
     """Split a header cell; an identifier such as ``out_mv`` keeps its whole name."""
     name, unit = split_unit(cell)
+    if name in _LETTERS and unit and not words.is_unit(unit):
+        return cell, ""  # V(out): the voltage of a node, not a quantity in a unit
     if not unit:
         return cell, cell if words.is_unit(cell) else ""
     whole = "_" in cell and not cell.endswith((")", "]", "}", ">"))
@@ -113,7 +119,17 @@ def _belongs(
     """Say whether a row belongs to the header; one further up must name a time."""
     if found:
         return _stacks(cells, found, layout)
-    return passed == 0 or any(_is_clock_cell(cell) for cell in cells)
+    if _is_units_row(cells, layout):
+        return True
+    if any(_is_clock_cell(cell) and len(cell) > 1 for cell in cells):
+        return True
+    return passed == 0 and _names_most(cells, layout)
+
+
+def _names_most(cells: list[str], layout: Layout) -> bool:
+    """Say whether a row names the data columns: all, or all but a leading counter."""
+    told = [bool(cells[i]) for i in layout.fields if i < len(cells)]
+    return all(told[1:]) or sum(told) > len(told) / 2
 
 
 def header_cells(line: str, layout: Layout) -> list[str]:

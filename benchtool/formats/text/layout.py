@@ -43,7 +43,7 @@ class Layout:
     @property
     def fields(self) -> tuple[int, ...]:
         """Fields that hold data."""
-        return tuple(i for i, kind in enumerate(self.kinds) if kind in "NSW")
+        return tuple(i for i, kind in enumerate(self.kinds) if kind in "NSWH")
 
 
 def split_cells(line: str, delimiter: str, *, paired: bool = False) -> list[str]:
@@ -52,14 +52,19 @@ def split_cells(line: str, delimiter: str, *, paired: bool = False) -> list[str]
         return [cell.strip('"') for cell in line.split()]
     if delimiter == "":
         return [line.strip().strip('"').strip()]
-    if '"' in line:
-        import csv
-
-        row = next(csv.reader([line.strip("\r\n")], delimiter=delimiter, skipinitialspace=True), [])
-    else:
-        row = line.split(delimiter)
+    quoted = '"' in line
+    row = _quoted_cells(line.strip("\r\n"), delimiter) if quoted else line.split(delimiter)
     cells = [cell.strip().strip("'") for cell in row]
     return _joined(cells) if paired else cells
+
+
+def _quoted_cells(line: str, delimiter: str) -> list[str]:
+    import csv
+
+    try:
+        return next(csv.reader([line], delimiter=delimiter, skipinitialspace=True), [])
+    except csv.Error:  # a cell of more than 131,072 characters
+        return line.split(delimiter)
 
 
 def _joined(cells: list[str]) -> list[str]:

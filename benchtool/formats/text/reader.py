@@ -4,26 +4,19 @@ from __future__ import annotations
 
 from dataclasses import replace
 
-import numpy as np
-
 from benchtool.errors import MalformedCaptureError
-from benchtool.formats.clock import ClockScan, Steps, examine_steps
+from benchtool.formats.clock import ClockScan
 from benchtool.formats.content import Content
-from benchtool.formats.text.cells import number
-from benchtool.formats.text.columns import Column
+from benchtool.formats.steps import Steps, examine_steps
+from benchtool.formats.text.envelope import envelope_notice, is_envelope, without_twins
 from benchtool.formats.text.evidence import structure_points
+from benchtool.formats.text.lists import head_stamps, may_be_lists, read_lists
+from benchtool.formats.text.refusals import refuse_repeats, refuse_rows_of_channels
 from benchtool.formats.text.sampled import Sampled, is_logic, refuse_empty, value_unit
 from benchtool.formats.text.scanning import Scan, scan_rows
-from benchtool.formats.text.structure import Structure, epoch_ns, find_structure, states
-from benchtool.formats.text.timebase import Timebase, settle_time
-from benchtool.formats.text.transitions import (
-    Listed,
-    is_transition_list,
-    names_edges,
-    read_transitions,
-)
+from benchtool.formats.text.structure import Structure, epoch_ns, find_structure
+from benchtool.formats.text.timebase import StatedInterval, Timebase, settle_time
 from benchtool.formats.text.walking import DataRows
-from benchtool.model.arrays import FloatArray
 from benchtool.model.capture import Capture, Origin, ReadOptions, Trace
 from benchtool.model.quantity import Notice
 
@@ -39,109 +32,146 @@ def read_text(content: Content, options: ReadOptions) -> Capture:
         AmbiguousStructureError: If two readings are sound; the hint names the option.
         MalformedCaptureError: If it holds nothing to measure.
     """
-    structure = find_structure(content, options)
-    if _may_list_transitions(structure):
-        capture = _read_list(structure, content)
+    return _read(find_structure(content, options), content, options)
+
+
+def _read(structure: Structure, content: Content, options: ReadOptions) -> Capture:
+    if may_be_lists(structure) and not _says_samples(structure, options):
+        capture = _read_list(structure, content, options)
         if capture is not None:
             return capture
-    return _read_samples(structure, content)
+    return _read_samples(structure, content, options)
 
 
-def _head_stamps(structure: Structure, clock: int) -> FloatArray:
-    """Return the first stamps of a clock, decoded."""
-    wanted = structure.cells[clock].wanted
-    rows = structure.layout.rows
-    if wanted.convert is None:
-        return structure.columns.clocks[clock].column.head
-    cells = [
-        row[wanted.field] if wanted.second is None else f"{row[wanted.second]} {row[wanted.field]}"
-        for row in rows
-    ]
-    return wanted.convert(cells)
+def _read_above(
+    structure: Structure, scan: Scan | None, content: Content, options: ReadOptions
+) -> Capture | None:
+    """Read what stands above another table as if the file ended there; None without one."""
+    from benchtool.formats.text.stacked import other_table
+
+    other = other_table(structure, scan)
+    if other is None:
+        return None
+    found = find_structure(replace(structure.rows.content, size=other.offset), options)
+    warnings = (*found.warnings, other.notice)
+    whole = replace(found, encoding=structure.encoding, warnings=warnings)
+    return _read(whole, content, options)
+
+
+def _may_hold_others(scan: Scan) -> bool:
+    """Say whether text stands among the rows, or the times do not run through."""
+    first = min((line for _, line, is_text in scan.skipped if is_text), default=None)
+    below = first is not None and any(
+        line > first and (not is_text or row < scan.n_rows) for row, line, is_text in scan.skipped
+    )
+    inside = any(is_text and row < scan.n_rows for row, _, is_text in scan.skipped)
+    return (
+        inside or below or any(len(clock.pieces) > 1 or clock.n_backwards for clock in scan.clocks)
+    )
+
+
+def _says_samples(structure: Structure, options: ReadOptions) -> bool:
+    """Say whether rows are samples since the user gives their interval, and they are even."""
+    columns = structure.columns
+    listed = columns.edges or columns.lasting or columns.key is not None
+    return options.interval_s is not None and not listed and _steps(structure, 0).even
 
 
 def _steps(structure: Structure, clock: int) -> Steps:
-    return examine_steps(_head_stamps(structure, clock), structure.cells[clock].resolution)
-
-
-def _head_values(structure: Structure, column: Column) -> FloatArray:
-    cells = [row[column.field] for row in structure.layout.rows]
-    if column.kind == "W":
-        return states(cells)
-    return np.array([number(cell, structure.layout.decimal) for cell in cells])
-
-
-def _may_list_transitions(structure: Structure) -> bool:
-    columns = structure.columns
-    if len(columns.clocks) != 1 or columns.clocks[0].kind == "index":
-        return False
-    heads = [_head_values(structure, column) for column in columns.values]
-    resolution = structure.cells[0].resolution
-    return is_transition_list(_head_stamps(structure, 0), heads, resolution)
-
-
-def _read_list(structure: Structure, content: Content) -> Capture | None:
-    """Read a list of transitions; None if later rows show that it is none."""
-    columns, cells = structure.columns, structure.cells[0]
-    scan = scan_rows(
-        structure.rows, (), len(columns.values) + 1, (None,) * (len(columns.values) + 1), keep=True
+    return examine_steps(
+        without_twins(head_stamps(structure, clock)), structure.cells[clock].resolution
     )
-    table = scan.table
-    if table is None or not table.size:
+
+
+def _read_list(structure: Structure, content: Content, options: ReadOptions) -> Capture | None:
+    """Read lists of transitions; None if later rows show that they are none."""
+    found = read_lists(structure, content.source)
+    if found is None:
         return None
-    rows = structure.layout.rows
-    channels = [
-        Listed(
-            title=column.title,
-            values=table[:, 1 + k],
-            worded=names_edges([row[column.field] for row in rows]),
-        )
-        for k, column in enumerate(columns.values)
-    ]
-    if not is_transition_list(table[:, 0], [c.values for c in channels], cells.resolution):
-        return None
-    traces, notices = read_transitions(
-        table[:, 0],
-        channels,
-        cells.resolution,
-        structure.units[0].unit,
-        content.source,
-        from_zero=not cells.relative,
+    if _may_hold_others(found.scan):
+        above = _read_above(structure, found.scan, content, options)
+        if above is not None:
+            return above
+    return _capture(
+        structure,
+        content,
+        found.scan,
+        found.traces,
+        found.notices,
+        kind="transitions",
+        interval=None,
     )
-    return _capture(structure, content, scan, traces, notices, kind="transitions", interval=None)
 
 
-def _read_samples(structure: Structure, content: Content) -> Capture:
+def _read_samples(structure: Structure, content: Content, options: ReadOptions) -> Capture:
+    try:
+        scan = _scan(structure, content)
+    except MalformedCaptureError:
+        above = _read_above(structure, None, content, options)
+        if above is None:
+            raise
+        return above
+    if _may_hold_others(scan):
+        above = _read_above(structure, scan, content, options)
+        if above is not None:
+            return above
+    _refuse_what_is_no_record(structure, scan, content.source)
+    scan.clocks = tuple(
+        _without_false_grid(clock, k, structure.rows, content.source)
+        for k, clock in enumerate(scan.clocks)
+    )
+    sampled = _sampled(structure, scan)
+    traces, notices = _waveforms(structure, sampled)
+    notices += [n for timebase in sampled.timebases[:1] for n in timebase.warnings]
+    if sampled.twins:
+        notices = [n for n in notices if n.code != "repeated-stamps"]
+        notices.append(envelope_notice(sampled.timebases[0].size))
+    interval = _interval_point(structure, sampled.timebases)
+    return _capture(
+        structure, content, scan, traces, tuple(notices), kind="samples", interval=interval
+    )
+
+
+def _scan(structure: Structure, content: Content) -> Scan:
+    """Walk all rows once; the column that tells channels apart comes last."""
     columns = structure.columns
     clocks = tuple(
         ClockScan(_steps(structure, k), content.source) for k in range(len(columns.clocks))
     )
+    clock_of = (*columns.clock_of, *((None,) if columns.key is not None else ()))
     keep = structure.rows.content.data is not None
-    scan = scan_rows(structure.rows, clocks, len(columns.values), columns.clock_of, keep=keep)
-    refuse_empty(scan.ranges, content.source)
-    _refuse_single_row(scan, content.source)
-    scan.clocks = clocks = tuple(
-        _without_false_grid(clock, k, structure.rows, content.source)
-        for k, clock in enumerate(clocks)
-    )
-    timebases = tuple(
-        settle_time(clock, found.unit, _stated_s(structure, k))
-        for k, (clock, found) in enumerate(zip(clocks, structure.units, strict=True))
-    )
-    sampled = Sampled(
+    return scan_rows(structure.rows, clocks, len(clock_of), clock_of, keep=keep)
+
+
+def _refuse_what_is_no_record(structure: Structure, scan: Scan, source: str) -> None:
+    """Refuse rows that are no samples of channels one after the other."""
+    columns = structure.columns
+    refuse_empty(scan.ranges[: len(columns.values)], source)
+    if columns.key is not None and scan.ranges[-1].low != scan.ranges[-1].high:
+        refuse_rows_of_channels(columns, source)
+    _refuse_single_row(scan, source)
+    if not is_envelope(scan.clocks, scan.n_rows):
+        refuse_repeats(scan.clocks, scan.n_rows, source)
+    if not scan.clocks:
+        from benchtool.formats.text.stacked import refuse_frames
+
+        refuse_frames(structure, source)
+
+
+def _sampled(structure: Structure, scan: Scan) -> Sampled:
+    stated, value_unit = structure.stated, structure.metadata.value_unit
+    return Sampled(
         rows=structure.rows,
         scan=scan,
         layout=structure.layout,
-        timebases=timebases,
+        timebases=tuple(
+            settle_time(clock, found.unit, _stated(structure, k))
+            for k, (clock, found) in enumerate(zip(scan.clocks, structure.units, strict=True))
+        ),
         units=tuple(found.unit for found in structure.units),
-        interval_s=structure.stated.value if structure.stated else None,
-        value_unit=structure.metadata.value_unit[0] if structure.metadata.value_unit else "",
-    )
-    traces, assumed = _waveforms(structure, sampled)
-    notices = [*assumed, *(n for timebase in timebases[:1] for n in timebase.warnings)]
-    interval = _interval_point(structure, timebases)
-    return _capture(
-        structure, content, scan, traces, tuple(notices), kind="samples", interval=interval
+        interval_s=stated.value if stated else None,
+        value_unit=value_unit[0] if value_unit else "",
+        twins=is_envelope(scan.clocks, scan.n_rows),
     )
 
 
@@ -157,10 +187,13 @@ def _without_false_grid(clock: ClockScan, place: int, rows: DataRows, source: st
     return uneven
 
 
-def _stated_s(structure: Structure, clock: int) -> float | None:
-    if structure.stated is None or structure.columns.clocks[clock].kind == "stamp":
+def _stated(structure: Structure, clock: int) -> StatedInterval | None:
+    if structure.stated is None:
         return None
-    return structure.stated.value
+    nominal = structure.columns.clocks[clock].kind == "stamp"
+    return StatedInterval(
+        value_s=structure.stated.value, rounding=structure.stated.rounding, nominal=nominal
+    )
 
 
 def _refuse_single_row(scan: Scan, source: str) -> None:
@@ -199,7 +232,7 @@ def _waveforms(structure: Structure, sampled: Sampled) -> tuple[tuple[Trace, ...
 
 
 def _logic(structure: Structure, scan: Scan) -> list[bool]:
-    pairs = list(zip(structure.columns.values, scan.ranges, strict=True))
+    pairs = list(zip(structure.columns.values, scan.ranges, strict=False))
     alone = [is_logic(c, r, structure.layout, others=False) for c, r in pairs]
     return [is_logic(c, r, structure.layout, others=any(alone)) for c, r in pairs]
 

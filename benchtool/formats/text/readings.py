@@ -11,14 +11,17 @@ from collections import Counter
 
 from benchtool.errors import MalformedCaptureError
 from benchtool.formats.text.cells import Kind, kind_of
+from benchtool.formats.text.labels import with_labels
 from benchtool.formats.text.layout import DELIMITERS, Layout, is_comment, split_cells
-from benchtool.formats.text.rivals import refuse_decimal_comma, single_best
+from benchtool.formats.text.rivals import refuse_decimal_comma, refuse_mixed_marks, single_best
 from benchtool.model.capture import ReadOptions
 
 _TRIED = (",", ";", "\t", "|", " ", "")
 _SEP_LINE = re.compile(r"\s*\"?sep=(.)\"?\s*")
 _WINDOW = 96
 _ENOUGH = 12
+_EMPTY: Kind = "E"
+_SHORTEST_CHANNEL = 12  # rows of a channel that ends before the others; metadata are fewer
 
 
 def find_layout(lines: list[str], options: ReadOptions, source: str) -> Layout:
@@ -33,13 +36,16 @@ def find_layout(lines: list[str], options: ReadOptions, source: str) -> Layout:
         if found and (found[0][0] >= _ENOUGH or window >= len(lines)):
             break
     if not found:
-        raise _no_rows(lines, source)
+        raise _no_rows(lines, options, source)
     best = single_best(found, options, source)
     refuse_decimal_comma(best, lines, options, source)
+    refuse_mixed_marks(best, lines[:window], options, source)
     return best
 
 
-def _no_rows(lines: list[str], source: str) -> MalformedCaptureError:
+def _no_rows(lines: list[str], options: ReadOptions, source: str) -> MalformedCaptureError:
+    from benchtool.formats.text.overruled import rows_hint
+
     n_text = sum(bool(line.strip()) for line in lines)
     if n_text == 0:
         what, code = "holds nothing but blanks", "empty-file"
@@ -47,8 +53,7 @@ def _no_rows(lines: list[str], source: str) -> MalformedCaptureError:
         what, code = f"has no row of numbers ({n_text} lines of other text)", "no-rows"
     return MalformedCaptureError(
         f"{source} {what}",
-        hint="Check that the capture was saved with its data; "
-        "--delimiter and --decimal overrule what was tried.",
+        hint=rows_hint(lines, options, _sound_layouts),
         path=source,
         code=code,
     )
@@ -96,18 +101,22 @@ def _try(
         [] if is_comment(line) else split_cells(line, delimiter, paired=paired) for line in lines
     ]
     kinds = [tuple(kind_of(cell, decimal) for cell in row) for row in cells]
+    if delimiter not in ("", " "):
+        kinds = with_labels(cells, kinds)
     widths = Counter(len(row) for row in kinds if _is_data(row))
     if delimiter == " ":
         widths.pop(1, None)
     if not widths:
         return None
     n_fields = _usual_width(kinds, widths)
+    if delimiter not in ("", " "):
+        n_fields = _with_metadata_right(cells, kinds, n_fields)
     rows = [i for i, row in enumerate(kinds) if len(row) == n_fields and _is_data(row)]
     modal = _modal_kinds([kinds[i] for i in rows])
     good = [i for i in rows if _fits(kinds[i], modal)]
     if not good:
         return None
-    start = _first_row(kinds, modal, good)
+    start = _first_row(kinds, modal, _largest_table(cells, kinds, good))
     layout = Layout(
         delimiter=delimiter,
         decimal=decimal,
@@ -129,6 +138,31 @@ def _usual_width(kinds: list[tuple[Kind, ...]], widths: Counter[int]) -> int:
     return held if widths[held] > 0.3 * widths[width] else width
 
 
+def _with_metadata_right(
+    cells: list[list[str]], kinds: list[tuple[Kind, ...]], n_fields: int
+) -> int:
+    """Return the width of rows that have metadata to their right in the first rows only.
+
+    The narrower rows below are filled up with empty cells.
+    """
+    first = next((i for i, row in enumerate(kinds) if len(row) == n_fields and _is_data(row)), 0)
+    modal = kinds[first] if kinds else ()
+    wide = []
+    for i in range(first - 1, -1, -1):
+        if len(kinds[i]) <= n_fields or kinds[i][:n_fields] != modal:
+            break
+        wide.append(i)
+    if not modal or not wide:
+        return n_fields
+    width = max(len(kinds[i]) for i in wide)
+    for i, row in enumerate(kinds):
+        if (_is_data(row) and len(row) == n_fields) or i in wide:
+            n_lacking = width - len(row)
+            kinds[i] = (*row, *[_EMPTY] * n_lacking)
+            cells[i] = [*cells[i], *([""] * n_lacking)]
+    return width
+
+
 def _is_data(kinds: tuple[Kind, ...]) -> bool:
     return "T" not in kinds and ("N" in kinds or "S" in kinds)
 
@@ -138,18 +172,27 @@ def _modal_kinds(rows: list[tuple[Kind, ...]]) -> tuple[Kind, ...]:
     modal: list[Kind] = []
     for column in zip(*rows, strict=True):
         counts = Counter(column)
-        if 2 * counts["E"] > len(rows):
+        if 2 * counts["E"] > len(rows) and not _is_sparse(column):
             modal.append("E")
             continue
-        told = {kind: n for kind, n in counts.items() if kind in "NSW"}
+        told = {kind: n for kind, n in counts.items() if kind in "NSWHL"}
         if "W" in told and "N" in told and 10 * told["W"] >= len(rows):
             told["W"] += told["N"]  # 0, 1 and x mixed: states
         modal.append(max(told, key=lambda kind: told[kind]) if told else "M")
     return tuple(modal)
 
 
+def _is_sparse(column: tuple[Kind, ...]) -> bool:
+    """Say whether a mostly empty column is a channel: one that ends early, or tells changes."""
+    n_told = sum(kind != "E" for kind in column)
+    if n_told < _SHORTEST_CHANNEL:
+        return False
+    sparse = 4 * n_told >= len(column) and set(column[-(len(column) // 4) :]) != {"E"}
+    return set(column[:n_told]) == {"N"} or (sparse and set(column) <= {"N", "W", "E"})
+
+
 def _fits(kinds: tuple[Kind, ...], modal: tuple[Kind, ...]) -> bool:
-    pairs = [(a, b) for a, b in zip(kinds, modal, strict=True) if b in "NSW"]
+    pairs = [(a, b) for a, b in zip(kinds, modal, strict=True) if b in "NSWHL"]
     agree = sum(a == b or (b == "W" and a == "N") for a, b in pairs)
     return agree > 0 and all(a == b or a in "EM" or b == "W" for a, b in pairs)
 
@@ -167,5 +210,22 @@ def _first_row(kinds: list[tuple[Kind, ...]], modal: tuple[Kind, ...], good: lis
     return start
 
 
+def _largest_table(
+    cells: list[list[str]], kinds: list[tuple[Kind, ...]], good: list[int]
+) -> list[int]:
+    """Return the rows below the last header where a few rows of another table stand above."""
+    heads = [
+        i
+        for i in range(good[0], good[-1])
+        if set(kinds[i]) <= {"T", "W", "E"} and kinds[i].count("T") > 1
+    ]
+    above = {tuple(row) for row in cells[: good[0]]}
+    for i in reversed(heads):
+        below = [row for row in good if row > i]
+        if tuple(cells[i]) not in above and 2 * len(below) > len(good):
+            return below
+    return good
+
+
 def _data_beside(kinds: tuple[Kind, ...], modal: tuple[Kind, ...]) -> bool:
-    return all(a == b for a, b in zip(kinds, modal, strict=True) if b in "NSW")
+    return all(a == b for a, b in zip(kinds, modal, strict=True) if b in "NSWH")

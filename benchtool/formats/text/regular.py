@@ -1,69 +1,82 @@
-"""Blocks whose rows all have the same fields: the wanted cells, for a bulk conversion."""
+"""Where the cells of a block lie, and which of its lines have another number of them."""
 
 from __future__ import annotations
 
 import numpy as np
 
-from benchtool.model.arrays import NDArray
+from benchtool.frozen import frozen_record
+from benchtool.model.arrays import BoolArray, IntArray
 
-_NUMERIC = b"0123456789+-.eE \t\n"
-_NEWLINE = 10
+_NEWLINE, _BLANK = 10, 32
+_NONE = np.empty(0, np.int64)
 
 
-def wanted_cells(
-    text: bytes, mark: bytes, n_fields: int, fields: tuple[int, ...], n_rows: int
-) -> bytes | None:
-    """Return the wanted cells of a regular block, blanks between; None where it is irregular.
+@frozen_record(eq=False)
+class Cells:
+    """The cells of the regular lines of a block.
 
-    Each wanted cell is checked to hold exactly one token.
+    Attributes:
+        starts: Where each begins, shape (regular lines, fields).
+        stops: One past where it ends.
+        n_lines: Lines of the block, regular or not.
+        odd: Lines with another number of cells, in order.
+    """
+
+    starts: IntArray
+    stops: IntArray
+    n_lines: int
+    odd: IntArray
+
+
+def find_cells(text: bytes, mark: bytes, n_fields: int) -> Cells:
+    """Find the cells of a block of whole lines.
+
+    Args:
+        text: Lines, each with its line end.
+        mark: The delimiter; a blank for runs of blanks, empty where there is one column.
+        n_fields: Cells of a regular line.
     """
     buffer = np.frombuffer(text, np.uint8)
+    newline = buffer == _NEWLINE
     if mark == b" ":
-        return _only_blanks(text, buffer, n_fields, fields, n_rows)
-    ends = buffer == _NEWLINE
-    if mark:
-        ends |= buffer == mark[0]
-    places = np.flatnonzero(ends)
-    if places.size != n_rows * n_fields or (buffer[places[n_fields - 1 :: n_fields]] != 10).any():
-        return None
-    if len(fields) < n_fields:
-        buffer = _blanked(buffer, ends, n_fields, fields)
-        text = buffer.tobytes()
-    if text.translate(None, _NUMERIC + mark):
-        return None
-    token = (buffer > 32) & ~ends
-    starts = np.flatnonzero(token[1:] > token[:-1]) + 1
-    if token[0]:
-        starts = np.concatenate([[0], starts])
-    if starts.size != n_rows * len(fields):
-        return None
-    cell = np.add.outer(np.arange(n_rows) * n_fields, np.array(fields)).ravel()
-    before = np.concatenate([[-1], places])[cell]
-    if not ((starts < places[cell]) & (starts > before)).all():
-        return None
-    return text.replace(mark, b" ") if mark else text
+        starts, stops = _tokens(buffer > _BLANK)
+        return _by_line(starts, stops, starts, np.flatnonzero(newline), n_fields)
+    stops = np.flatnonzero(newline | (buffer == mark[0])) if mark else np.flatnonzero(newline)
+    starts = np.empty_like(stops)
+    starts[0], starts[1:] = 0, stops[:-1] + 1
+    n_lines, rest = divmod(stops.size, n_fields)
+    if (
+        not rest
+        and np.count_nonzero(newline) == n_lines
+        and newline[stops[n_fields - 1 :: n_fields]].all()
+    ):
+        shape = (n_lines, n_fields)
+        return Cells(
+            starts=starts.reshape(shape), stops=stops.reshape(shape), n_lines=n_lines, odd=_NONE
+        )
+    return _by_line(starts, stops, stops, np.flatnonzero(newline), n_fields)
 
 
-def _blanked(
-    buffer: NDArray[np.uint8], ends: NDArray[np.bool_], n_fields: int, fields: tuple[int, ...]
-) -> NDArray[np.uint8]:
-    """Blank out the cells of the fields not wanted."""
-    wanted = np.zeros(n_fields, bool)
-    wanted[list(fields)] = True
-    field = (np.cumsum(ends) - ends) % n_fields
-    return np.where(wanted[field] | ends, buffer, np.uint8(32))
+def _tokens(inside: BoolArray) -> tuple[IntArray, IntArray]:
+    """Return where runs of True begin and end; the last byte is outside."""
+    changes = np.flatnonzero(inside[1:] != inside[:-1]) + 1
+    if inside[0]:
+        changes = np.concatenate([[0], changes])
+    return changes[::2], changes[1::2]
 
 
-def _only_blanks(
-    text: bytes, buffer: NDArray[np.uint8], n_fields: int, fields: tuple[int, ...], n_rows: int
-) -> bytes | None:
-    if len(fields) < n_fields or text.translate(None, _NUMERIC):
-        return None
-    token = buffer > 32
-    starts = np.flatnonzero(token[1:] > token[:-1]) + 1
-    if token[0]:
-        starts = np.concatenate([[0], starts])
-    lines = np.searchsorted(np.flatnonzero(buffer == _NEWLINE), starts)
-    if starts.size != n_rows * n_fields:
-        return None
-    return text if (lines.reshape(n_rows, n_fields) == np.arange(n_rows)[:, None]).all() else None
+def _by_line(
+    starts: IntArray, stops: IntArray, places: IntArray, lines: IntArray, n_fields: int
+) -> Cells:
+    """Keep the cells of lines that have as many as they should."""
+    until = np.searchsorted(places, lines, side="right")
+    counts = np.diff(until, prepend=0)
+    regular = counts == n_fields
+    kept = np.repeat(regular, counts)
+    shape = (-1, n_fields)
+    return Cells(
+        starts=starts[kept].reshape(shape),
+        stops=stops[kept].reshape(shape),
+        n_lines=lines.size,
+        odd=np.flatnonzero(~regular),
+    )

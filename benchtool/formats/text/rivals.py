@@ -2,9 +2,10 @@
 
 from __future__ import annotations
 
+import re
 from collections import Counter
 
-from benchtool.errors import AmbiguousStructureError
+from benchtool.errors import AmbiguousStructureError, Way
 from benchtool.formats.text.cells import is_grouped, kind_of
 from benchtool.formats.text.layout import COMMENT, Layout
 from benchtool.model.capture import ReadOptions
@@ -25,6 +26,8 @@ def _settle(a: Layout, b: Layout, source: str) -> Layout:
         if _same_numbers(a) or not _all_grouped(a):
             return a if _same_numbers(a) else _by_decimal(a, b)
         raise _ambiguous_groups(a, source)
+    if 1 in (a.n_fields, b.n_fields) and a.n_fields != b.n_fields:
+        return max(a, b, key=lambda layout: layout.n_fields)  # one column has no delimiter
     if "" in (a.delimiter, b.delimiter):
         none, some = (b, a) if a.delimiter else (a, b)
         return none if some.n_fields == 1 else some  # a decimal comma is looked for after this
@@ -33,7 +36,15 @@ def _settle(a: Layout, b: Layout, source: str) -> Layout:
         f"the lines of {source} fall into columns under more than one reading "
         f"(delimiter {names}, decimal mark {a.decimal!r} or {b.decimal!r})",
         hint="Say which with --delimiter and --decimal.",
+        ways=tuple(
+            _way(each.delimiter, each.decimal, f"{each.n_fields} columns") for each in (a, b)
+        ),
     )
+
+
+def _way(delimiter: str, decimal: str, meaning: str) -> Way:
+    named = {"\t": "tab", " ": "space", "": "none"}.get(delimiter, delimiter)
+    return Way(options=(("delimiter", named), ("decimal", decimal)), meaning=meaning)
 
 
 def _by_decimal(a: Layout, b: Layout) -> Layout:
@@ -85,13 +96,19 @@ def refuse_decimal_comma(
         return
     if any("." in cell or '"' in cell for row in layout.rows for cell in row):
         return
+    if {cell for row in layout.rows for cell in row} <= {"0", "1"}:
+        return  # states
     if _header_width(lines, layout) == layout.n_fields or not _looks_paired(lines, layout):
         return
     raise AmbiguousStructureError(
         f"the commas of {source} may be delimiters, decimal marks or both "
         f"(row {','.join(layout.rows[0])!r})",
-        hint="Give --delimiter , --decimal . if they only delimit, --delimiter , --decimal , "
-        "if they are both, --delimiter none --decimal , for a single column.",
+        hint="Say which with --delimiter and --decimal.",
+        ways=(
+            _way(",", ".", "they only delimit"),
+            _way(",", ",", "they are both"),
+            _way("", ",", "a single column"),
+        ),
     )
 
 
@@ -119,3 +136,44 @@ def _looks_paired(lines: list[str], layout: Layout) -> bool:
     return all(f.isdigit() for f in fractions) and any(
         len(f) > 1 and f.startswith("0") for f in fractions
     )
+
+
+def refuse_mixed_marks(layout: Layout, lines: list[str], options: ReadOptions, source: str) -> None:
+    """Refuse numbers some of which have a decimal point and others a decimal comma.
+
+    Raises:
+        AmbiguousStructureError: Where no option settles it.
+    """
+    if options.decimal is not None or layout.paired:
+        return
+    other = "," if layout.decimal == "." else "."
+    numbers = [i for i in layout.fields if layout.kinds[i] == "N"]
+    wrong = _all_thousands(layout, numbers) if layout.decimal == "," else None
+    n_wrong = 0
+    for line in lines:
+        cells = layout.split(line) if other in line else []
+        if len(cells) != layout.n_fields or n_wrong >= _FEW:
+            continue
+        for cell in (cells[i] for i in numbers):
+            if kind_of(cell, layout.decimal) == "T" and kind_of(cell, other) == "N":
+                wrong, n_wrong = cell, n_wrong + 1
+    if wrong is not None and (n_wrong >= _FEW or not n_wrong):
+        raise AmbiguousStructureError(
+            f"{wrong!r} in {source} has a decimal {_MARKS[other]} where other numbers have a "
+            f"decimal {_MARKS[layout.decimal]}, or it counts thousands",
+            hint="Export the capture with one decimal mark, or say which with --decimal.",
+        )
+
+
+_FEW = 3  # lines that are damage and no mark of their own
+_MARKS = {".": "point", ",": "comma"}
+_THOUSAND = r"[1-9]\d{0,2}\.\d{3}"
+
+
+def _all_thousands(layout: Layout, numbers: list[int]) -> str | None:
+    """Return a cell of a column in which each has a point and three digits, if there is one."""
+    for i in numbers:
+        cells = [row[i] for row in layout.rows if row[i]]
+        if len(cells) > _FEW and all(re.fullmatch(_THOUSAND, cell) for cell in cells):
+            return cells[0]
+    return None

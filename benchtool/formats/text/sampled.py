@@ -8,7 +8,8 @@ from benchtool.errors import MalformedCaptureError
 from benchtool.formats.grid import code_step, value_step
 from benchtool.formats.text import words
 from benchtool.formats.text.cells import last_digit
-from benchtool.formats.text.columns import Column
+from benchtool.formats.text.column import Column
+from benchtool.formats.text.envelope import MiddleSamples, first_rows
 from benchtool.formats.text.layout import Layout
 from benchtool.formats.text.scanning import Range, Scan
 from benchtool.formats.text.timebase import ShiftedStamps, Timebase
@@ -42,6 +43,7 @@ class Sampled:
         units: Unit of each clock column.
         interval_s: Sample interval where no clock gives it.
         value_unit: Unit of the values where no header gives it.
+        twins: Whether each time stamp has two samples, the ends of an envelope.
     """
 
     rows: DataRows
@@ -51,6 +53,7 @@ class Sampled:
     units: tuple[TimeUnit, ...]
     interval_s: float | None
     value_unit: str
+    twins: bool = False
 
     def waveform(self, place: int, column: Column, clock: int | None, *, logic: bool) -> Waveform:
         """Return the waveform of channel ``place``."""
@@ -62,7 +65,7 @@ class Sampled:
             dtype = np.dtype(np.float64)
         time, spans = self._time(clock)
         return Waveform(
-            samples=self._samples(at, dropped, dtype, spans[-1].stop),
+            samples=self._taken(at, dropped, dtype, spans[-1].stop),
             scale=Scale() if logic else self._scale(column, at, dtype),
             time=time,
             spans=spans,
@@ -80,6 +83,16 @@ class Sampled:
                 return dtype
         return np.dtype(np.float64)
 
+    def _taken(
+        self, at: int, dropped: NDArray[np.int64], dtype: np.dtype[np.generic], size: int
+    ) -> Samples:
+        """Return the samples of a column, or the middle of the two at each stamp."""
+        samples = self._samples(at, dropped, dtype, size)
+        if not self.twins:
+            return samples
+        second = self._samples(at, first_rows(self.scan.n_rows), dtype, size)
+        return MiddleSamples(first=samples, second=second)
+
     def _samples(
         self, at: int, dropped: NDArray[np.int64], dtype: np.dtype[np.generic], size: int
     ) -> Samples:
@@ -94,6 +107,8 @@ class Sampled:
             dropped=dropped[dropped < self.scan.n_rows],
             n_rows=self.scan.n_rows,
             dtype=dtype,
+            spool=self.scan.spool_of(at),
+            place=at,
         )
 
     def _scale(self, column: Column, at: int, dtype: np.dtype[np.generic]) -> Scale:
@@ -132,6 +147,8 @@ class Sampled:
                 origin=origin,
                 times=unit.times,
                 over=unit.over,
+                spool=self.scan.spool_of(clock),
+                place=clock,
             )
         if not any(timebase.shifts_s):
             return stamps
@@ -167,7 +184,7 @@ def _printed_step(column: Column, layout: Layout) -> float | None:
     """Return the size of the last digit, where all values are printed to the same one."""
     digits = [last_digit(row[column.field], layout.decimal) for row in layout.rows]
     told = [d for d in digits if d is not None]
-    return 10.0 ** told[0] if told and len(set(told)) == 1 else None
+    return 10.0 ** told[0] if told and len(set(told)) == 1 and abs(told[0]) < 300 else None
 
 
 def is_logic(column: Column, channel: Range, layout: Layout, *, others: bool) -> bool:
@@ -179,7 +196,7 @@ def is_logic(column: Column, channel: Range, layout: Layout, *, others: bool) ->
         layout: Layout of the rows.
         others: Whether another channel of the file is logic.
     """
-    if column.kind == "W":
+    if column.kind in "WH":
         return True
     if not channel.binary or words.volt_factor(column.unit) is not None:
         return False

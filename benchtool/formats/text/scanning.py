@@ -2,18 +2,21 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass, field
 
 import numpy as np
 
 from benchtool.errors import MalformedCaptureError
 from benchtool.formats.clock import ClockScan
+from benchtool.formats.spool import ColumnSpool
 from benchtool.formats.text.decoding import Decoded
 from benchtool.formats.text.walking import BlockIndex, DataRows
-from benchtool.model.arrays import FloatArray
+from benchtool.model.arrays import AnyArray, FloatArray
 from benchtool.model.quantity import Notice
 
 _MOST_UNREADABLE = 0.2
+_INTEGERS = (np.int8, np.int16, np.int32)
 
 
 @dataclass(slots=True)
@@ -29,15 +32,36 @@ class Range:
 
     def feed(self, values: FloatArray, counted: FloatArray | None) -> None:
         """Take the next values; ``counted`` is the clock, NaN where a row takes no part."""
-        told = values[np.isfinite(values)]
-        takes_part = np.isfinite(counted) if counted is not None else np.ones(values.size, bool)
-        self.n_missing += int(np.count_nonzero(takes_part & ~np.isfinite(values)))
-        if not told.size:
+        if not values.size:
             return
+        low, high = float(values.min()), float(values.max())
+        told = values
+        if not math.isfinite(low + high):
+            told = self._told(values, counted)
+            if not told.size:
+                return
+            low, high = float(told.min()), float(told.max())
         self.n_told += told.size
-        self.low, self.high = min(self.low, float(told.min())), max(self.high, float(told.max()))
+        self.low, self.high = min(self.low, low), max(self.high, high)
         self.whole = self.whole and bool(np.all(told == np.rint(told)))
         self.binary = self.binary and bool(np.all((told == 0) | (told == 1)))
+
+    def _told(self, values: FloatArray, counted: FloatArray | None) -> FloatArray:
+        """Return the values that are there, and count the others."""
+        told = np.isfinite(values)
+        takes_part = np.isfinite(counted) if counted is not None else np.ones(values.size, bool)
+        self.n_missing += int(np.count_nonzero(takes_part & ~told))
+        return values[told]
+
+    def narrowed(self, values: FloatArray) -> AnyArray:
+        """Return values in the least type that holds all of the channel seen so far."""
+        if self.whole and not self.n_missing and values.size:
+            for dtype in _INTEGERS:
+                limits = np.iinfo(dtype)
+                if limits.min <= self.low and self.high <= limits.max:
+                    with np.errstate(invalid="ignore"):  # NaN of rows that take no part
+                        return values.astype(dtype)
+        return values
 
 
 @dataclass(slots=True)
@@ -51,6 +75,8 @@ class Scan:
         n_rows: Rows up to the last that holds anything.
         table: All rows, where they are few.
         first: The first block's rows.
+        spool: The columns that are walked again, where there is no table.
+        spooled: Which these are; a clock may turn out uneven after they were chosen.
     """
 
     clocks: tuple[ClockScan, ...]
@@ -61,6 +87,32 @@ class Scan:
     first: FloatArray = field(default_factory=lambda: np.empty((0, 0)))
     first_missing: int | None = None
     skipped: list[tuple[int, int, bool]] = field(default_factory=list)
+    spool: ColumnSpool | None = None
+    spooled: set[int] = field(default_factory=set)
+
+    def spool_of(self, column: int) -> ColumnSpool | None:
+        """Return where a column of the table is kept, None where it is decoded anew."""
+        if self.spool is None or not self.spool.whole or column not in self.spooled:
+            return None
+        return self.spool
+
+    def _is_spooled(self, column: int) -> bool:
+        """Say whether a column will be walked again: not so the stamps of an even clock."""
+        return column >= len(self.clocks) or not self.clocks[column].steps.even
+
+    def keep(self, decoded: Decoded) -> None:
+        """Put the columns of a block into the spool."""
+        if self.spool is None:
+            return
+        table, n_clocks = decoded.table, len(self.clocks)
+        self.spooled.update(k for k in range(table.shape[1]) if self._is_spooled(k))
+        columns: list[AnyArray] = []
+        for k in range(table.shape[1]):
+            if k >= n_clocks:
+                columns.append(self.ranges[k - n_clocks].narrowed(table[:, k]))
+            else:
+                columns.append(table[:, k] if self._is_spooled(k) else table[:0, k])
+        self.spool.append(columns)
 
     def damage(self, source: str, *, counts_rows: bool) -> tuple[Notice, ...]:
         """Return notices of skipped rows and missing values; a footer is none.
@@ -69,11 +121,12 @@ class Scan:
             MalformedCaptureError: If a large part of the rows cannot be read.
         """
         inner = [s for s in self.skipped if s[0] < self.n_rows or not s[2]]
-        if len(inner) > max(3, _MOST_UNREADABLE * self.n_rows):
+        n_rows = max(self.n_rows, inner[-1][0] + 1) if inner else self.n_rows
+        if len(inner) > max(3, _MOST_UNREADABLE * n_rows):
             raise MalformedCaptureError(
-                f"{len(inner)} of {self.n_rows} rows of {source} cannot be read, "
+                f"{len(inner)} of {n_rows} rows of {source} cannot be read, "
                 f"the first in line {inner[0][1]}",
-                hint="Look at that line; --delimiter and --decimal overrule what was tried.",
+                hint="Look at that line: it is no row like the first ones. Save the capture again.",
                 path=source,
                 line=inner[0][1],
                 code="rows-unreadable",
@@ -127,9 +180,13 @@ def scan_rows(
         clocks: Scans of the clock columns, fed here.
         n_channels: Number of channels.
         clock_of: Clock of each channel, None where rows count.
-        keep: Whether to hold the table.
+        keep: Whether to hold the table; if not, what is walked again is spooled.
     """
-    scan = Scan(clocks=clocks, ranges=tuple(Range() for _ in range(n_channels)))
+    scan = Scan(
+        clocks=clocks,
+        ranges=tuple(Range() for _ in range(n_channels)),
+        spool=None if keep else ColumnSpool(),
+    )
     tables: list[FloatArray] = []
     n_rows, line = 0, rows.first_line
     for offset, decoded in rows.decoded():
@@ -140,6 +197,8 @@ def scan_rows(
             scan.first = decoded.table
         if keep:
             tables.append(decoded.table)
+        else:
+            scan.keep(decoded)
         n_rows += decoded.table.shape[0]
         line += decoded.n_lines
     for clock in clocks:
@@ -161,9 +220,11 @@ def _feed(scan: Scan, decoded: Decoded, clock_of: tuple[int | None, ...]) -> Non
 
 
 def _note_damage(scan: Scan, decoded: Decoded, n_rows: int, line: int) -> None:
-    held = np.flatnonzero(np.isfinite(decoded.table).any(axis=1))
-    if held.size:
-        scan.n_rows = n_rows + int(held[-1]) + 1
+    size = decoded.table.shape[0]
+    while size and not np.isfinite(decoded.table[size - 1]).any():
+        size -= 1
+    if size:
+        scan.n_rows = n_rows + size
     scan.skipped += [(row + n_rows, at + line, text) for row, at, text in decoded.skipped]
     if scan.first_missing is None and decoded.first_missing is not None:
         scan.first_missing = decoded.first_missing + line

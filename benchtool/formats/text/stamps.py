@@ -17,6 +17,7 @@ IntArray = NDArray[np.int64]
 NS = 1_000_000_000
 _PLAIN = set("0123456789-:.T ")
 MISSING = int(np.iinfo(np.int64).min)
+_MONTH_NAMES = "jan feb mar apr may jun jul aug sep oct nov dec"
 _STAMP = re.compile(
     r"(?P<date>\d{1,4}[-/.]\d{1,2}[-/.]\d{1,4})?[T ]?"
     r"(?:(?P<a>\d{1,4}):(?P<b>\d{2})(?::(?P<c>\d{2}))?(?:[.,](?P<f>\d+))?"
@@ -66,12 +67,22 @@ class StampReader:
         return date(year, month, day).toordinal() - date(1970, 1, 1).toordinal()
 
 
-_BASIC = re.compile(r"(\d{4})(\d{2})(\d{2})T(\d{2})(\d{2})(\d{2})")
+_BASIC = re.compile(r"(\d{4})(\d{2})(\d{2})[T _-]?(\d{2})(\d{2})(\d{2})(?!\d)")
+_COLON_FRACTION = re.compile(r"(\d{1,2}:\d{2}:\d{2}):(\d{3}|\d{6})")
+_NAMED_MONTH = re.compile(r"(\d{1,2})[- ]([A-Za-z]{3})[A-Za-z]*[- ](\d{4})")
+_MONTHS = {name: i + 1 for i, name in enumerate(_MONTH_NAMES.split())}
 
 
 def _parts(cell: str) -> re.Match[str] | None:
     """Return the parts of a stamp, ISO 8601 basic format among them."""
-    return _STAMP.fullmatch(_BASIC.sub(r"\1-\2-\3T\4:\5:\6", cell.strip()))
+    text = _BASIC.sub(r"\1-\2-\3T\4:\5:\6", cell.strip().strip("[]"))
+    text = _COLON_FRACTION.sub(r"\1.\2", text)
+    return _STAMP.fullmatch(_NAMED_MONTH.sub(_numbered, text))
+
+
+def _numbered(match: re.Match[str]) -> str:
+    """Return ``02-Mar-2031`` as ``2031-3-02``."""
+    return f"{match[3]}-{_MONTHS.get(match[2].lower(), 0)}-{match[1]}"
 
 
 def _of_day(match: re.Match[str]) -> int:

@@ -7,23 +7,34 @@ from dataclasses import field
 
 import numpy as np
 
-from benchtool.errors import AmbiguousStructureError, CaptureError, MalformedCaptureError
 from benchtool.formats.content import Content
-from benchtool.formats.text.cells import HIGH_WORDS, LOW_WORDS, plain
+from benchtool.formats.text.cells import plain
 from benchtool.formats.text.clockcells import ClockCells, clock_cells
-from benchtool.formats.text.columns import ClockColumn, Columns, assign_columns
+from benchtool.formats.text.column import ClockColumn
+from benchtool.formats.text.columns import Columns, assign_columns
 from benchtool.formats.text.decoding import Decoder, Wanted
 from benchtool.formats.text.encoding import Encoding, find_encoding, narrowed
 from benchtool.formats.text.ending import find_cut, last_lines
 from benchtool.formats.text.heading import Heading, read_heading
 from benchtool.formats.text.layout import Layout, is_comment
+from benchtool.formats.text.lineends import first_lines, line_offset, with_newlines
 from benchtool.formats.text.metadata import Metadata, Stated, read_metadata
 from benchtool.formats.text.readings import find_layout
+from benchtool.formats.text.refusals import (
+    no_time,
+    refuse_bare_axis,
+    refuse_lost_fractions,
+    refuse_tables,
+    refuse_thinned,
+    refuse_wrapped,
+)
+from benchtool.formats.text.states import converter
 from benchtool.formats.text.timeunit import FoundUnit, find_time_unit, stated_interval
 from benchtool.formats.text.walking import DataRows
+from benchtool.formats.text.widths import without_wide
 from benchtool.formats.text.words import TimeUnit
+from benchtool.formats.zeros import without_zeros, zeros_notice
 from benchtool.frozen import frozen_record
-from benchtool.model.arrays import FloatArray
 from benchtool.model.capture import ReadOptions
 from benchtool.model.quantity import Notice
 
@@ -47,6 +58,7 @@ class Structure:
         units: Unit of each clock column, and its evidence.
         stated: Sample interval that the user or the file states.
         warnings: What was assumed.
+        above: The lines above the first row.
     """
 
     rows: DataRows
@@ -59,6 +71,7 @@ class Structure:
     units: tuple[FoundUnit, ...]
     stated: Stated | None
     warnings: tuple[Notice, ...]
+    above: tuple[str, ...] = field(default=(), repr=False)
 
 
 @frozen_record(eq=False)
@@ -68,8 +81,8 @@ class _Text:
     content: Content
     encoding: Encoding
     codec: str
-    carriage: bool
     n_mark: int
+    n_zeros: int
     lines: list[str]
     last: list[str]
 
@@ -81,7 +94,7 @@ def find_structure(content: Content, options: ReadOptions) -> Structure:
         AmbiguousStructureError: If two readings are sound, or none gives time.
         MalformedCaptureError: If there are no rows of numbers.
     """
-    text = _open_text(content)
+    text = _open_text(content, options.skip)
     layout = find_layout(text.lines, options, content.source)
     heading = read_heading(text.lines, layout)
     metadata = read_metadata(_around(text.lines, layout, heading), layout)
@@ -89,13 +102,20 @@ def find_structure(content: Content, options: ReadOptions) -> Structure:
     columns = assign_columns(
         layout, heading, stated=known, unit_given=options.time_unit is not None
     )
-    _refuse_without_values(columns, content.source)
+    columns = _overruled(columns, layout, heading, options, content.source)
+    refuse_tables(columns, layout, heading, options, content.source)
+    refuse_lost_fractions(layout, heading, content.source)
     counted = not columns.clocks or any(c.kind == "index" for c in columns.clocks)
     stated = stated_interval((*metadata.intervals, *columns.intervals), options, needed=counted)
-    if counted and stated is None:
-        raise _no_time(content.source, columns.disordered)
+    if counted:
+        if stated is None:
+            raise no_time(content.source, columns, layout, heading)
+        refuse_thinned(metadata, options, content.source)
+        refuse_wrapped(columns, content.source)
     cells = tuple(_cells_of(clock, layout, text) for clock in columns.clocks)
-    units = tuple(_unit_of(clock, metadata, options, stated) for clock in columns.clocks)
+    units = tuple(
+        _unit_of(clock, metadata, options, stated, content.source) for clock in columns.clocks
+    )
     stop, cut = find_cut(text.content, layout, text.last)
     return Structure(
         rows=_data_rows(text, layout, columns, cells, stop),
@@ -107,37 +127,41 @@ def find_structure(content: Content, options: ReadOptions) -> Structure:
         cells=cells,
         units=units,
         stated=stated,
-        warnings=(*cut, *_assumptions(units, stated, counted=counted)),
+        warnings=(*cut, *zeros_notice(text.n_zeros), *_assumptions(units, stated, counted=counted)),
+        above=tuple(text.lines[: layout.start]),
     )
 
 
-def _open_text(content: Content) -> _Text:
+def _open_text(content: Content, skip: int | None) -> _Text:
     encoding = find_encoding(content.head())
-    narrow = narrowed(content, encoding)
-    head = narrow.head()
+    narrow, n_zeros = without_zeros(narrowed(content, encoding))
+    head = first_lines(narrow)
     codec = "utf-8" if encoding.is_wide else encoding.name
     codec = "utf-8" if codec == "ascii" else codec
     n_mark = 0 if encoding.is_wide else encoding.n_mark
-    carriage = b"\n" not in head and b"\r" in head
-    text = head[n_mark:].decode(codec, errors="replace")
-    text = text.replace("\r", "\n" if carriage else "").rstrip("\0")
+    text = with_newlines(head[n_mark:]).decode(codec, errors="replace").rstrip("\0")
     lines = text.split("\n")
     if narrow.size > len(head) or not lines[-1]:
         lines.pop()  # a line that goes on beyond the head, or the nothing after the last
+    if skip:
+        from benchtool.formats.text.overruled import passed_over
+
+        lines = passed_over(lines, skip, content.source)
     return _Text(
         content=narrow,
         encoding=encoding,
         codec=codec,
-        carriage=carriage,
         n_mark=n_mark,
-        lines=lines,
-        last=last_lines(narrow, codec, carriage=carriage),
+        n_zeros=n_zeros,
+        lines=without_wide(lines, content.source),
+        last=last_lines(narrow, codec),
     )
 
 
 def _around(lines: list[str], layout: Layout, heading: Heading) -> list[str]:
     """Return the lines around the data: before them, comments among them, cells beside them."""
-    before = [line for i, line in enumerate(lines[: layout.start]) if i not in heading.rows]
+    kept = set() if layout.n_fields == 1 else set(heading.rows)
+    before = [line for i, line in enumerate(lines[: layout.start]) if i not in kept]
     among, side = [], []
     beside = [i for i, kind in enumerate(layout.kinds) if kind not in "NSW"]
     for line in lines[layout.start : layout.start + _SIDE_LINES]:
@@ -148,31 +172,17 @@ def _around(lines: list[str], layout: Layout, heading: Heading) -> list[str]:
     return [*before, *among, *side]
 
 
-def _refuse_without_values(columns: Columns, source: str) -> None:
-    if columns.values:
-        return
-    raise MalformedCaptureError(
-        f"{source} has a time column but no column of values",
-        hint="Export the channel's values with the time.",
-        path=source,
-        code="no-values",
-    )
+def _overruled(
+    columns: Columns, layout: Layout, heading: Heading, options: ReadOptions, source: str
+) -> Columns:
+    """Return the columns as the user overrules them."""
+    if options.time is None and options.time_unit is None:
+        return columns
+    from benchtool.formats.text.overruled import overrule_time, refuse_idle_unit
 
-
-def _no_time(source: str, disordered: tuple[str, ...]) -> CaptureError:
-    if disordered:
-        return MalformedCaptureError(
-            f"the time column {disordered[0]!r} of {source} does not go forward",
-            hint="Sort the rows by time, or give --interval to count rows instead.",
-            path=source,
-            code="time-disorder",
-        )
-    return AmbiguousStructureError(
-        f"{source} has no time column and states no sample interval or rate",
-        hint="Give --interval (such as 5us) or --rate (such as 200k); if its first column is "
-        "time, say in which unit with --time-unit.",
-        code="no-time",
-    )
+    columns = overrule_time(columns, layout, heading, options, source)
+    refuse_idle_unit(columns, options, source)
+    return columns
 
 
 def _cells_of(clock: ClockColumn, layout: Layout, text: _Text) -> ClockCells:
@@ -191,12 +201,15 @@ def _joined(row: Sequence[str], clock: ClockColumn) -> str:
 
 
 def _unit_of(
-    clock: ClockColumn, metadata: Metadata, options: ReadOptions, stated: Stated | None
+    clock: ClockColumn, metadata: Metadata, options: ReadOptions, stated: Stated | None, source: str
 ) -> FoundUnit:
     if clock.kind == "index" and stated is not None:
         unit = TimeUnit(name="samples", times=stated.value)
         return FoundUnit(unit=unit, evidence=f"{clock.evidence}; interval from {stated.evidence}")
-    return find_time_unit(clock, metadata, options, stated.value if stated else None)
+    found = find_time_unit(clock, metadata, options, stated.value if stated else None)
+    if found.warnings and found.is_assumed:
+        refuse_bare_axis(clock.column, source)
+    return found
 
 
 def _assumptions(
@@ -223,12 +236,12 @@ def _data_rows(
 ) -> DataRows:
     wanted = [
         *(c.wanted for c in cells),
-        *(Wanted(field=c.field, convert=states if c.kind == "W" else None) for c in columns.values),
+        *(Wanted(field=c.field, convert=converter(c)) for c in columns.values),
+        *([Wanted(field=columns.key.field, convert=converter(columns.key))] if columns.key else []),
     ]
     decoder = Decoder(
         layout=layout,
         wanted=tuple(wanted),
-        carriage=text.carriage,
         codec=text.codec,
         n_clocks=len(cells),
         may_be_short=len(columns.clocks) > 1,
@@ -244,22 +257,7 @@ def _data_rows(
 
 def _offset(text: _Text, line: int) -> int:
     """Return the byte offset of a line of the head."""
-    head, mark = text.content.head(), b"\r" if text.carriage else b"\n"
-    at = text.n_mark
-    for _ in range(line):
-        at = head.index(mark, at) + 1
-    return at
-
-
-def states(cells: Sequence[str]) -> FloatArray:
-    """Return 1 for words of high, 0 for words of low, NaN for all else."""
-    return np.array([_state(cell.lower()) for cell in cells])
-
-
-def _state(word: str) -> float:
-    if word in HIGH_WORDS:
-        return 1.0
-    return 0.0 if word in LOW_WORDS else float("nan")
+    return text.n_mark + line_offset(first_lines(text.content)[text.n_mark :], line)
 
 
 def epoch_ns(structure: Structure) -> int | None:

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterator
+from dataclasses import replace
 
 import numpy as np
 
@@ -15,7 +16,8 @@ from benchtool.model.capture import Samples, Span, UniformTime
 from benchtool.model.quantity import Notice
 
 _AGREES = 1e-6  # a stated interval this near to the stamps' own is the one meant
-_DIFFERS = 0.01  # beyond this a stated interval contradicts the stamps
+_DIFFERS = 1e-3  # beyond this a stated interval contradicts the stamps
+_NOMINAL = 0.01  # the same where the stamps are those of another clock, or uneven
 
 
 @frozen_record(eq=False)
@@ -43,13 +45,34 @@ class Timebase:
     warnings: tuple[Notice, ...]
 
 
-def settle_time(scan: ClockScan, unit: TimeUnit, stated_s: float | None) -> Timebase:
+@frozen_record
+class StatedInterval:
+    """A sample interval that the file or the user states beside the time column.
+
+    Attributes:
+        value_s: The interval in seconds.
+        rounding: Half its last printed digit, relative to it.
+        nominal: Whether it is only the nominal one of a clock that keeps its own time.
+    """
+
+    value_s: float
+    rounding: float = 0.0
+    nominal: bool = False
+
+    def contradicts(self, step_s: float, u_rel: float) -> bool:
+        """Say whether it lies further from a step than what is rounded, or drifts, explains."""
+        off = abs(step_s / self.value_s - 1)
+        allowed = _NOMINAL if self.nominal else _DIFFERS
+        return off > max(allowed, self.rounding + 3 * u_rel)
+
+
+def settle_time(scan: ClockScan, unit: TimeUnit, stated: StatedInterval | None) -> Timebase:
     """Make the timebase of a scanned column.
 
     Args:
         scan: The finished scan.
         unit: Unit of the column.
-        stated_s: Interval that the metadata or the user state, in seconds.
+        stated: Interval that the metadata or the user state.
 
     References:
         The step is (last - first)/(n - 1); its relative standard uncertainty from two stamps
@@ -59,9 +82,11 @@ def settle_time(scan: ClockScan, unit: TimeUnit, stated_s: float | None) -> Time
     size = scan.pieces[-1].stop
     even = scan.is_even()
     step_s = unit.seconds(scan.mean_step)
-    uniform, evidence, warnings = _grid(scan, unit, stated_s) if even else (None, "", [])
+    uniform, evidence, warnings = _grid(scan, unit, stated) if even else (None, "", [])
     spans, shifts = _spans(scan.pieces, unit, uniform.dt_s if uniform else step_s, even=even)
     if not even:
+        if stated is not None and replace(stated, nominal=True).contradicts(step_s, 0.0):
+            warnings = [_differs(stated, step_s)]
         evidence = f"{size} stamps, not evenly spaced"
     return Timebase(
         uniform=uniform,
@@ -76,7 +101,7 @@ def settle_time(scan: ClockScan, unit: TimeUnit, stated_s: float | None) -> Time
 
 
 def _grid(
-    scan: ClockScan, unit: TimeUnit, stated_s: float | None
+    scan: ClockScan, unit: TimeUnit, stated: StatedInterval | None
 ) -> tuple[UniformTime, str, list[Notice]]:
     step_s = unit.seconds(scan.mean_step)
     longest = scan.longest
@@ -84,19 +109,20 @@ def _grid(
     n_rows = scan.pieces[-1].stop
     own = UniformTime(dt_s=_clean(step_s), u_rel=u_rel)
     evidence = f"(last - first)/(n - 1) over {n_rows} evenly spaced stamps"
-    if stated_s is None:
+    if stated is None:
         return own, evidence, []
-    off = abs(step_s / stated_s - 1)
-    if off <= max(3 * u_rel, _AGREES):
-        return UniformTime(dt_s=stated_s), f"stated, and {n_rows} stamps agree", []
-    if off <= _DIFFERS:
-        return own, evidence, []
-    notice = Notice(
+    off = abs(step_s / stated.value_s - 1)
+    if off <= max(3 * u_rel, _AGREES) and not stated.nominal:
+        return UniformTime(dt_s=stated.value_s), f"stated, and {n_rows} stamps agree", []
+    return own, evidence, [_differs(stated, step_s)] if stated.contradicts(step_s, u_rel) else []
+
+
+def _differs(stated: StatedInterval, step_s: float) -> Notice:
+    return Notice(
         code="interval-differs",
-        text=f"the stated sample interval {stated_s:.6g} s contradicts the time column, "
+        text=f"the stated sample interval {stated.value_s:.6g} s contradicts the time column, "
         f"whose stamps are {step_s:.6g} s apart; the time column was taken",
     )
-    return own, evidence, [notice]
 
 
 def _clean(step_s: float) -> float:

@@ -2,13 +2,14 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Sequence
 
 import numpy as np
 
 from benchtool.errors import AmbiguousStructureError
 from benchtool.formats.text import words
-from benchtool.formats.text.columns import ClockColumn
+from benchtool.formats.text.column import ClockColumn, Column
 from benchtool.formats.text.metadata import Metadata, Stated
 from benchtool.formats.text.words import SECOND, TIME_UNITS, TimeUnit
 from benchtool.frozen import frozen_record
@@ -18,6 +19,7 @@ from benchtool.model.quantity import Notice
 
 _EPOCHS = ((1e9, "s"), (1e12, "ms"), (1e15, "us"), (1e18, "ns"))  # 2001-09-09 to 2096-10-02
 _EPOCH_SPAN = 4.0
+_SERIAL_DAYS = (36526.0, 73051.0)  # 2000-01-01 to 2100-01-01
 
 
 @frozen_record(eq=False)
@@ -28,6 +30,11 @@ class FoundUnit:
     evidence: str
     warnings: tuple[Notice, ...] = ()
 
+    @property
+    def is_assumed(self) -> bool:
+        """Whether nothing in the file tells the unit."""
+        return any(notice.code == "assumed-time-unit" for notice in self.warnings)
+
 
 def find_time_unit(
     clock: ClockColumn, metadata: Metadata, options: ReadOptions, stated_s: float | None
@@ -35,16 +42,23 @@ def find_time_unit(
     """Return the unit of a time column.
 
     Raises:
-        AmbiguousStructureError: If the file names a unit that is none of time.
+        AmbiguousStructureError: If the file names a unit that is none of time, or none for a column
+            of whole numbers (``no-time-unit``).
     """
     if clock.kind == "stamp":
         return FoundUnit(unit=SECOND, evidence="calendar stamps")
     if options.time_unit is not None:
         return FoundUnit(unit=named_unit(options.time_unit), evidence="--time-unit")
     column = clock.column
+    if column.kind == "N" and re.search(r"[x×*·] ?1[0e]|10\^", column.raw):
+        raise AmbiguousStructureError(
+            f"the header {column.raw!r} gives a factor beside the unit of time",
+            hint="Name the unit that the numbers are in with --time-unit s, ms, us or ns.",
+        )
     unit = words.time_unit(column.unit) if column.unit else _in_name(column.name)
     if unit is not None:
-        return FoundUnit(unit=unit, evidence=f"header {column.raw!r}")
+        notices = _contradicted(unit, metadata, column.raw)
+        return FoundUnit(unit=unit, evidence=f"header {column.raw!r}", warnings=notices)
     if column.unit:
         raise AmbiguousStructureError(
             f"the time column {column.raw!r} has a unit that is none of time: {column.unit!r}",
@@ -52,7 +66,25 @@ def find_time_unit(
         )
     if metadata.time_unit is not None:
         return FoundUnit(unit=metadata.time_unit[0], evidence=metadata.time_unit[1])
-    return _by_interval(column.head, stated_s) or _by_epoch(column.head) or _assumed(clock)
+    return (
+        _by_interval(column.head, stated_s)
+        or _by_epoch(column.head)
+        or _by_serial_day(column)
+        or _assumed(clock)
+    )
+
+
+def _contradicted(unit: TimeUnit, metadata: Metadata, raw: str) -> tuple[Notice, ...]:
+    """Say so where the lines around the data give another unit than the header."""
+    if metadata.time_unit is None or metadata.time_unit[0] == unit:
+        return ()
+    other, evidence = metadata.time_unit
+    notice = Notice(
+        code="time-unit-differs",
+        text=f"the header {raw!r} gives the time in {unit.name}, the {evidence} in {other.name}; "
+        "the header was taken (--time-unit)",
+    )
+    return (notice,)
 
 
 def named_unit(name: str) -> TimeUnit:
@@ -70,7 +102,7 @@ def named_unit(name: str) -> TimeUnit:
 
 
 def _in_name(name: str) -> TimeUnit | None:
-    parts = words.normal(name).split()
+    parts = [part.removeprefix("time") for part in words.normal(name).split()]
     known = [TIME_UNITS[p] for p in parts if p in TIME_UNITS and (len(p) > 1 or len(parts) == 1)]
     return known[-1] if known else None
 
@@ -97,13 +129,37 @@ def _by_epoch(head: FloatArray) -> FoundUnit | None:
     return None
 
 
+def _by_serial_day(column: Column) -> FoundUnit | None:
+    """Find days since 1900, as spreadsheets keep dates, under a name that says date."""
+    told = column.head[np.isfinite(column.head)]
+    dated = {"date", "datum", "datetime"} & set(words.normal(column.name).split())
+    if not dated or not told.size or not _SERIAL_DAYS[0] <= told[0] < _SERIAL_DAYS[1]:
+        return None
+    evidence = f"{told[0]:.9g} days since 1900, as spreadsheets keep a date"
+    return FoundUnit(unit=TIME_UNITS["days"], evidence=evidence)
+
+
 def _assumed(clock: ClockColumn) -> FoundUnit:
+    """Assume seconds, which fractions are printed in; whole numbers may count anything.
+
+    Raises:
+        AmbiguousStructureError: If the column holds whole numbers alone (``no-time-unit``).
+    """
+    told = clock.column.head[np.isfinite(clock.column.head)]
+    if np.array_equal(told, np.floor(told)) and not words.is_bare_axis(clock.column.name):
+        raise AmbiguousStructureError(
+            f"the time column ({clock.column.title}) holds whole numbers and no unit: they may be "
+            "seconds, milliseconds, microseconds or ticks",
+            hint="Name the unit with --time-unit s, ms, us or ns; if they only count the rows, "
+            "give --time none and --interval.",
+            code="no-time-unit",
+        )
     notice = Notice(
         code="assumed-time-unit",
         text=f"the file gives no unit for its time column ({clock.column.title}): seconds are "
         "assumed; another unit scales every time (--time-unit)",
     )
-    return FoundUnit(unit=SECOND, evidence="assumed, no unit in the file", warnings=(notice,))
+    return FoundUnit(unit=SECOND, evidence="no unit in the file", warnings=(notice,))
 
 
 def stated_interval(

@@ -7,9 +7,9 @@ import math
 import numpy as np
 
 from benchtool.errors import MalformedCaptureError
-from benchtool.formats.clock import examine_steps
 from benchtool.formats.grid import greatest_common_spacing
 from benchtool.formats.logic import UNKNOWN, States, logic_trace
+from benchtool.formats.steps import examine_steps
 from benchtool.formats.text.cells import EDGE_WORDS
 from benchtool.formats.text.words import TimeUnit
 from benchtool.frozen import frozen_record
