@@ -23,7 +23,7 @@ from benchtool.model.quantity import Notice
 from benchtool.model.result import Analysis, Source, StageResult
 from benchtool.model.timing import Timing
 from benchtool.observation import glance, observe, settle
-from benchtool.targets import Target, choose_stages, choose_targets, line_up
+from benchtool.targets import Target, choose_stages, choose_targets, find_channel, line_up
 
 if TYPE_CHECKING:
     from benchtool.model.design import Design, Ic, Probe, TopologyName
@@ -49,27 +49,35 @@ def look(sources: Sequence[FilePath], *, options: MeasureOptions = DEFAULTS) -> 
     Raises:
         InputError: If a file cannot be opened.
         CaptureError: If one holds no capture, or could be read in two ways.
+        UsageError: If one has no channel of the name given (``no-such-channel``).
     """
     settings = settle(options, None)
-    captures = [read_capture(source, options.read) for source in sources]
+    captures = [_read(source, options) for source in sources]
     results = tuple(
-        replace(glance(Target(shape=shape, role=role), settings), source=number)
-        for number, lineup in enumerate(map(line_up, captures))
-        for shape, role in zip(lineup.shapes[:MOST_LISTED], lineup.roles, strict=False)
+        replace(glance(Target(shape=lineup.shapes[i], role=lineup.roles[i]), settings), source=k)
+        for k, lineup in enumerate(map(line_up, captures))
+        for i in _listed(lineup.capture, options.read.channel or lineup.capture.channel)
     )
     return Analysis(
         command="look",
-        sources=tuple(_source(capture) for capture in captures),
+        sources=tuple(_source(capture, options) for capture in captures),
         results=results,
-        warnings=(*_warnings(captures), *_unlisted(captures)),
+        warnings=(*_warnings(captures), *_unlisted(captures, options)),
     )
 
 
-def _unlisted(captures: Sequence[Capture]) -> Iterator[Notice]:
-    """Count the traces that ``look`` leaves out."""
+def _listed(capture: Capture, channel: str | None) -> Sequence[int]:
+    """Return which traces ``look`` lists: the one that was named, or the first ones."""
+    if channel is not None:
+        return (find_channel(capture, channel),)
+    return range(min(len(capture.traces), MOST_LISTED))
+
+
+def _unlisted(captures: Sequence[Capture], options: MeasureOptions) -> Iterator[Notice]:
+    """Count the traces that ``look`` leaves out without having been told to."""
     for capture in captures:
         more = len(capture.traces) - MOST_LISTED
-        if more > 0:
+        if more > 0 and not (options.read.channel or capture.channel):
             text = f"{capture.origin.source} holds {more} more traces than are listed"
             yield Notice(code="traces-not-listed", text=text)
 
@@ -229,6 +237,16 @@ def _given(timing: Timing, design: Design | None, stage: str | None) -> Analysis
     return Analysis(command="solve", sources=(), results=(result,), design=design)
 
 
+def _read(source: FilePath, options: MeasureOptions) -> Capture:
+    """Read a capture, or the part of it that is asked for."""
+    capture = read_capture(source, options.read)
+    if options.window is None:
+        return capture
+    from benchtool.timing.window import narrow
+
+    return narrow(capture, options.window)
+
+
 def _observe_all(
     source: FilePath,
     design: Design | None,
@@ -236,14 +254,14 @@ def _observe_all(
     options: MeasureOptions,
     command: str,
 ) -> Analysis:
-    capture = read_capture(source, options.read)
+    capture = _read(source, options)
     settings = settle(options, design)
     targets = choose_targets(
         line_up(capture), channel=options.read.channel, design=design, stage=stage
     )
     return Analysis(
         command=command,
-        sources=(_source(capture),),
+        sources=(_source(capture, options),),
         results=tuple(
             observe(target, settings, design, required=command != "judge") for target in targets
         ),
@@ -278,8 +296,13 @@ def _placed(probe: Probe, design: Design) -> Probe:
     return probe
 
 
-def _source(capture: Capture) -> Source:
+def _source(capture: Capture, options: MeasureOptions) -> Source:
     origin = capture.origin
+    typed: tuple[str, ...] = ()
+    if options.window is not None or options.read != DEFAULTS.read:
+        from benchtool.formats.overrules import words_of
+
+        typed = words_of(options.read, options.window)
     return Source(
         role="main",
         name=origin.source,
@@ -288,6 +311,8 @@ def _source(capture: Capture) -> Source:
         structure=capture.structure,
         start_ns=origin.start_ns,
         instrument=origin.instrument,
+        window=capture.window,
+        options=typed,
     )
 
 

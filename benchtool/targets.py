@@ -62,7 +62,8 @@ def choose_targets(
 
     Args:
         lineup: The capture, its traces and their roles.
-        channel: Name or number, from 1, of the trace that the user chose.
+        channel: Name or number, from 1, of the trace that the user chose. A kept structure's
+            channel counts where neither the user nor the design names one.
         design: The design, where there is one.
         stage: Name of the one stage to measure.
 
@@ -71,13 +72,15 @@ def choose_targets(
             (``choose-channel``, ``no-such-channel``, ``no-such-stage``).
     """
     if design is None:
-        return (_target(lineup, _pick(lineup, channel)),)
+        return (_target(lineup, _pick(lineup, channel or lineup.capture.channel)),)
     stages = choose_stages(design, stage)
     if channel is not None and len(stages) > 1:
         raise UsageError(
             f"--channel names one trace and {design.source} has {len(stages)} stages",
             hint=f"Add --stage: {', '.join(item.name for item in stages)}.",
         )
+    if len(stages) == 1 and not (stages[0].channel or stages[0].capacitor):
+        channel = channel or lineup.capture.channel
     return tuple(_stage_target(lineup, item, channel, alone=len(stages) == 1) for item in stages)
 
 
@@ -88,8 +91,10 @@ def find_channel(capture: Capture, name: str) -> int:
         UsageError: If there is none (``no-such-channel``); the hint lists those there are.
     """
     names = [trace.channel for trace in capture.traces]
-    if name in names:
-        return names.index(name)
+    scope = next((f"{p.value}." for p in capture.structure if p.name == "scope"), "")
+    for called in (name, name.removeprefix(scope)):  # a path may name the scope around all
+        if called in names:
+            return names.index(called)
     folded = [item.casefold() for item in names]
     if folded.count(name.casefold()) == 1:
         return folded.index(name.casefold())

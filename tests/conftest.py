@@ -2,10 +2,19 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterator
 from pathlib import Path
 
 import pytest
 from captures import DESIGN, write_square
+
+
+@pytest.fixture(scope="session", autouse=True)
+def no_structures_of_the_user(tmp_path_factory: pytest.TempPathFactory) -> Iterator[None]:
+    """Keep what the user of this machine keeps out of the tests."""
+    with pytest.MonkeyPatch.context() as patch:
+        patch.setenv("XDG_CONFIG_HOME", str(tmp_path_factory.mktemp("config")))
+        yield
 
 
 @pytest.fixture

@@ -70,11 +70,21 @@ def main(arguments: Sequence[str]) -> int:
     try:
         # click's own ``main`` ends differently from version to version; its two steps do not
         with program.make_context("benchtool", list(arguments)) as context:
-            code = program.invoke(context)
+            code = _invoke(context, arguments)
         sys.stdout.flush()
     except BaseException as error:
         return _end(error, list(arguments))
     return code if isinstance(code, int) else exits.OK
+
+
+def _invoke(context: click.Context, arguments: Sequence[str]) -> object:
+    """Run the verb; where a terminal listens, it is shown how far a long walk has come."""
+    if "--quiet" in arguments or not sys.stderr.isatty():
+        return program.invoke(context)
+    from benchtool.cli.progress import progress_shown
+
+    with progress_shown():
+        return program.invoke(context)
 
 
 def _end(error: BaseException, arguments: list[str]) -> int:

@@ -27,8 +27,14 @@ report_option = click.option(
 
 _READING = (
     click.option("--format", "format_", metavar="NAME", help="text, vcd, npz or wav."),
-    click.option("--delimiter", metavar="CHAR", help="Column delimiter: , ; tab | space."),
+    click.option("--delimiter", metavar="CHAR", help="Column delimiter: , ; tab | space or none."),
     click.option("--decimal", type=click.Choice([".", ","]), help="Decimal mark of the numbers."),
+    click.option(
+        "--skip", type=click.IntRange(min=0), metavar="N", help="Pass over the first N lines."
+    ),
+    click.option(
+        "--time", metavar="COLUMN", help="Column of time, by name or number; none counts the rows."
+    ),
     click.option(
         "--time-unit",
         type=click.Choice(["s", "ms", "us", "ns", "ps", "fs"]),
@@ -37,6 +43,14 @@ _READING = (
     click.option("--interval", metavar="TIME", help="Sample interval, such as 5us."),
     click.option("--rate", metavar="FREQ", help="Sample rate, such as 200kHz."),
     click.option("--channel", metavar="NAME", help="Trace to measure, by name or number."),
+    click.option(
+        "--structure", metavar="NAME", help="Read it as the structure kept as NAME, or as none."
+    ),
+)
+
+_WINDOW = (
+    click.option("--from", "from_", metavar="TIME", help="Measure from here, after the start."),
+    click.option("--to", metavar="TIME", help="Measure up to here, after the start."),
 )
 
 _MEASURING = (
@@ -67,7 +81,7 @@ def measuring_options(function: Function) -> Function:
     def gather(**given: Any) -> Any:
         return function(options=_measure_options(given), **given)
 
-    return _decorate(gather, (*_READING, *_MEASURING))
+    return _decorate(gather, (*_READING, *_WINDOW, *_MEASURING))
 
 
 def _decorate(function: Function, options: tuple[Any, ...]) -> Function:
@@ -86,13 +100,17 @@ def _measure_options(given: dict[str, Any]) -> Any:
         format=given.pop("format_"),
         delimiter=given.pop("delimiter"),
         decimal=given.pop("decimal"),
+        time=given.pop("time"),
         time_unit=given.pop("time_unit"),
         interval_s=_interval(interval, rate),
+        skip=given.pop("skip"),
         channel=given.pop("channel"),
+        structure=given.pop("structure"),
     )
     active: Literal["high", "low"] | None = given.pop("active")
     return MeasureOptions(
         read=read,
+        window=_window(given.pop("from_"), given.pop("to")),
         active=active,
         level_v=value_of("--level", given.pop("level"), "V"),
         timebase_rel=share("--timebase", given.pop("timebase")),
@@ -143,6 +161,27 @@ def _interval(interval: str | None, rate: str | None) -> float | None:
         rate_hz = positive("--rate", rate, "Hz")
         return None if rate_hz is None else 1 / rate_hz
     return positive("--interval", interval, "s")
+
+
+def _window(start: str | None, stop: str | None) -> Any:
+    """Return the part of the record to measure; None for all of it."""
+    if start is None and stop is None:
+        return None
+    import math
+
+    from benchtool.model.window import Window
+
+    from_s, to_s = value_of("--from", start, "s") or 0.0, positive("--to", stop, "s") or math.inf
+    if from_s < 0:
+        raise UsageError(
+            f"--from counts from the first sample and cannot be negative, got {start}",
+            hint="Give a time from 0 on.",
+        )
+    if from_s >= to_s:
+        raise UsageError(
+            f"--from {start} does not lie before --to {stop}", hint="Exchange them, or leave one."
+        )
+    return Window(from_s=from_s, to_s=to_s)
 
 
 def _probe(text: str | None) -> Any:

@@ -98,8 +98,10 @@ class Output:
         """Draw on the screen, or into the file of ``-o`` without colour."""
         if self.quiet and self.path is None:
             return
+        from benchtool.cli.progress import make_room
         from benchtool.cli.screen import make_console
 
+        make_room()
         if self.path is None:
             draw(make_console(sys.stdout, no_color=self.no_color))
             return
@@ -143,8 +145,10 @@ class Output:
     def _deliver(self, text: str) -> None:
         if self.path is None or self.path == "-":
             if self.as_json or not self.quiet:
+                from benchtool.cli.progress import make_room
                 from benchtool.report.text import spelled
 
+                make_room()
                 sys.stdout.write(spelled(text, sys.stdout.encoding or "utf-8"))
             return
         write_file(Path(self.path), text.encode(), force=self.force)

@@ -2,15 +2,16 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterator, Mapping
 from dataclasses import replace
 from pathlib import Path
 from typing import cast
 
-from benchtool.errors import AmbiguousStructureError, UnknownStructureError
+from benchtool.errors import AmbiguousStructureError, BenchtoolError, UnknownStructureError
 from benchtool.formats.claim import Claim, Format
 from benchtool.formats.content import IN_MEMORY_BYTES, Content, open_content
-from benchtool.model.capture import Capture, ReadOptions
+from benchtool.formats.keptplaces import places
+from benchtool.model.capture import Capture, ReadOptions, StructurePoint
 from benchtool.plugins import Registry
 
 FORMATS = Registry(
@@ -24,6 +25,11 @@ FORMATS = Registry(
 )
 
 _DEFAULTS = ReadOptions()
+_NOTHING: Mapping[str, str] = {}
+_ASSUMED = {
+    "assumed-volts": ("volts", "V", "no unit in the file"),
+    "assumed-first-edge": ("first row", "an edge", "no like interval to check it against"),
+}
 
 
 def read_capture(
@@ -48,14 +54,62 @@ def read_capture(
         UnknownStructureError: No format claims it.
         AmbiguousStructureError: Two readings are sound; the hint names the option.
         MalformedCaptureError: The file is damaged or holds nothing to measure.
+        UsageError: An option cannot apply, or a kept structure has a fault.
     """
     content = open_content(source, in_memory_bytes)
-    capture = choose_format(content, options).read(content, options)
-    return replace(
+    if options.structure is None and not places(content.source):
+        return _read_as(content, options, _NOTHING)
+    from benchtool.formats.keptfiles import choose_kept
+
+    kept = choose_kept(content, options.structure)
+    if kept is None:
+        return _read_as(content, options, _NOTHING)
+    from benchtool.formats.kept import merged, said
+
+    chosen, words = merged(options, kept)
+    try:
+        capture = _read_as(content, chosen, words)
+        return said(capture, kept, words, named=options.structure is not None)
+    except BenchtoolError as error:
+        error.hint += f" (It is {kept.words}; --structure none reads it without.)"
+        raise
+
+
+def _read_as(content: Content, options: ReadOptions, kept: Mapping[str, str]) -> Capture:
+    """Read a capture with all options settled; ``kept`` names those that a user keeps."""
+    format_ = choose_format(content, options)
+    overruled = options != _DEFAULTS
+    if overruled:
+        from benchtool.formats.overrules import marked, refuse_idle
+
+        refuse_idle(options, format_.name, content.source)
+    try:
+        capture = format_.read(content, options)
+    except AmbiguousStructureError as error:
+        if not error.ways:
+            raise
+        from benchtool.formats.trials import tried
+
+        raise tried(error, format_, content, options) from None
+    if options.interval_s is not None:
+        from benchtool.formats.retiming import retimed
+
+        capture = retimed(capture, options.interval_s)
+    if overruled:
+        capture = marked(capture, options, kept)
+    whole = replace(
         capture,
         warnings=(*content.warnings, *capture.warnings),
-        structure=(*content.structure, *capture.structure),
+        structure=(*content.structure, *capture.structure, *_assumed_points(capture)),
     )
+    return content.settled(whole)
+
+
+def _assumed_points(capture: Capture) -> Iterator[StructurePoint]:
+    """Yield what was assumed and stands nowhere else in the structure."""
+    codes = dict.fromkeys(notice.code for notice in capture.warnings)
+    for name, value, evidence in (_ASSUMED[code] for code in codes if code in _ASSUMED):
+        yield StructurePoint(name=name, value=value, evidence=evidence, sure="assumed")
 
 
 def choose_format(content: Content, options: ReadOptions) -> Format:

@@ -4,6 +4,8 @@ from __future__ import annotations
 
 import shlex
 
+from benchtool.model.result import Source
+
 
 def quoted(name: str) -> str:
     """Return a file name as a shell word; one that begins with a dash gets ``./`` before it.
@@ -13,3 +15,8 @@ def quoted(name: str) -> str:
     if name == "-":
         return "FILE"
     return shlex.quote(f"./{name}" if name.startswith("-") else name)
+
+
+def same_capture(source: Source) -> str:
+    """Return the words that read a file again as it was read: its name and the options given."""
+    return " ".join([quoted(source.name), *map(shlex.quote, source.options)])

@@ -7,17 +7,16 @@ from collections.abc import Callable
 from typing import TYPE_CHECKING, Any
 
 from benchtool.errors import BenchtoolError, DesignError
-from benchtool.model.capture import StructurePoint
 from benchtool.model.quantity import Bound, Measured, Notice, Quantity
 from benchtool.model.result import (
     Analysis,
     Finding,
     IntervalCounts,
-    Source,
     StageResult,
     TraceFacts,
 )
 from benchtool.model.timing import Jitter, Levels, StabilityPoint, Timing
+from benchtool.report.sources import source_document
 from benchtool.uncertainty import coverage_factor
 
 if TYPE_CHECKING:
@@ -48,7 +47,7 @@ def analysis_document(
         "command": analysis.command,
         "version": version,
         "made_at": made_at,
-        "sources": [_source(item) for item in analysis.sources],
+        "sources": [source_document(item) for item in analysis.sources],
         "results": [_result(item, parts, several) for item in analysis.results],
     }
     if analysis.verdict is not None:
@@ -113,21 +112,6 @@ def quantity(item: Quantity | None) -> Json | None:
         "U": k * item.u,
         "n": item.n,
     }
-
-
-def _source(item: Source) -> Json:
-    return {
-        "role": item.role,
-        "name": item.name,
-        "sha256": item.sha256,
-        "format": item.format,
-        "structure": structure(item.structure),
-    }
-
-
-def structure(points: tuple[StructurePoint, ...]) -> dict[str, str]:
-    """Return what was found of a file's structure, name to value."""
-    return {point.name: point.value for point in points}
 
 
 def _notice(item: Notice) -> Json:

@@ -201,9 +201,10 @@ def test_a_dead_board_says_what_is_seen_and_what_it_may_be(show: Show) -> None:
 
 def test_looking_shows_every_point_with_its_evidence(show: Show) -> None:
     out = show("look GOOD")
-    assert re.search(r"^  structure +found +from$", out, re.MULTILINE)
-    assert re.search(r"delimiter +, +\S+", out)
-    assert re.search(r"time_unit +s +header", out)
+    assert re.search(r"^  structure +found +how sure +from$", out, re.MULTILINE)
+    assert re.search(r"delimiter +, +measured +\S+", out)
+    assert re.search(r"unit of time +s +stated +header 'Time \(s\)'", out)
+    assert re.search(r"interval +[\d.]+ m?s +measured", out)
     assert "OUT: output" in out
     assert re.search(r"levels .*12.* V", out)
 

@@ -73,9 +73,10 @@ def draw_pictures(result: StageResult, *, prefix: str) -> tuple[Picture, ...]:
     if overview.periods_s.size > 1:
         centre = _Centre.of(result, overview)
         caption = f"Periods, as distance from {centre.text}"
-        found.append(
-            ("histogram", caption, _NARROW_IN, lambda axes: _histogram(axes, overview, centre))
-        )
+        if overview.histogram_count.size:  # equal periods have none
+            found.append(
+                ("histogram", caption, _NARROW_IN, lambda axes: _histogram(axes, overview, centre))
+            )
         found.append(
             ("periods", "The same over time", _NARROW_IN, lambda a: _over_time(a, overview, centre))
         )

@@ -51,7 +51,7 @@ def picture_rows(result: StageResult) -> list[str]:
         else []
     )
     if overview.periods_s.size > 1:
-        rows += [*_gap(rows), *_histogram(overview), "", *_over_time(overview)]
+        rows += [*_gap(rows), *_histogram(overview), *_over_time(overview)]
     return rows
 
 
@@ -89,6 +89,8 @@ def _trace(overview: Overview, unit: str) -> list[str]:
 
 def _histogram(overview: Overview) -> list[str]:
     count, limits_s = overview.histogram_count, overview.histogram_s
+    if not count.size:  # equal periods have none
+        return []
     grid = _Grid(rows=5, low=0.0, high=float(count.max()) or 1.0)
     for column in range(_COLUMNS):
         taken = float(count[column * count.size // _COLUMNS])
@@ -98,6 +100,7 @@ def _histogram(overview: Overview) -> list[str]:
         "Histogram of the periods",
         *grid.lines(f"{count.max():g}", "0"),
         _axis(format_value(float(limits_s[0]), "s", 6), format_value(float(limits_s[-1]), "s", 6)),
+        "",
     ]
 
 

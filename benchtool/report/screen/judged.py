@@ -7,7 +7,7 @@ from rich.text import Text
 
 from benchtool.model.judgement import Check
 from benchtool.model.result import Analysis, StageResult
-from benchtool.report.commands import quoted
+from benchtool.report.commands import quoted, same_capture
 from benchtool.report.numberline import draw_line
 from benchtool.report.phrases import (
     VERDICT_STYLES,
@@ -104,7 +104,7 @@ def _odds(check: Check) -> str:
 
 
 def _next_command(analysis: Analysis) -> str:
-    name = quoted(analysis.sources[0].name)
+    name = same_capture(analysis.sources[0])
     design = quoted(analysis.design.source) if analysis.design else "DESIGN.toml"
     if analysis.verdict == "pass":
         return f"benchtool judge {name} --design {design} --report board.html"

@@ -7,8 +7,9 @@ import shlex
 
 from rich.console import Console
 
+from benchtool.model.capture import StructurePoint
 from benchtool.model.result import Analysis, StageResult
-from benchtool.report.commands import quoted
+from benchtool.report.commands import same_capture
 from benchtool.report.screen.blocks import (
     draw_heading,
     draw_line,
@@ -19,20 +20,37 @@ from benchtool.report.screen.blocks import (
 from benchtool.report.screen.measured import trace_line
 from benchtool.units import format_value
 
+_NAMES = {"time_unit": "unit of time"}
+_DIGITS = 9
+
 
 def draw_looked(console: Console, analysis: Analysis) -> None:
     """Draw the structure with its evidence, then a row a trace."""
     for index, source in enumerate(analysis.sources):
         draw_heading(console, f"read as {source.format}", source.name)
         console.print()
-        rows = [(point.name, point.value, point.evidence) for point in source.structure]
-        draw_rows(console, rows, heads=("structure", "found", "from"))
+        rows = [_row(point) for point in source.structure]
+        draw_rows(console, rows, heads=("structure", "found", "how sure", "from"))
         console.print()
         for result in analysis.results:
             if result.source == index:
                 _draw_trace(console, result)
     draw_notes(console, analysis)
     draw_next(console, _next_command(analysis))
+
+
+def _row(point: StructurePoint) -> tuple[str, str, str, str]:
+    name = _NAMES.get(point.name, point.name)
+    return name, _legible(point.value), point.sure, point.evidence
+
+
+def _legible(value: str) -> str:
+    """Return a value in plain seconds with its prefix, anything else as it is."""
+    number, _, unit = value.partition(" ")
+    try:
+        return format_value(float(number), "s", _DIGITS) if unit == "s" else value
+    except ValueError:
+        return value
 
 
 def _draw_trace(console: Console, result: StageResult) -> None:
@@ -69,7 +87,7 @@ def _gaps_line(result: StageResult) -> str:
 
 
 def _next_command(analysis: Analysis) -> str:
-    name = quoted(analysis.sources[0].name)
+    name = same_capture(analysis.sources[0])
     counts = [r.intervals for r in analysis.results if r.intervals]
     if not any(count.high or count.low for count in counts):
         return "benchtool explain no-interval"

@@ -7,7 +7,7 @@ from rich.console import Console
 from benchtool.model.quantity import Measured, Quantity
 from benchtool.model.result import Analysis, StageResult
 from benchtool.model.timing import Jitter, Timing
-from benchtool.report.commands import quoted
+from benchtool.report.commands import same_capture
 from benchtool.report.phrases import file_name, gloss, quantity_text
 from benchtool.report.screen.blocks import (
     draw_heading,
@@ -35,7 +35,7 @@ def draw_measured(console: Console, analysis: Analysis, *, budget: bool = False)
         if budget:
             draw_budgets(console, result)
         draw_notes(console, analysis, result)
-    name = quoted(analysis.sources[0].name)
+    name = same_capture(analysis.sources[0])
     draw_next(console, f"benchtool solve {name} --topology {_topology(analysis.results[0])}")
 
 

@@ -8,7 +8,7 @@ from rich.text import Text
 from benchtool.model.judgement import PartEstimate, Solution
 from benchtool.model.quantity import Quantity
 from benchtool.model.result import Analysis, StageResult
-from benchtool.report.commands import quoted
+from benchtool.report.commands import quoted, same_capture
 from benchtool.report.phrases import file_name, product_names, quantity_text, ratio_text
 from benchtool.report.screen.blocks import (
     draw_cells,
@@ -36,7 +36,7 @@ def draw_solved(console: Console, analysis: Analysis) -> None:
         draw_notes(console, analysis, result)
     if analysis.sources:
         design = analysis.design.source if analysis.design else "DESIGN.toml"
-        command = f"benchtool judge {quoted(analysis.sources[0].name)} --design {quoted(design)}"
+        command = f"benchtool judge {same_capture(analysis.sources[0])} --design {quoted(design)}"
     else:
         command = "benchtool explain tau_charge"
     draw_next(console, command)
