@@ -24,7 +24,7 @@ from benchtool.errors import (
     UnknownStructureError,
 )
 from benchtool.formats import read_capture
-from benchtool.model.capture import Waveform
+from benchtool.model.capture import StampedTime, Waveform
 
 CORPUS = Path(__file__).parents[1] / "malformed"
 
@@ -51,6 +51,10 @@ REFUSED: dict[str, tuple[type[CaptureError], str]] = {
     "odd_timescale.vcd": (MalformedCaptureError, "malformed-capture"),
     "one_row.csv": (MalformedCaptureError, "one-row"),
     "pickled.npy": (MalformedCaptureError, "pickled"),
+    "states_that_do_not_change.npz": (MalformedCaptureError, "malformed-capture"),
+    "times_all_subnormal.csv": (MalformedCaptureError, "time-disorder"),
+    "transitions_outside_the_record.npz": (MalformedCaptureError, "malformed-capture"),
+    "values_all_overflow.csv": (MalformedCaptureError, "no-values"),
     "picture_named_csv.csv": (UnknownStructureError, "unknown-structure"),
     "prose.csv": (MalformedCaptureError, "no-rows"),
     "thousand_or_fraction.csv": (AmbiguousStructureError, "ambiguous-structure"),
@@ -66,20 +70,27 @@ REFUSED: dict[str, tuple[type[CaptureError], str]] = {
 }
 
 READ: dict[str, tuple[list[str], int]] = {
+    "archive_with_notes.npz": (["assumed-volts"], 40),
     "cut_gz.csv.gz": (["file-cut", "file-cut"], 250),
     "cut_in_a_change.vcd": (["file-cut"], 0),
     "cut_in_mid_line.csv": (["file-cut"], 60),
     "duplicated_times.csv": (["repeated-stamps"], 60),
     "flat_line.csv": ([], 60),
+    "integers_with_a_row_lost.csv": (["gaps", "rows-skipped"], 59),
     "lost_rows.csv": (["gaps"], 55),
     "one_edge.csv": ([], 60),
+    "one_overflow.csv": (["values-missing"], 60),
+    "overflow_before_the_signal.csv": (["values-missing"], 160),
     "ragged_rows.csv": (["gaps", "rows-skipped"], 58),
     "shorter_than_its_header.wav": (["assumed-volts", "file-cut"], 149),
     "single_step_backwards.csv": (["time-backwards", "gaps"], 59),
     "some_nan_and_words.csv": (["values-missing"], 60),
     "time_without_unit.csv": (["assumed-time-unit"], 60),
+    "uneven_behind_an_even_head.csv": (["repeated-stamps"], 62),
+    "times_that_repeat_for_no_grid.npz": (["repeated-stamps", "assumed-volts"], 4),
+    "times_beyond_any_record.npz": (["repeated-stamps", "assumed-volts"], 3),
     "unknown_states.vcd": ([], 0),
-    "zeros_at_the_end.csv": ([], 60),
+    "zeros_at_the_end.csv": (["file-cut"], 60),
 }
 
 
@@ -121,6 +132,10 @@ def test_damage_is_counted_and_the_rest_is_read(name: str, limit: int) -> None:
         for n in capture.warnings
     )
     trace = capture.traces[0]
+    if isinstance(trace, Waveform):
+        assert sum(b.size for b in trace.samples.blocks()) == trace.samples.size
+        if isinstance(trace.time, StampedTime):
+            assert sum(b.size for b in trace.time.stamps.blocks()) == trace.samples.size
     if size and name != "cut_gz.csv.gz":
         assert trace.samples.size == size  # type: ignore[union-attr]
     elif size:
