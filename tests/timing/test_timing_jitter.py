@@ -96,6 +96,19 @@ def test_a_jitter_below_the_grid_is_only_bounded() -> None:
     assert [notice.code for notice in jitter.warnings] == ["jitter-below-grid"]
 
 
+def test_periods_that_fall_alike_on_the_grid_bound_no_jitter_at_nought() -> None:
+    """A jitter whose edges all stay inside one step is not seen at all."""
+    rng = np.random.default_rng(6)
+    true_s = 0.5 + np.cumsum(rng.normal(100.0, 0.01, 31))
+    edges = edges_of(np.floor(true_s), step_s=1.0)
+    jitter = measure_jitter(find_intervals(edges), edges)
+    assert np.ptp(find_intervals(edges).period_s) == 0
+    assert isinstance(jitter.period_sd, Bound)
+    assert jitter.period_sd.at_most == pytest.approx(1 / np.sqrt(6))  # two rounding errors
+    assert isinstance(jitter.cycle_rms, Bound)
+    assert jitter.cycle_rms.at_most == pytest.approx(1 / np.sqrt(2))  # 1, -2, 1 of them
+
+
 def test_observed_variance_is_that_of_rounded_periods() -> None:
     rng = np.random.default_rng(5)
     for sigma, period in ((0.0, 10.3), (0.15, 10.0), (0.4, 10.5), (1.5, 10.2)):
