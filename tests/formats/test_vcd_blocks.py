@@ -206,3 +206,16 @@ def test_random_dump_of_another_writer_is_read_back(
         edges = [(t, s) for (t, s), (_, old) in zip(steps[1:], steps, strict=False) if s != old]
         assert np.rint(trace.times_s * 1e6).astype(int).tolist() == [t for t, _ in edges]
         assert trace.states.tolist() == [s == 1 for _, s in edges]
+
+
+@pytest.mark.parametrize("block", [8000, 9001, 10_003])
+def test_a_state_said_again_where_a_block_begins_is_no_transition(
+    read: Read, monkeypatch: pytest.MonkeyPatch, block: int
+) -> None:
+    """Times of changes share 10 counts; the same state is said again off that spacing."""
+    monkeypatch.setattr(body_module, "_BLOCK", block)
+    rows = [f"#{10 * k}\n{k % 2}!\n#{10 * k + 3}\n{k % 2}!\n" for k in range(1, 5000)]
+    head = "$timescale 1 us $end\n$var wire 1 ! OUT $end\n$enddefinitions $end\n#0\n0!\n"
+    trace = read(head + "".join(rows)).traces[0]
+    assert isinstance(trace, LogicTrace)
+    assert trace.tick_s == pytest.approx(10e-6)
