@@ -26,7 +26,7 @@ from benchtool.observation import glance, observe, settle
 from benchtool.targets import Target, choose_stages, choose_targets, find_channel, line_up
 
 if TYPE_CHECKING:
-    from benchtool.model.design import Design, Ic, Probe, TopologyName
+    from benchtool.model.design import Design, Ic, TopologyName
 
 FilePath = str | Path
 DEFAULTS = MeasureOptions()
@@ -142,8 +142,9 @@ def solve(
         BenchtoolError: As ``measure`` and ``analyse``.
     """
     from benchtool.assessment import solve_stage
+    from benchtool.designs.settling import settled_design
 
-    intent = _settled_design(design, options)
+    intent = settled_design(design, options)
     analysis = _times(source, intent, stage, options)
     return replace(
         analysis,
@@ -207,8 +208,9 @@ def analyse(
         BenchtoolError: As the tree in ``benchtool.errors`` says.
     """
     from benchtool.assessment import judge_board
+    from benchtool.designs.settling import settled_design
 
-    intent = _settled_design(design, options)
+    intent = settled_design(design, options)
     settings = settle(options, intent)
     analysis = _observe_all(source, intent, stage, options, "judge")
     results, verdict = judge_board(analysis.results, intent, settings)
@@ -270,30 +272,6 @@ def _observe_all(
         timebase_from=settings.timebase_from,
         warnings=_warnings([capture]),
     )
-
-
-def _settled_design(design: FilePath | Design, options: MeasureOptions) -> Design:
-    """Return the design with probe and temperature as the user overrules them."""
-    from benchtool.model.design import Band
-
-    if isinstance(design, str | Path):
-        from benchtool.designs import load_design
-
-        design = load_design(design)
-    if options.probe is not None:
-        design = replace(design, probe=_placed(options.probe, design))
-    if options.temperature_c is not None:
-        at = options.temperature_c
-        design = replace(design, temperature=Band(nominal=at, lower=at, upper=at))
-    return design
-
-
-def _placed(probe: Probe, design: Design) -> Probe:
-    """Return the probe where the design puts it: an option says what it is, not where."""
-    only_nodes = all(stage.capacitor and not stage.channel for stage in design.stages)
-    if design.probe.at == "capacitor" or only_nodes:
-        return replace(probe, at="capacitor")
-    return probe
 
 
 def _source(capture: Capture, options: MeasureOptions) -> Source:

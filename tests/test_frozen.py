@@ -102,3 +102,13 @@ def test_it_reads_as_the_standard_decorator_writes_it() -> None:
 def test_a_record_survives_copying_and_pickling() -> None:
     ours = Ours(ref="RA", value=1.0)
     assert copy.copy(ours) == copy.deepcopy(ours) == pickle.loads(pickle.dumps(ours)) == ours
+
+
+def test_fields_and_annotations_keep_their_types() -> None:
+    assert {each.name: each.type for each in fields(Part)} == {
+        "ref": "str",
+        "value": "float",
+        "notes": "tuple[str, ...]",
+        "tags": "list[str]",
+    }
+    assert Part.__annotations__["kind"] == "ClassVar[str]"

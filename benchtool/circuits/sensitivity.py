@@ -37,6 +37,8 @@ class Sensitivity:
 
 @frozen_record
 class _Figure:
+    """A figure of the circuit that moves: by how much at a time, and how."""
+
     per: str
     step: Callable[[Circuit], float]
     shift: Shift

@@ -8,16 +8,18 @@ from it. If all chord ends lie on one straight line the column is even.
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass, field
 from itertools import pairwise
 
 import numpy as np
 
 from benchtool.errors import MalformedCaptureError
+from benchtool.formats.longsteps import LONG, LongSteps
+from benchtool.formats.pieces import Piece, parted
 from benchtool.formats.steps import Steps
 from benchtool.model.arrays import FloatArray, NDArray
 
 _SLACK = 0.01  # of a step: stamps that near to the grid lose nothing by being put on it
+_HARMLESS = 0.1 * _SLACK  # of a step: a bound so small need not be replaced by what is there
 _RESTART = 0.05  # a step back into this part of the segment is a restart
 _MOST_BACKWARDS = 0.05  # of all rows
 _LEAST_DIGITS = 3  # that a piece spans: the step of a grid of fewer is as good as unknown
@@ -26,33 +28,15 @@ _HELD = 2  # rows kept back, so that a backward step is judged with its neighbou
 IntArray = NDArray[np.int64]
 
 
-@dataclass(slots=True)
-class Piece:
-    """A run of rows without a hole or restart; rows are counted over the rows kept."""
-
-    first: int
-    first_t: float
-    restarts: bool
-    chords: list[tuple[int, float, int, float]] = field(default_factory=list)
-    sag: float = 0.0
-
-    @property
-    def stop(self) -> int:
-        """One past its last row."""
-        return self.chords[-1][2] + 1
-
-    @property
-    def last_t(self) -> float:
-        """Its last stamp."""
-        return self.chords[-1][3]
-
-
 class ClockScan:
     """Takes a column of stamps block by block and finds its pieces and unusable rows.
 
     Args:
         steps: What the first stamps say.
         source: File name, for errors.
+
+    Attributes:
+        n_doubtful: Steps of two digits, so few that a row may as well be lost there.
     """
 
     def __init__(self, steps: Steps, source: str) -> None:
@@ -61,6 +45,7 @@ class ClockScan:
         self.n_unreadable = 0
         self.n_backwards = 0
         self.n_repeated = 0
+        self.n_doubtful = 0
         self._source = source
         self._dropped: list[IntArray] = []
         self._n_fed = 0
@@ -70,6 +55,9 @@ class ClockScan:
         self._peak = -math.inf
         self._held_rows: IntArray = np.empty(0, np.int64)
         self._held: FloatArray = np.empty(0)
+        self._last_row = -1
+        one_digit = steps.even and steps.coarse and steps.typical > 0
+        self._long = LongSteps(steps.typical) if one_digit else None
 
     @property
     def dropped(self) -> IntArray:
@@ -95,13 +83,19 @@ class ClockScan:
         if not self.steps.even or self._last is None or stamps.size < _HELD:
             return False
         run = np.concatenate([[self._last], self._held, stamps])
-        steps = np.diff(run)
-        if not (steps.min() > 0 and steps.max() <= self.steps.gap):  # NaN is neither
+        steps = run[1:] - run[:-1]
+        low, high = float(steps.min()), float(steps.max())
+        least, most = self._long.plain if self._long else (0.0, self.steps.gap)
+        if not (low > least and high <= most):  # NaN is neither
             return False
         self._n_fed += stamps.size
+        self._last_row = self._n_fed - _HELD - 1 if stamps.size > _HELD else self._held_rows[-1]
         self._held_rows, self._held = np.arange(self._n_fed - _HELD, self._n_fed), run[-_HELD:]
         taken = run[1:-_HELD]
-        self._extend(taken, opens=False, restarts=False)
+        # a path with steps between two limits cannot leave its chord further than this
+        at_most = taken.size * (high - low) / 4
+        known = at_most if at_most <= _HARMLESS * self.steps.typical else None
+        self._extend(taken, opens=False, restarts=False, sag=known)
         self._last = float(taken[-1])
         self._peak = max(self._peak, self._last)
         return True
@@ -113,6 +107,7 @@ class ClockScan:
             MalformedCaptureError: If more than a few rows step backwards.
         """
         self._take(self._held_rows, self._held, np.empty(0))
+        self._part_at_lost_rows()
         n_restarts = sum(piece.restarts for piece in self.pieces)
         if self.n_backwards > max(_MOST_BACKWARDS * self._n_fed, 1) or (
             2 * n_restarts > max(2, self._n_kept)
@@ -132,7 +127,7 @@ class ClockScan:
         rows, stamps = self._without_backwards(rows, stamps, ahead)
         rows, stamps = self._without_repeats(rows, stamps)
         if rows.size:
-            self._lay(stamps)
+            self._lay(rows, stamps)
 
     def _steps_of(self, stamps: FloatArray) -> FloatArray:
         """Return the step before each stamp, 0 before the very first."""
@@ -193,29 +188,53 @@ class ClockScan:
         self._drop(rows[repeated])
         return rows[~repeated], stamps[~repeated]
 
-    def _lay(self, stamps: FloatArray) -> None:
+    def _lay(self, rows: IntArray, stamps: FloatArray) -> None:
         """Append the stamps to the pieces."""
         steps = self._steps_of(stamps)
         back = steps < 0
-        breaks = back | (steps > self.steps.gap) if self.steps.even else back
+        breaks = back | self._holes(rows, steps) if self.steps.even else back
+        if self._long:
+            inside = ~breaks
+            inside[0] &= self._last is not None
+            self._long.note(steps, stamps, self._n_kept, inside)
         edges = [0, *np.flatnonzero(breaks).tolist(), stamps.size]
         for k, (start, stop) in enumerate(pairwise(edges)):
             if start < stop:
                 opens = k > 0 or not self.pieces
                 self._extend(stamps[start:stop], opens=opens, restarts=bool(back[start]))
-        self._last = float(stamps[-1])
+        self._last, self._last_row = float(stamps[-1]), int(rows[-1])
         self._peak = max(self._peak, float(np.max(stamps)))
 
-    def _extend(self, stamps: FloatArray, *, opens: bool, restarts: bool) -> None:
+    def _holes(self, rows: IntArray, steps: FloatArray) -> NDArray[np.bool_]:
+        """Say before which rows others are missing: a long step, and less where one was dropped."""
+        dropped = np.diff(rows, prepend=self._last_row) > 1
+        holes: NDArray[np.bool_] = steps > self.steps.gap
+        return holes | (dropped & (steps >= LONG * self.steps.typical))
+
+    def _part_at_lost_rows(self) -> None:
+        """Part the pieces at steps of two digits that no rounding of an even time explains."""
+        long = self._long
+        if long is None or not long.may_be_lost_rows(self._n_kept):
+            return
+        ends = [piece.ends for piece in self.pieces]
+        if long.are_spread_evenly(ends):
+            self.n_doubtful = long.n if long.tell_little(ends) else 0
+        else:
+            self.pieces = [part for piece in self.pieces for part in parted(piece, long)]
+
+    def _extend(
+        self, stamps: FloatArray, *, opens: bool, restarts: bool, sag: float | None = None
+    ) -> None:
         first, last = float(stamps[0]), float(stamps[-1])
         if opens:
             self.pieces.append(Piece(first=self._n_kept, first_t=first, restarts=restarts))
         piece = self.pieces[-1]
         start, stop = self._n_kept, self._n_kept + stamps.size - 1
         piece.chords.append((start, first, stop, last))
-        if stamps.size > 2:
+        if sag is None and stamps.size > 2:
             chord = first + np.arange(stamps.size) * ((last - first) / (stamps.size - 1))
-            piece.sag = max(piece.sag, float(np.max(np.abs(stamps - chord))))
+            sag = float(np.max(np.abs(stamps - chord)))
+        piece.sag = max(piece.sag, sag or 0.0)
         self._n_kept = stop + 1
 
     def _disorder(self) -> MalformedCaptureError:

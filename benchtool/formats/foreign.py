@@ -16,11 +16,10 @@ from benchtool.formats.grid import code_step
 from benchtool.formats.overrules import idle_option
 from benchtool.formats.steps import Steps, examine_steps
 from benchtool.formats.stored import DerivedSamples, thinned
-from benchtool.formats.text import words
-from benchtool.formats.text.metadata import split_unit
+from benchtool.formats.text import unitwords, words
 from benchtool.formats.text.timebase import ShiftedStamps, StatedInterval, Timebase, settle_time
 from benchtool.formats.text.timeunit import named_unit
-from benchtool.formats.text.words import SECOND, TimeUnit
+from benchtool.formats.text.unitwords import SECOND, TimeUnit
 from benchtool.model.arrays import NDArray
 from benchtool.model.capture import (
     ReadOptions,
@@ -123,7 +122,7 @@ def _clock_name(columns: Columns, options: ReadOptions, content: Content) -> str
     if options.time is not None:
         return _named_clock(columns, options.time, content)
     for name in columns:
-        if words.is_time_name(split_unit(name)[0]):
+        if words.is_time_name(words.split_unit(name)[0]):
             return name
     first = next(iter(columns))
     return first if len(columns) > 1 and first == "column 1" and _rises(columns[first]) else None
@@ -161,14 +160,14 @@ def _interval(scalars: Scalars, options: ReadOptions, content: Content) -> tuple
     if options.interval_s is not None:
         return options.interval_s, "--interval or --rate"
     for name, value in scalars.items():
-        key, unit = split_unit(name)
+        key, unit = words.split_unit(name)
         if value.size != 1 or value.dtype.kind not in "iuf" or not float(value.ravel()[0]) > 0:
             continue
         figure = float(value.ravel()[0])
         if words.is_rate_key(key):
-            return 1 / (figure * (words.rate_factor(unit) or 1.0)), f"array {name!r}"
+            return 1 / (figure * (unitwords.rate_factor(unit) or 1.0)), f"array {name!r}"
         if words.is_interval_key(key):
-            return (words.time_unit(unit) or SECOND).seconds(figure), f"array {name!r}"
+            return (unitwords.time_unit(unit) or SECOND).seconds(figure), f"array {name!r}"
     raise AmbiguousStructureError(
         f"{content.source} holds samples, but neither times nor an interval",
         hint="Give --interval (such as 5us) or --rate (such as 200k).",
@@ -226,7 +225,7 @@ def _from_first(stamps: Samples, content: Content) -> tuple[Samples, float]:
 def _array_unit(name: str, options: ReadOptions) -> tuple[TimeUnit, str, tuple[Notice, ...]]:
     if options.time_unit is not None:
         return named_unit(options.time_unit), "--time-unit", ()
-    unit = words.time_unit(split_unit(name)[1] or name)
+    unit = unitwords.time_unit(words.split_unit(name)[1] or name)
     if unit is not None:
         return unit, f"array {name!r}", ()
     notice = Notice(

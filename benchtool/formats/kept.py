@@ -20,6 +20,7 @@ from typing import Any
 
 from benchtool.errors import UnitError, UsageError
 from benchtool.formats.overrules import OPTIONS
+from benchtool.formats.text.layout import DELIMITERS
 from benchtool.frozen import frozen_record
 from benchtool.model.capture import Capture, ReadOptions, StructurePoint
 from benchtool.model.quantity import Notice
@@ -28,10 +29,10 @@ NONE = "none"
 """The name that applies no kept structure."""
 
 _DELIMITERS = (",", ";", "\t", "|", " ")
-_NAMED = {"comma": ",", "semicolon": ";", "tab": "\t", "pipe": "|", "space": " ", "none": ""}
 _CHOICES = {"decimal": (".", ","), "time_unit": ("s", "ms", "us", "ns", "ps", "fs")}
 _TEXTS = ("format", "delimiter", "time", "channel")
 _KEYS = ("match", *_TEXTS, *_CHOICES, "interval", "rate", "skip")
+_REPAIR = "Correct the file; --structure none reads captures without it."
 _MATCH_KEYS = ("file", "header", "columns")
 
 
@@ -99,9 +100,6 @@ def read_kept(text: str, file: str) -> tuple[Kept, ...]:
             f"{file} is no TOML: {reason}", hint=_REPAIR, code="bad-kept-structure"
         ) from None
     return tuple(_structure(name, table, _Place(text, file)) for name, table in tables.items())
-
-
-_REPAIR = "Correct the file; --structure none reads captures without it."
 
 
 class _Place:
@@ -231,7 +229,7 @@ def applies(kept: Kept, name: str, lines: list[str]) -> bool:
 def _widths(lines: list[str], settles: Mapping[str, Any]) -> set[int]:
     """Return how many cells most lines have, under each delimiter that may be meant."""
     given = settles.get("delimiter")
-    delimiters = _DELIMITERS if given is None else (_NAMED.get(given, given),)
+    delimiters = _DELIMITERS if given is None else (DELIMITERS.get(given, given),)
     told = [line.strip() for line in lines[settles.get("skip", 0) :] if line.strip()]
     widths = set()
     for delimiter in delimiters:

@@ -106,7 +106,7 @@ class ColumnSpool:
             if self._file is None:
                 self._file = _nameless_file(self)
             for column in self._held:
-                view = memoryview(column.tobytes())
+                view = column.data.cast("B") if column.size else memoryview(b"")
                 while view:
                     view = view[self._file.write(view) or 0 :]
         except OSError:  # a full disk costs the time of decoding anew, and nothing else

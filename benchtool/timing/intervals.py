@@ -74,6 +74,8 @@ def find_intervals(
 
 @frozen_record(eq=False)
 class _Cycles:
+    """Whole cycles: where each begins, its two parts, and how far they follow one another."""
+
     start_s: FloatArray
     high_s: FloatArray
     low_s: FloatArray

@@ -4,24 +4,22 @@ from __future__ import annotations
 
 import math
 import re
-import unicodedata
 from numbers import Real
 
 from benchtool.errors import UnitError
 from benchtool.units.symbols import PREFIX_EXPONENTS, UNITS, Unit
 
+# Compiled where they are used: the room is loaded to show figures more often than to read them.
 # Groups of three digits may be parted by a (thin) space: SI brochure, 9th edition, 5.4.4.
-_NUMBER = re.compile(
+_NUMBER = (
     r"(?P<number>[+-]?(?:(?:\d{1,3}(?: \d{3})+(?!\d)|\d+)(?:\.\d*)?|\.\d+)(?:[eE][+-]?\d+)?)"
     r"\s*(?P<suffix>.*)"
 )
-_INNER = re.compile(
-    r"(?P<sign>[+-]?)(?P<whole>\d*)(?P<mark>meg|Meg|\D)(?P<part>\d+)\s*(?P<suffix>\D*)"
-)
-_BOTH_SIDES = re.compile(r"(?:±|\+/-|\+-)\s*(.+)")
+_INNER = r"(?P<sign>[+-]?)(?P<whole>\d*)(?P<mark>meg|Meg|\D)(?P<part>\d+)\s*(?P<suffix>\D*)"
+_BOTH_SIDES = r"(?:±|\+/-|\+-)\s*(.+)"
 _SIDE = r"([+-]?[\d.]+(?:[eE][+-]?\d+)?\s*[^\d.\s/+-]*)"
-_TWO_SIDES = re.compile(rf"{_SIDE}\s*(?:/|\.\.|\bto\b|\s|(?<![eE])(?=[+-]))\s*{_SIDE}")
-_SHARE = re.compile(r"(?:%|‰|pp[mb])$")
+_TWO_SIDES = rf"{_SIDE}\s*(?:/|\.\.|\bto\b|\s|(?<![eE])(?=[+-]))\s*{_SIDE}"
+_SHARE = r"(?:%|‰|pp[mb])$"
 
 
 def parse(text: str | float, unit: str) -> float:
@@ -90,15 +88,15 @@ def parse_tolerance(text: str | float) -> tuple[float, float]:
 
 
 def _tolerance_sides(plain: str) -> tuple[str, ...]:
-    both = _BOTH_SIDES.fullmatch(plain)
+    both = re.fullmatch(_BOTH_SIDES, plain)
     if both:
         return (both[1],)
-    two = _TWO_SIDES.fullmatch(plain)
+    two = re.fullmatch(_TWO_SIDES, plain)
     if not two:
         return (plain,)
     lower, upper = two[1], two[2]
-    share = _SHARE.search(upper)
-    if share and not _SHARE.search(lower.strip()):  # "-20/+50 %": the sign stands once for both
+    share = re.search(_SHARE, upper)
+    if share and not re.search(_SHARE, lower.strip()):  # "-20/+50 %": the sign stands once for both
         lower += share[0]
     return lower, upper
 
@@ -112,6 +110,8 @@ def _tolerance_error(text: str | float) -> UnitError:
 
 def _plain(text: str) -> str:
     """Unify micro signs, ohm signs, minus signs and spaces."""
+    import unicodedata
+
     unified = unicodedata.normalize("NFKC", text).replace("\N{MINUS SIGN}", "-")
     return " ".join(unified.split())
 
@@ -134,7 +134,7 @@ def _finite(value: float, given: object, kind: Unit) -> float:
 
 def _read_inner(plain: str, kind: Unit) -> float | None:
     """Read "4k7": the letter stands in place of the decimal mark."""
-    match = _INNER.fullmatch(plain)
+    match = re.fullmatch(_INNER, plain)
     if not (match and kind.prefixed):
         return None
     mark, suffix = match["mark"], match["suffix"]
@@ -146,7 +146,7 @@ def _read_inner(plain: str, kind: Unit) -> float | None:
 
 def _read_number(plain: str, kind: Unit) -> float | None:
     """Read "0.1 uF": a number, then a prefix and a unit, either of which may be missing."""
-    match = _NUMBER.fullmatch(plain)
+    match = re.fullmatch(_NUMBER, plain)
     if not match:
         return None
     number = match["number"].replace(" ", "")

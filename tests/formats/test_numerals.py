@@ -14,11 +14,12 @@ from hypothesis import strategies as st
 
 from benchtool.formats.magnitudes import bounded
 from benchtool.formats.text import decoding
-from benchtool.formats.text.alike import RowForm, parse_alike
+from benchtool.formats.text.alike import parse_alike
 from benchtool.formats.text.decoding import Decoded, Decoder, Wanted
 from benchtool.formats.text.digits import scaled
 from benchtool.formats.text.layout import Layout
 from benchtool.formats.text.numerals import ROOM, parse_cells
+from benchtool.formats.text.rowform import RowForm
 from benchtool.model.arrays import FloatArray
 
 FORM = RowForm(mark=b",", decimal=b".", n_fields=2, fields=(0, 1))

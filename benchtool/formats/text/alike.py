@@ -7,80 +7,46 @@ from words of eight bytes at places that are the same in all rows.
 
 from __future__ import annotations
 
-from functools import lru_cache
-
 import numpy as np
 
-from benchtool.formats.text.digits import Bytes, Words, fold, scaled
+from benchtool.formats.text.digits import (
+    EXACT_POWER,
+    SHORT,
+    Bytes,
+    Words,
+    fold,
+    scale_short,
+    scaled,
+)
+from benchtool.formats.text.rowform import (
+    STRIP,
+    WORD,
+    Chunk,
+    Model,
+    Number,
+    RowForm,
+    cut_chunks,
+    read_model,
+)
 from benchtool.frozen import frozen_record
-from benchtool.model.arrays import BoolArray, FloatArray, IntArray
-
-WORD = 8
-KEEP = np.array([((1 << 8 * n) - 1) << 8 * (WORD - n) for n in range(WORD + 1)], np.uint64)
-"""Masks that keep the last n bytes of a word."""
+from benchtool.model.arrays import BoolArray, FloatArray
 
 _ZERO = ord("0")
-_STRIP = 128  # rows of a model
-_NEAR = 6144  # rows decoded at a time: few enough to stay in the cache
-_MOST_WORDS = 3
-_MOST_DIGITS = 19  # any number of so many digits is below 2**64
+_NEAR = 20_000  # rows decoded at a time: few enough to stay in the cache
 _DIGITS = bytes(range(_ZERO, _ZERO + 10))
+_BYTE = np.uint64(8)
 _SHAPE = bytes.maketrans(_DIGITS, b"0" * 10)
 
 
-@frozen_record
-class RowForm:
-    """The form that rows must have: delimiter, decimal mark, number of fields, those wanted."""
-
-    mark: bytes
-    decimal: bytes
-    n_fields: int
-    fields: tuple[int, ...]
-
-
 @frozen_record(eq=False)
-class Chunk:
-    """Up to eight bytes of a number: where they end in the row, and which are digits.
-
-    Attributes:
-        stop: One past its last byte.
-        before: Mask of the digits before the decimal mark, which move up by a byte.
-        after: Mask of the other digits.
-        tens: Power of ten of its last digit.
-    """
-
-    stop: int
-    before: np.uint64
-    after: np.uint64
-    tens: np.uint64
-
-
-@frozen_record(eq=False)
-class Number:
-    """Where the digits of one number stand in all rows.
-
-    Attributes:
-        negative: Whether it has a minus sign.
-        mantissa: Its digits, the last ones first.
-        n_fraction: How many of them come after the mark.
-        exponent: The digits of its exponent.
-        divides: Whether the exponent has a minus sign.
-    """
-
-    negative: bool
-    mantissa: tuple[Chunk, ...]
-    n_fraction: int
-    exponent: Chunk | None = None
-    divides: bool = False
-
-
-@frozen_record(eq=False)
-class Model:
-    """What rows are held against: the bytes of ``_STRIP`` rows with zeros for their digits."""
+class Digits:
+    """Rows less the model, with eight bytes of room before them; their extremes at each byte."""
 
     bytes: Bytes
-    most: Bytes
-    numbers: tuple[Number, ...]
+    n_rows: int
+    width: int
+    low: list[int]
+    high: list[int]
 
 
 def parse_alike(text: bytes, form: RowForm) -> tuple[FloatArray, BoolArray | None] | None:
@@ -97,153 +63,150 @@ def parse_alike(text: bytes, form: RowForm) -> tuple[FloatArray, BoolArray | Non
     n_rows, rest = divmod(len(text), width)
     if rest or text[-width:].translate(_SHAPE) != text[:width].translate(_SHAPE):
         return None
-    model = _model(text[:width].translate(_SHAPE), form)
+    return parse_rows(np.frombuffer(text, np.uint8).reshape(n_rows, width), form)
+
+
+def parse_rows(rows: Bytes, form: RowForm) -> tuple[FloatArray, BoolArray | None] | None:
+    """Do what ``parse_alike`` does with rows of bytes, shape (rows, width)."""
+    n_rows, width = rows.shape
+    model = read_model(rows[0].tobytes().translate(_SHAPE), form)
     if model is None:
         return None
-    buffer = np.frombuffer(text, np.uint8)
     table = np.empty((n_rows, len(model.numbers)), order="F")
+    n_near = -(-n_rows // -(-n_rows // _NEAR))
+    room = np.empty(WORD + n_near * width, np.uint8)
     unsure: BoolArray | None = None
-    for first in range(0, n_rows, _NEAR):
-        last = min(first + _NEAR, n_rows)
-        digits = _less_model(buffer[first * width : last * width], model, width)
+    for first in range(0, n_rows, n_near):
+        last = min(first + n_near, n_rows)
+        digits = _less_model(rows[first:last], model, room)
         if digits is None:
             return None
-        doubt = _fill(table[first:last], digits, width, model)
+        doubt = _fill(table[first:last], digits, model.numbers)
         if doubt is not None:
             unsure = np.zeros(table.shape, np.bool_) if unsure is None else unsure
             unsure[first:last] = doubt
     return table, unsure
 
 
-def _less_model(buffer: Bytes, model: Model, width: int) -> Bytes | None:
-    """Return the digits, eight bytes of room before them; None if a row departs from the model."""
-    digits = np.empty(buffer.size + WORD, np.uint8)
-    strip = model.bytes.size
-    whole = buffer.size // strip * strip
-    for start, stop, size in ((0, whole, strip), (whole, buffer.size, width)):
-        if start == stop:
-            continue
-        rows = digits[WORD + start : WORD + stop].reshape(-1, size)
-        np.subtract(buffer[start:stop].reshape(-1, size), model.bytes[:size], out=rows)
-        if (rows > model.most[:size]).any():
-            return None
-    return digits
+def _less_model(rows: Bytes, model: Model, room: Bytes) -> Digits | None:
+    """Return the digits of rows; None if a row departs from the model."""
+    n_rows, width = rows.shape
+    digits = room[: WORD + rows.size]
+    whole = n_rows // STRIP * STRIP
+    for start, stop, n in ((0, whole, STRIP), (whole, n_rows, 1)):
+        if start < stop:
+            np.subtract(
+                rows[start:stop].reshape(-1, n * width),
+                model.bytes[: n * width],
+                out=digits[WORD + start * width : WORD + stop * width].reshape(-1, n * width),
+            )
+    low, high = extremes(digits[WORD:].reshape(n_rows, width))
+    if (high > model.most).any():
+        return None
+    return Digits(bytes=digits, n_rows=n_rows, width=width, low=low.tolist(), high=high.tolist())
 
 
-def _fill(table: FloatArray, digits: Bytes, width: int, model: Model) -> BoolArray | None:
+def extremes(rows: Bytes) -> tuple[Bytes, Bytes]:
+    """Return the least and the largest value of each byte of rows, shape (rows, width)."""
+    n_rows, width = rows.shape
+    whole = n_rows // STRIP * STRIP
+    parts = [rows[whole:]]
+    if whole:  # in long strips: a reduction goes along the last axis fast
+        strips = rows[:whole].reshape(-1, STRIP * width)
+        parts += [f.reduce(strips, axis=0).reshape(STRIP, width) for f in (np.minimum, np.maximum)]
+    some = np.concatenate(parts)
+    return some.min(axis=0), some.max(axis=0)
+
+
+@frozen_record
+class Spelt:
+    """How a whole number is made of folded words, and of digits that are the same in all rows.
+
+    Attributes:
+        chunks: The words, the last first: what lies between the digits that change.
+        times: Power of ten of the last digit of them.
+        constant: Value of the other digits.
+    """
+
+    chunks: tuple[Chunk, ...]
+    times: int
+    constant: int
+
+
+def _fill(table: FloatArray, digits: Digits, numbers: tuple[Number, ...]) -> BoolArray | None:
     """Fill in the numbers of rows; return which are not sure to be rounded correctly, if any."""
-    n_rows = table.shape[0]
+    spelt = [
+        _spelt(digits, places, hole)
+        for number in numbers
+        for places, hole in ((number.places, number.hole), (number.exponent, None))
+    ]
+    wholes = _fold_all(digits, spelt)
     unsure: BoolArray | None = None
-    for k, number in enumerate(model.numbers):
-        mantissa = _whole(digits, n_rows, width, number.mantissa)
-        values, doubt = scaled(mantissa, _power(digits, n_rows, width, number))
-        table[:, k] = -values if number.negative else values
+    for k, number in enumerate(numbers):
+        doubt = _scale(table[:, k], number, *wholes[2 * k : 2 * k + 2])
         if doubt is not None and doubt.any():
             unsure = np.zeros(table.shape, np.bool_) if unsure is None else unsure
             unsure[:, k] = doubt
     return unsure
 
 
-def _power(digits: Bytes, n_rows: int, width: int, number: Number) -> int | IntArray:
-    if number.exponent is None:
-        return -number.n_fraction
-    exponent = _whole(digits, n_rows, width, (number.exponent,)).view(np.int64)
-    return (-exponent if number.divides else exponent) - number.n_fraction
+def _scale(
+    column: FloatArray, number: Number, mantissa: Words | int, exponent: Words | int
+) -> BoolArray | None:
+    """Fill in one number of the rows; return which are not sure to be rounded correctly."""
+    power = exponent if isinstance(exponent, int) else exponent.view(np.int64)
+    power = (-power if number.divides else power) - number.n_fraction
+    if isinstance(mantissa, int):
+        mantissa = np.full(column.size, mantissa, np.uint64)
+    doubt: BoolArray | None = None
+    if isinstance(power, int) and len(number.places) <= SHORT and abs(power) <= EXACT_POWER:
+        scale_short(mantissa, power, column)
+    else:
+        column[:], doubt = scaled(mantissa, power)
+    if number.negative:
+        np.negative(column, out=column)
+    return doubt
 
 
-def _whole(digits: Bytes, n_rows: int, width: int, chunks: tuple[Chunk, ...]) -> Words:
-    """Return the whole numbers that chunks of the rows spell."""
-    whole: Words | None = None
-    for chunk in chunks:
-        at = np.ndarray((n_rows,), "<u8", digits.data, chunk.stop, (width,))
-        part = at & chunk.after
+def _spelt(digits: Digits, places: tuple[int, ...], hole: int | None) -> Spelt:
+    """Say how to read the whole number that digits at these places spell."""
+    low, high = digits.low, digits.high
+    active = [i for i, at in enumerate(places) if low[at] != high[at]]
+    first, last = (active[0], active[-1]) if active else (0, -1)
+    constant = 0
+    for i, at in enumerate(places):
+        constant = 10 * constant + (0 if first <= i <= last else low[at])
+    chunks = cut_chunks(places[first], places[last] + 1, hole) if active else ()
+    return Spelt(chunks=chunks, times=10 ** (len(places) - 1 - last), constant=constant)
+
+
+def _fold_all(digits: Digits, spelt: list[Spelt]) -> list[Words | int]:
+    """Return whole numbers, one a row, or one for all where no digit changes."""
+    chunks = [chunk for one in spelt for chunk in one.chunks]
+    folded = np.empty((len(chunks), digits.n_rows), np.uint64)
+    shape, step = (digits.n_rows,), (digits.width,)
+    for i, chunk in enumerate(chunks):
+        words = np.ndarray(shape, "<u8", digits.bytes.data, chunk.stop, step)
+        np.bitwise_and(words, chunk.after, out=folded[i])
         if chunk.before:
-            part |= (at & chunk.before) << np.uint64(8)
-        part = fold(part)
-        if whole is None:
-            whole = part
-        else:
-            part *= chunk.tens
-            whole += part
-    assert whole is not None
+            moved = words & chunk.before
+            moved <<= _BYTE
+            folded[i] |= moved
+    fold(folded.reshape(-1))
+    parts = iter(folded)
+    return [_joined(one, [next(parts) for _ in one.chunks]) for one in spelt]
+
+
+def _joined(spelt: Spelt, parts: list[Words]) -> Words | int:
+    """Put the folded words of a number together."""
+    if not parts:
+        return spelt.constant
+    whole = parts[0]
+    for chunk, part in zip(spelt.chunks[1:], parts[1:], strict=True):
+        np.multiply(part, chunk.tens, out=part)
+        whole += part
+    if spelt.times > 1:
+        whole *= np.uint64(spelt.times)
+    if spelt.constant:
+        whole += np.uint64(spelt.constant)
     return whole
-
-
-@lru_cache(maxsize=64)
-def _model(shape: bytes, form: RowForm) -> Model | None:
-    """Read a row whose digits are all 0; None if it is no row of the form."""
-    spans = _spans(shape, form.mark)
-    if len(spans) != form.n_fields:
-        return None
-    numbers = [_number(shape, *spans[field], form.decimal) for field in form.fields]
-    if any(number is None for number in numbers):
-        return None
-    row = np.frombuffer(shape, np.uint8)
-    return Model(
-        bytes=np.tile(row, _STRIP),
-        most=np.tile(np.where(row == _ZERO, 9, 0).astype(np.uint8), _STRIP),
-        numbers=tuple(number for number in numbers if number is not None),
-    )
-
-
-def _spans(row: bytes, mark: bytes) -> list[tuple[int, int]]:
-    """Return where the cells of a row begin and end."""
-    cells: list[tuple[int, int]] = []
-    at = 0
-    body = row[:-1]
-    for cell in body.split() if mark == b" " else body.split(mark) if mark else [body]:
-        start = body.index(cell, at) if mark == b" " else at
-        cells.append((start, start + len(cell)))
-        at = start + len(cell) + len(mark)
-    return cells
-
-
-def _number(row: bytes, start: int, stop: int, decimal: bytes) -> Number | None:
-    """Find the digits of a cell; None if it holds no plain number."""
-    cell = row[start:stop]
-    text = cell.strip().removeprefix(b'"').removesuffix(b'"').strip()
-    at = start + cell.find(text)
-    negative, signed = text.startswith(b"-"), text.startswith((b"-", b"+"))
-    mantissa, e, exponent = text[signed:].replace(b"E", b"e").partition(b"e")
-    whole, point, fraction = mantissa.partition(decimal)
-    figures = exponent[1:] if exponent.startswith((b"-", b"+")) else exponent
-    n_digits = len(whole) + len(fraction)
-    if not (whole + fraction).isdigit() or n_digits > _MOST_DIGITS:
-        return None
-    if e and not (figures.isdigit() and len(figures) <= 3):
-        return None
-    begins = at + signed
-    hole = begins + len(whole) if point else None
-    chunks = cut_chunks(begins, begins + len(mantissa), hole)
-    end = at + len(text)
-    return Number(
-        negative=negative,
-        mantissa=chunks,
-        n_fraction=len(fraction),
-        exponent=cut_chunks(end - len(figures), end, None)[0] if e else None,
-        divides=exponent.startswith(b"-"),
-    )
-
-
-def cut_chunks(start: int, stop: int, hole: int | None) -> tuple[Chunk, ...]:
-    """Cut the bytes from ``start`` to ``stop`` into words, the last first."""
-    chunks = []
-    n_later = 0
-    while stop > start:
-        n = min(WORD, stop - start)
-        mask = int(KEEP[n])
-        inside = hole is not None and stop - n <= hole < stop
-        place = WORD - (stop - hole) if inside and hole is not None else 0
-        before = mask & ((1 << 8 * place) - 1)
-        after = mask & ~before & ~(0xFF << 8 * place if inside else 0)
-        chunks.append(
-            Chunk(
-                stop=stop,
-                before=np.uint64(before),
-                after=np.uint64(after),
-                tens=np.uint64(10**n_later),
-            )
-        )
-        n_later += n - inside
-        stop -= n
-    return tuple(chunks)

@@ -14,12 +14,13 @@ Kind = Literal["N", "S", "W", "H", "L", "M", "E", "T"]
 _LONG_STAMP = 14  # digits of a day and a time of day run together
 _EXPONENT = r"(?:[eEdD][+-]?\d+)?"
 _POINT = re.compile(rf"[+-]?(?:\d+(?:\.\d*)?|\.\d+){_EXPONENT}")  # \d+\.?\d* takes n² steps
-_COMMA = re.compile(rf"[+-]?(?:\d+(?:,\d*)?|,\d+){_EXPONENT}")
-_GROUPED_BY_COMMA = re.compile(r"[+-]?[1-9]\d{0,2}(?:,\d{3})+(?:\.\d*)?")
-_GROUPED_BY_POINT = re.compile(r"[+-]?[1-9]\d{0,2}(?:\.\d{3})+(?:,\d*)?")
-_GROUPED = re.compile(r"[+-]?[1-9]\d{0,2}(?:,\d{3})+")
+_COMMA = rf"[+-]?(?:\d+(?:,\d*)?|,\d+){_EXPONENT}"
+_GROUPED_BY_COMMA = r"[+-]?[1-9]\d{0,2}(?:,\d{3})+(?:\.\d*)?"
+_GROUPED_BY_POINT = r"[+-]?[1-9]\d{0,2}(?:\.\d{3})+(?:,\d*)?"
+_GROUPED = r"[+-]?[1-9]\d{0,2}(?:,\d{3})+"
 _BLANKS = " \u00a0\u202f'’"  # that part thousands where neither comma nor point does
-_SPACED = re.compile(rf"[+-]?\d{{1,3}}(?:[{_BLANKS}]\d{{3}})+(?:[.,]\d*)?")
+_BLANK_SET = frozenset(_BLANKS)
+_SPACED = rf"[+-]?\d{{1,3}}(?:[{_BLANKS}]\d{{3}})+(?:[.,]\d*)?"
 _DROP_BLANKS = str.maketrans("", "", _BLANKS)
 _MONTH = r"(?:[jJ]an|[fF]eb|[mM]ar|[aA]pr|[mM]ay|[jJ]u[nl]|[aA]ug|[sS]ep|[oO]ct|[nN]ov|[dD]ec)"
 _BASIC = r"(?:19|20)\d{2}[01]\d[0-3]\d[T _-]?[0-2]\d[0-5]\d[0-5]\d"
@@ -28,11 +29,9 @@ _DATE = r"(?:\d{4}[-/.]\d{1,2}[-/.]\d{1,2}|\d{1,2}[-/.]\d{1,2}[-/.](?:\d{4}|\d{2
 _DATE = rf"(?:{_DATE}|\d{{1,2}}[- ]{_MONTH}[- ]\d{{4}})"
 _CLOCK = r"\d{1,4}:\d{2}(?::\d{2}(?::\d{3})?)?(?:[.,]\d+)?(?: ?[aApP][mM])?"
 _ZONE = r"(?: ?Z| ?[+-]\d{2}:?\d{2}| ?UTC)?"
-_STAMP = re.compile(
-    rf"\[?(?:{_DATE}(?:[T ]{_CLOCK}{_ZONE})?|{_CLOCK}{_ZONE}|{_BASIC}(?:[.,]\d+)?Z?)\]?"
-)
-
-_BITS = re.compile(r"0[xX][0-9a-fA-F]{1,8}|0[bB][01]{1,32}|(?=.*\d)[0-9A-F]{2,8}h|[01]{2,32}b")
+_STAMP = rf"\[?(?:{_DATE}(?:[T ]{_CLOCK}{_ZONE})?|{_CLOCK}{_ZONE}|{_BASIC}(?:[.,]\d+)?Z?)\]?"
+_BITS = r"0[xX][0-9a-fA-F]{1,8}|0[bB][01]{1,32}|(?=.*\d)[0-9A-F]{2,8}h|[01]{2,32}b"
+# Only what nearly every file needs is compiled here; the others wait for a cell that asks for them.
 
 _RISES = frozenset({"rising", "rise", "posedge", "up", "r", "↑", "0->1", "0→1"})
 _FALLS = frozenset({"falling", "fall", "negedge", "down", "f", "↓", "1->0", "1→0"})
@@ -61,27 +60,28 @@ def kind_of(cell: str, decimal: str) -> Kind:
         return "W"
     if word in _MISSING:
         return "M"
-    if _STAMP.fullmatch(cell):
+    has_digit = any(c.isdigit() for c in cell)
+    if has_digit and re.fullmatch(_STAMP, cell):
         return "S"
-    return "H" if _BITS.fullmatch(cell) else "T"
+    return "H" if has_digit and re.fullmatch(_BITS, cell) else "T"
 
 
 def is_number(cell: str, decimal: str) -> bool:
     """Say whether a cell is a number under the given decimal mark."""
     if cell[0] == "\u2212":
         cell = "-" + cell[1:]
-    if _SPACED.fullmatch(cell):
+    if not _BLANK_SET.isdisjoint(cell) and re.fullmatch(_SPACED, cell):
         cell = cell.translate(_DROP_BLANKS)
     if decimal == ".":
-        return bool(_POINT.fullmatch(cell) or _GROUPED_BY_COMMA.fullmatch(cell))
-    if "," in cell or "." not in cell:
-        return bool(_COMMA.fullmatch(cell) or _GROUPED_BY_POINT.fullmatch(cell))
-    return bool(_GROUPED_BY_POINT.fullmatch(cell))
+        grouped = "," in cell and re.fullmatch(_GROUPED_BY_COMMA, cell)
+        return bool(grouped or _POINT.fullmatch(cell))
+    grouped = "." in cell and re.fullmatch(_GROUPED_BY_POINT, cell)
+    return bool(grouped or re.fullmatch(_COMMA, cell))
 
 
 def is_grouped(cell: str) -> bool:
     """Say whether a cell reads both as ``1,234`` thousand and as a decimal fraction."""
-    return bool(_GROUPED.fullmatch(cell)) and cell.count(",") == 1
+    return bool(re.fullmatch(_GROUPED, cell)) and cell.count(",") == 1
 
 
 def number(cell: str, decimal: str) -> float:

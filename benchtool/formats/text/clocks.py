@@ -11,7 +11,7 @@ from itertools import pairwise
 
 import numpy as np
 
-from benchtool.formats.text import words
+from benchtool.formats.text import unitwords, words
 from benchtool.formats.text.column import ClockColumn, ClockKind, Column
 from benchtool.model.arrays import FloatArray, middle
 
@@ -41,8 +41,8 @@ def is_named_time(column: Column) -> bool:
     """Say whether name or unit of a column of numbers mean time."""
     if column.kind != "N" or column.date_only or words.is_length_name(column.name):
         return False
-    named = words.is_time_name(column.name) and not words.volt_factor(column.unit)
-    return named or words.time_unit(column.unit) is not None
+    named = words.is_time_name(column.name) and not unitwords.volt_factor(column.unit)
+    return named or unitwords.time_unit(column.unit) is not None
 
 
 def _may_stand(place: int, columns: list[Column]) -> bool:
@@ -62,7 +62,7 @@ def _may_precede(column: Column) -> bool:
         return True
     if column.head.size > 1 and np.ptp(column.head) == 0:
         return True  # the same in every row
-    if words.volt_factor(column.unit) is not None or words.is_index_name(column.name):
+    if unitwords.volt_factor(column.unit) is not None or words.is_index_name(column.name):
         return True
     return not column.name or (
         words.is_channel_name(column.name) and column.unit in ("", column.name)
@@ -71,7 +71,7 @@ def _may_precede(column: Column) -> bool:
 
 def _is_count(column: Column, *, stated: bool) -> bool:
     """Say whether a column named for time counts samples: ``Time (samples)``, ``X`` from 0 on."""
-    if column.unit.lower() in words.COUNT_UNITS and column.unit != "n":
+    if column.unit.lower() in unitwords.COUNT_UNITS and column.unit != "n":
         return True
     bare = words.is_bare_axis(column.name) and not column.unit
     return stated and bare and counts_by_one(column.head)
@@ -127,7 +127,7 @@ def clocks_by_values(
 
 def _counts(column: Column) -> bool:
     """Say whether a column is a running number, by name or by values."""
-    if words.is_index_name(column.name) and column.unit.lower() in ("", *words.COUNT_UNITS):
+    if words.is_index_name(column.name) and column.unit.lower() in ("", *unitwords.COUNT_UNITS):
         return True
     other = words.is_other_axis(column.name) or words.is_length_name(column.name)
     channel = column.unit or words.is_channel_name(column.name)
@@ -174,7 +174,7 @@ def swept_axis(columns: list[Column]) -> Column | None:
         return first
     if not first.name or _counts(first) or is_named_time(first):
         return None
-    channel = words.volt_factor(first.unit) is not None or words.is_channel_name(first.name)
+    channel = unitwords.volt_factor(first.unit) is not None or words.is_channel_name(first.name)
     return None if channel and not words.is_other_axis(first.name) else first
 
 
@@ -231,7 +231,7 @@ def rival_clocks(clocks: list[ClockColumn]) -> tuple[tuple[Column, Column], ...]
 
 def _span_s(clock: ClockColumn) -> float | None:
     """Return the time from the first to the last of the first rows, None where no unit tells."""
-    unit = words.time_unit(clock.column.unit)
+    unit = unitwords.time_unit(clock.column.unit)
     told = clock.column.head[np.isfinite(clock.column.head)]
     if clock.kind != "number" or unit is None or told.size < 2:
         return None

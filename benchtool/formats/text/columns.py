@@ -8,7 +8,7 @@ from dataclasses import replace
 
 import numpy as np
 
-from benchtool.formats.text import words
+from benchtool.formats.text import unitwords, words
 from benchtool.formats.text.cells import Kind, number
 from benchtool.formats.text.clocks import (
     advances,
@@ -20,46 +20,15 @@ from benchtool.formats.text.clocks import (
     rival_clocks,
     swept_axis,
 )
-from benchtool.formats.text.column import ClockColumn, Column
+from benchtool.formats.text.column import ClockColumn, Column, Columns, told_apart
 from benchtool.formats.text.heading import Heading
 from benchtool.formats.text.layout import Layout
 from benchtool.formats.text.metadata import Stated
 from benchtool.formats.text.wordcells import is_bit_row, n_bits, names_bits
-from benchtool.frozen import frozen_record
 
 _MOST_CHANNELS = 32  # that the rows of one file are told apart by
 _DAYS = (19000101, 21001231)
-
-
-@frozen_record(eq=False)
-class Columns:
-    """Clocks and channels.
-
-    Attributes:
-        clocks: The clocks.
-        values: The channels.
-        clock_of: Each channel's clock, None where rows count.
-        intervals: Sample intervals that stand in columns of their own.
-        disordered: Columns named for time that do not go forward.
-        axis: What the table is swept over, where that is no time; None where it is a capture.
-        key: The column that tells which channel a row is of.
-        dates: Days without a time of day.
-        edges: Whether the two clocks are the times of rising and of falling edges.
-        lasting: Whether the clock is how long each state lasted.
-        rivals: Clocks side by side that run over different spans.
-    """
-
-    clocks: tuple[ClockColumn, ...]
-    values: tuple[Column, ...]
-    clock_of: tuple[int | None, ...]
-    intervals: tuple[Stated, ...] = ()
-    disordered: tuple[str, ...] = ()
-    axis: Column | None = None
-    key: Column | None = None
-    dates: tuple[Column, ...] = ()
-    edges: bool = False
-    lasting: bool = False
-    rivals: tuple[tuple[Column, Column], ...] = ()
+_LONGEST_DATE = 10
 
 
 def assign_columns(layout: Layout, heading: Heading, *, stated: bool, unit_given: bool) -> Columns:
@@ -75,80 +44,48 @@ def assign_columns(layout: Layout, heading: Heading, *, stated: bool, unit_given
     stated = stated or bool(intervals)
     key = next((c for c in columns if _is_key(c, layout)), None)
     columns = [c for c in columns if c is not key and c.kind != "L" and not _is_segment(c)]
-    disordered = tuple(c.title for c in columns if is_named_time(c) and not advances(c.head))
+    disordered = tuple(c for c in columns if is_named_time(c) and not advances(c.head))
     clocks = named_clocks(columns, stated=stated)
     if not clocks and not disordered:
         named = heading.is_named
         clocks = clocks_by_values(columns, named=named, stated=stated, unit_given=unit_given)
     lengths = tuple(c for c in columns if _is_length(c))
-    rest = _channels(columns, clocks, {*disordered, *(c.title for c in lengths)})
+    rest = _channels(columns, clocks, {c.field for c in (*disordered, *lengths)})
     rest = _without_running(rest, stated=stated or bool(clocks))
-    values = tuple(bit for c in rest for bit in _bits(c, layout))
-    listed = _listed(columns, clocks, values, lengths)
+    values = told_apart(bit for c in rest for bit in _bits(c, layout))
+    listed = _as_list(columns, clocks, values, lengths)
     if listed is not None:
         return replace(listed, intervals=intervals)
-    chosen, clock_of = clock_of_each(clocks, values)
-    return Columns(
-        clocks=chosen,
-        values=values,
-        clock_of=clock_of,
-        intervals=intervals,
-        disordered=disordered,
-        axis=None if clocks else swept_axis(columns),
-        key=key,
-        dates=tuple(c for c in columns if c.date_only),
-        rivals=rival_clocks(clocks),
-    )
+    found = _as_samples(columns, clocks, values)
+    titles = tuple(c.title for c in disordered)
+    return replace(found, intervals=intervals, key=key, disordered=titles)
 
 
-def _listed(
+def _as_list(
     columns: list[Column],
     clocks: list[ClockColumn],
     values: tuple[Column, ...],
     lengths: tuple[Column, ...],
 ) -> Columns | None:
-    """Return the columns of a list of transitions that gives no time beside a state, if any."""
     if clocks and values:
         return None
-    pair = edge_columns(columns)
-    if pair is None and not clocks and len(values) == 1:
-        return lasting_states(values[0], lengths)
-    return pair
+    from benchtool.formats.text.listcolumns import listed_columns
+
+    return listed_columns(columns, clocks, values, lengths)
 
 
-def edge_columns(columns: list[Column]) -> Columns | None:
-    """Return the two columns that hold the times of rising and of falling edges, if any."""
-    numbers = [c for c in columns if c.kind == "N" and not words.is_index_name(c.name)]
-    if len(numbers) != 2 or not all(_is_edge_time(c) for c in numbers):
-        return None
-    first, second = (c.head for c in numbers)
-    size = min(first.size, second.size)
-    order = np.ravel(np.column_stack([first[:size], second[:size]]))
-    order = order[np.isfinite(order)]
-    names = [words.edge_of(c.name) for c in numbers]
-    if names[0] == names[1] or order.size < 4 or not np.all(np.diff(order) > 0):
-        return None
-    pair = numbers if names[0] == "rise" else numbers[::-1]
-    clocks = tuple(
-        ClockColumn(column=c, kind="number", evidence=f"header {c.raw!r}: edges") for c in pair
+def _as_samples(
+    columns: list[Column], clocks: list[ClockColumn], values: tuple[Column, ...]
+) -> Columns:
+    chosen, clock_of = clock_of_each(clocks, values)
+    return Columns(
+        clocks=chosen,
+        values=values,
+        clock_of=clock_of,
+        axis=None if clocks else swept_axis(columns),
+        dates=tuple(c for c in columns if c.date_only),
+        rivals=rival_clocks(clocks),
     )
-    return Columns(clocks=clocks, values=(), clock_of=(), edges=True)
-
-
-def _is_edge_time(column: Column) -> bool:
-    timed = words.time_unit(column.unit) is not None or words.is_time_name(column.name)
-    return bool(words.edge_of(column.name)) and timed
-
-
-def lasting_states(value: Column, lengths: tuple[Column, ...]) -> Columns | None:
-    """Return the columns of a list of states and how long each lasted, if they are one."""
-    told = value.head[np.isfinite(value.head)]
-    states = value.kind == "W" or (told.size > 2 and set(told.tolist()) == {0.0, 1.0})
-    if len(lengths) != 1 or not states or not words.is_lasting(lengths[0].name):
-        return None
-    evidence = f"header {lengths[0].raw!r}: how long each state lasted"
-    clock = ClockColumn(column=lengths[0], kind="number", evidence=evidence)
-    return Columns(clocks=(clock,), values=(value,), clock_of=(0,), lasting=True)
 
 
 def columns_of(layout: Layout, heading: Heading) -> list[Column]:
@@ -179,9 +116,6 @@ def _is_date_only(cells: list[str], kind: str) -> bool:
     if kind == "S":
         return not any(":" in cell or "T" in cell or len(cell) > _LONGEST_DATE for cell in told)
     return kind == "N" and bool(told) and all(_is_day(cell) for cell in told)
-
-
-_LONGEST_DATE = 10
 
 
 def _is_day(cell: str) -> bool:
@@ -215,7 +149,7 @@ def _figures(
 
 
 def _stated(value: float, name: str, unit: str) -> Stated:
-    known = words.time_unit(unit)
+    known = unitwords.time_unit(unit)
     seconds = known.seconds(value) if known else value
     return Stated(value=seconds, evidence=f"column {name!r}", assumed_unit=known is None)
 
@@ -225,12 +159,12 @@ def _is_segment(column: Column) -> bool:
 
 
 def _channels(
-    columns: list[Column], clocks: list[ClockColumn], others: set[str]
+    columns: list[Column], clocks: list[ClockColumn], others: set[int]
 ) -> Iterator[Column]:
     """Yield the columns that may be channels."""
     taken = {f for clock in clocks for f in (clock.column.field, clock.date)}
     for column in columns:
-        passed = column.field in taken or column.title in others or column.date_only
+        passed = column.field in taken or column.field in others or column.date_only
         if column.kind in "NWH" and not passed:
             yield column
 
@@ -258,7 +192,7 @@ def _is_key(column: Column, layout: Layout) -> bool:
 def _is_length(column: Column) -> bool:
     """Say whether a column holds lengths of time."""
     named = words.is_length_name(column.name) or words.is_interval_key(column.name)
-    return column.kind == "N" and named and words.time_unit(column.unit) is not None
+    return column.kind == "N" and named and unitwords.time_unit(column.unit) is not None
 
 
 def _without_running(columns: Iterable[Column], *, stated: bool) -> Iterator[Column]:
@@ -270,7 +204,7 @@ def _without_running(columns: Iterable[Column], *, stated: bool) -> Iterator[Col
 
 def _is_running(column: Column, *, stated: bool) -> bool:
     """Say whether a column only counts its rows."""
-    if words.is_index_name(column.name) and column.unit.lower() in ("", *words.COUNT_UNITS):
+    if words.is_index_name(column.name) and column.unit.lower() in ("", *unitwords.COUNT_UNITS):
         return True
     if not stated or not counts_by_one(column.head):
         return False

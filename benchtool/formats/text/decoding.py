@@ -1,8 +1,9 @@
 """Numbers from blocks of text: in bulk where lines are sound, one by one where they are not.
 
-A block whose lines differ in nothing but digits is read straight from its bytes. Of any other the
-cells are found first, and the numbers in them read all at once. What is left, lines with another
-number of cells and cells with something else in them, is read line by line.
+Lines that differ in nothing but digits, all of a block or those of each shape, are read straight
+from their bytes. Of the others the cells are found first, and the numbers in them read all at
+once. What is left, lines with another number of cells and cells with something else in them, is
+read line by line.
 """
 
 from __future__ import annotations
@@ -14,17 +15,20 @@ from dataclasses import replace
 import numpy as np
 
 from benchtool.formats.magnitudes import in_range
-from benchtool.formats.text.alike import RowForm, parse_alike
+from benchtool.formats.text.alike import parse_alike
 from benchtool.formats.text.cells import number
 from benchtool.formats.text.layout import Layout, is_comment
 from benchtool.formats.text.lineends import with_newlines
 from benchtool.formats.text.numerals import ROOM, parse_cells
 from benchtool.formats.text.regular import Cells, find_cells
+from benchtool.formats.text.rowform import RowForm
+from benchtool.formats.text.shapes import chosen_lines, parse_mixed
 from benchtool.frozen import frozen_record
 from benchtool.model.arrays import FloatArray, IntArray, NDArray
 
 _PART_BYTES = 1 << 18
 _PLAIN = b"0123456789+-.eE"
+_BLANK_ENDS = (b"\n\n", b"\n\r\n", b"\n\r\r\n")
 _BEGINS = np.isin(np.arange(256), np.frombuffer(b"0123456789+-.,", np.uint8))
 
 Convert = Callable[[Sequence[str]], FloatArray]
@@ -86,21 +90,44 @@ class Decoder:
 
     def decode(self, block: bytes) -> Decoded:
         """Decode a block of whole lines."""
+        decoded = self._in_bulk(block)
+        if decoded is not None:
+            return decoded
         lines = with_newlines(block)
         body = lines
         if lines.endswith(b"\n\n") or not lines.endswith(b"\n"):
             body = lines.rstrip(b"\n") + b"\n"
         n_blank = len(lines) - len(body)
-        plain = tuple(wanted.field for wanted in self.wanted if wanted.convert is None)
-        if len(plain) == len(self.wanted) and not self.layout.paired:
-            alike = parse_alike(body, self._form(plain))
-            if alike is not None and alike[1] is None:
-                return Decoded(table=alike[0], n_lines=alike[0].shape[0] + n_blank)
         table, odd = self._in_parts(body)
+        return self._told(body, table, odd, n_blank)
+
+    def _in_bulk(self, block: bytes) -> Decoded | None:
+        """Decode a block most of whose rows are of one shape or a few; None where they are not."""
+        plain = tuple(wanted.field for wanted in self.wanted if wanted.convert is None)
+        ends_well = block.endswith(b"\n") and not block.endswith(_BLANK_ENDS)
+        if len(plain) < len(self.wanted) or self.layout.paired or not ends_well:
+            return None
+        form = self._form(plain)
+        alike = parse_alike(block, form)
+        if alike is not None and alike[1] is None:
+            return Decoded(table=alike[0], n_lines=alike[0].shape[0])
+        mixed = parse_mixed(block, form)
+        if mixed is None:
+            return None
+        table, left, stops = mixed
+        if not left.size:
+            return Decoded(table=table, n_lines=stops.size)
+        rest = with_newlines(chosen_lines(block, left, stops)) if left.size < stops.size else b""
+        if rest.count(b"\n") != left.size:
+            return None  # too many, or a line end that is a CR alone
+        table[left], odd = self._in_parts(rest)
+        return self._told(block, table, left[odd], 0)
+
+    def _told(self, body: bytes, table: FloatArray, odd: IntArray, n_blank: int) -> Decoded:
         n_lines = table.shape[0] + n_blank
         if not odd.size:
             return Decoded(table=table, n_lines=n_lines)
-        return replace(self._with_odd(body, table, odd), n_lines=n_lines)
+        return replace(self._with_odd(with_newlines(body), table, odd), n_lines=n_lines)
 
     def only(self, place: int) -> Decoder:
         """Return a decoder of one of the wanted columns; it sees the same rows."""

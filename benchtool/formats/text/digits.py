@@ -20,6 +20,9 @@ Words = NDArray[np.uint64]
 EXACT_POWER = 22
 """10**22 is the last power of ten that is exact in a float."""
 
+SHORT = 15
+"""Any whole number of so many digits is exact in a float."""
+
 _TENS: FloatArray = np.array([float(10**n) for n in range(EXACT_POWER + 1)])
 _EXACT = np.uint64(1 << 53)
 _SPLIT = 134217729.0  # 2**27 + 1
@@ -35,11 +38,11 @@ def _each(byte: int) -> np.uint64:
 ZEROS = _each(ord("0"))
 _SEVENS, _TOPS, _SIX = _each(0x7F), _each(0x80), _each(0x76)
 _PAIRS = np.uint64(0x00FF00FF00FF00FF)
-_FOURS = np.uint64(0x000000FF000000FF)
-_HUNDREDS = np.uint64(100 + (1000000 << 32))
-_ONES = np.uint64(1 + (10000 << 32))
+_FOURS = np.uint64(0x0000FFFF0000FFFF)
+_BY_10, _BY_100 = np.uint64(1 + (10 << 8)), np.uint64(1 + (100 << 16))
+_BY_10000 = np.uint64(1 + (10000 << 32))
 _PLACES = np.uint64(0x0001020304050607)
-_TEN, _ONE = np.uint64(10), np.uint64(1)
+_ONE = np.uint64(1)
 _BITS_7, _BITS_8, _BITS_16, _BITS_32, _BITS_56 = (np.uint64(n) for n in (7, 8, 16, 32, 56))
 
 
@@ -49,15 +52,13 @@ def fold(digits: Words) -> Words:
     Args:
         digits: Values 0 to 9 a byte, shape (n,); overwritten.
     """
-    later = digits >> _BITS_8
-    digits *= _TEN
-    digits += later
-    np.right_shift(digits, _BITS_16, out=later)
-    later &= _FOURS
-    later *= _ONES
+    digits *= _BY_10
+    digits >>= _BITS_8
+    digits &= _PAIRS
+    digits *= _BY_100
+    digits >>= _BITS_16
     digits &= _FOURS
-    digits *= _HUNDREDS
-    digits += later
+    digits *= _BY_10000
     digits >>= _BITS_32
     return digits
 
@@ -138,6 +139,21 @@ def scaled(mantissa: Words, power: NDArray[np.int64] | int) -> tuple[FloatArray,
     unsure = np.zeros(whole.size, np.bool_) if unsure is None else unsure
     unsure[where] |= doubtful
     return values, unsure
+
+
+def scale_short(mantissa: Words, power: int, out: FloatArray) -> None:
+    """Do what ``scaled`` does with mantissas of at most ``SHORT`` digits, in place.
+
+    Args:
+        mantissa: Whole numbers, shape (n,).
+        power: Power of ten of all, at most ``EXACT_POWER`` in size.
+        out: Takes the values.
+    """
+    np.copyto(out, mantissa.view(np.int64))
+    if power < 0:
+        np.divide(out, _TENS[-power], out=out)
+    else:
+        np.multiply(out, _TENS[power], out=out)
 
 
 def _times(whole: FloatArray, tens: FloatArray, power: NDArray[np.int64]) -> FloatArray:

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 
+from benchtool.formats.text.layout import delimiter_name
 from benchtool.formats.text.scanning import Scan
 from benchtool.formats.text.structure import Structure
 from benchtool.formats.text.timeunit import FoundUnit
@@ -11,7 +12,10 @@ from benchtool.model.capture import StructurePoint, Sureness
 
 _Point = tuple[str, str, str, Sureness]
 
-_SHOWN = {"\t": "tab", " ": "space", "": "none"}
+_KINDS = {
+    "samples": "one row a sample",
+    "transitions": "the rows are unevenly spaced and change the state",
+}
 
 
 def structure_points(
@@ -29,16 +33,12 @@ def structure_points(
     titles = ", ".join(column.title for column in structure.columns.values)
     points: list[_Point] = [
         ("encoding", structure.encoding.name, structure.encoding.evidence, "measured"),
-        ("delimiter", _SHOWN.get(layout.delimiter, layout.delimiter), layout.evidence, "measured"),
+        ("delimiter", delimiter_name(layout.delimiter), layout.evidence, "measured"),
         ("decimal", layout.decimal, _decimal_evidence(structure), "measured"),
         ("header", _header_value(structure), _header_evidence(structure), "measured"),
         *_clock_points(structure),
         ("kind", kind, _KINDS[kind], "measured"),
-        *(
-            [("interval", *interval, _interval_sureness(structure, interval[1]))]
-            if interval
-            else []
-        ),
+        *_interval_points(structure, interval),
         ("channels", titles, "columns of numbers", "stated" if named else "measured"),
         ("rows", str(scan.n_rows), f"from line {structure.rows.first_line}", "measured"),
     ]
@@ -47,17 +47,17 @@ def structure_points(
     return tuple(StructurePoint(name=n, value=v, evidence=e, sure=s) for n, v, e, s in points)
 
 
+def _interval_points(structure: Structure, interval: tuple[str, str] | None) -> list[_Point]:
+    if interval is None:
+        return []
+    return [("interval", *interval, _interval_sureness(structure, interval[1]))]
+
+
 def _interval_sureness(structure: Structure, evidence: str) -> Sureness:
     """Say how sure an interval is: without a clock, as sure as the statement of it."""
     if structure.columns.clocks:
         return "stated" if evidence.startswith("stated") else "measured"
     return "assumed" if structure.stated and structure.stated.assumed_unit else "stated"
-
-
-_KINDS = {
-    "samples": "one row a sample",
-    "transitions": "the rows are unevenly spaced and change the state",
-}
 
 
 def _decimal_evidence(structure: Structure) -> str:

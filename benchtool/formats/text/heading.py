@@ -2,10 +2,9 @@
 
 from __future__ import annotations
 
-from benchtool.formats.text import words
+from benchtool.formats.text import unitwords, words
 from benchtool.formats.text.cells import kind_of
 from benchtool.formats.text.layout import COMMENT, Layout, split_cells
-from benchtool.formats.text.metadata import split_unit
 from benchtool.frozen import frozen_record
 
 _LETTERS = ("V", "v", "U", "u", "I", "i")
@@ -72,7 +71,7 @@ def _take(cell: str, i: int, names: list[str], units: list[str], raw: list[str])
         return
     cell = "".join(c for c in cell if c.isprintable()).strip()
     raw[i] = f"{raw[i]} {cell}".strip()
-    if _is_bracketed(cell) or (words.is_unit(cell) and (names[i] or cell[:1] in "([")):
+    if _is_bracketed(cell) or (unitwords.is_unit(cell) and (names[i] or cell[:1] in "([")):
         units[i] = units[i] or cell.strip("()[]{}<> ")
         return
     name, unit = _named(cell)
@@ -82,11 +81,11 @@ def _take(cell: str, i: int, names: list[str], units: list[str], raw: list[str])
 
 def _named(cell: str) -> tuple[str, str]:
     """Split a header cell; an identifier such as ``out_mv`` keeps its whole name."""
-    name, unit = split_unit(cell)
-    if name in _LETTERS and unit and not words.is_unit(unit):
+    name, unit = words.split_unit(cell)
+    if name in _LETTERS and unit and not unitwords.is_unit(unit):
         return cell, ""  # V(out): the voltage of a node, not a quantity in a unit
     if not unit:
-        return cell, cell if words.is_unit(cell) else ""
+        return cell, cell if unitwords.is_unit(cell) else ""
     whole = "_" in cell and not cell.endswith((")", "]", "}", ">"))
     return (cell if whole else name), unit
 
@@ -170,13 +169,13 @@ def _is_header(cells: list[str], layout: Layout, line: str) -> bool:
     if len(cells) > layout.n_fields or not (len(cells) == layout.n_fields or len(told) >= n_data):
         return False
     kinds = [kind_of(cell, layout.decimal) for cell in cells]
-    if "T" not in kinds and "W" not in kinds and not any(words.is_unit(c) for c in told):
+    if "T" not in kinds and "W" not in kinds and not any(unitwords.is_unit(c) for c in told):
         return False
     if layout.n_fields == 1 and any(mark in line for mark in ":="):
         return False
     if not any(kinds[i] == "N" for i in layout.fields if i < len(kinds)):
         return True  # figures only where there are no data: an increment, a start
-    name, _ = split_unit(cells[0])
+    name, _ = words.split_unit(cells[0])
     return kinds[0] != "N" and (words.is_time_name(name) or words.is_index_name(name))
 
 
@@ -197,7 +196,7 @@ def _stacks(cells: list[str], found: list[tuple[int, list[str]]], layout: Layout
 def _is_units_row(cells: list[str], layout: Layout) -> bool:
     """Say whether the cells over the data are units and nothing else."""
     told = [cells[i] for i in layout.fields if i < len(cells) and cells[i]]
-    return bool(told) and all(words.is_unit(cell) or _is_bracketed(cell) for cell in told)
+    return bool(told) and all(unitwords.is_unit(cell) or _is_bracketed(cell) for cell in told)
 
 
 def _is_group_row(cells: list[str], below: list[str]) -> bool:
@@ -207,4 +206,4 @@ def _is_group_row(cells: list[str], below: list[str]) -> bool:
 
 
 def _is_clock_cell(cell: str) -> bool:
-    return bool(cell) and words.is_time_name(split_unit(cell)[0])
+    return bool(cell) and words.is_time_name(words.split_unit(cell)[0])

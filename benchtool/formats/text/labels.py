@@ -4,7 +4,6 @@ from __future__ import annotations
 
 from collections import Counter
 from collections.abc import Sequence
-from zlib import crc32
 
 import numpy as np
 
@@ -67,4 +66,6 @@ def _labels(
 
 def codes_of(cells: Sequence[str]) -> FloatArray:
     """Return a number for each label, the same for the same label; NaN where there is none."""
+    from zlib import crc32
+
     return np.array([float(crc32(cell.encode())) if cell else np.nan for cell in cells])

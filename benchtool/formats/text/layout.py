@@ -9,6 +9,7 @@ from benchtool.formats.text.cells import Kind
 from benchtool.frozen import frozen_record
 
 DELIMITERS = {"comma": ",", "semicolon": ";", "tab": "\t", "pipe": "|", "space": " ", "none": ""}
+_NAMES = {"\t": "tab", " ": "space", "": "none"}
 COMMENT = re.compile(r"^\s*(?:#|//|%|!|\*(?!\*)\s)\s*")
 
 
@@ -44,6 +45,11 @@ class Layout:
     def fields(self) -> tuple[int, ...]:
         """Fields that hold data."""
         return tuple(i for i, kind in enumerate(self.kinds) if kind in "NSWH")
+
+
+def delimiter_name(delimiter: str) -> str:
+    """Return a delimiter as it is shown and typed: ``tab``, ``space`` and ``none`` are words."""
+    return _NAMES.get(delimiter, delimiter)
 
 
 def split_cells(line: str, delimiter: str, *, paired: bool = False) -> list[str]:

@@ -11,15 +11,15 @@ from collections.abc import Iterator
 import numpy as np
 
 from benchtool.errors import MalformedCaptureError
-from benchtool.formats.text.cells import UNKNOWN_WORDS, number
+from benchtool.formats.text.cells import number
 from benchtool.formats.text.column import Column
 from benchtool.formats.text.refusals import refuse_rows_of_channels
+from benchtool.formats.text.rowkinds import held, is_transition_list
 from benchtool.formats.text.scanning import Scan, scan_rows
 from benchtool.formats.text.states import converter
 from benchtool.formats.text.structure import Structure
 from benchtool.formats.text.transitions import (
     Listed,
-    is_transition_list,
     names_edges,
     read_transitions,
 )
@@ -36,65 +36,6 @@ class Lists:
     scan: Scan
     traces: tuple[LogicTrace, ...]
     notices: tuple[Notice, ...]
-
-
-def head_stamps(structure: Structure, clock: int) -> FloatArray:
-    """Return the first stamps of a clock, decoded."""
-    wanted = structure.cells[clock].wanted
-    rows = structure.layout.rows
-    if wanted.convert is None:
-        return structure.columns.clocks[clock].column.head
-    cells = [
-        row[wanted.field] if wanted.second is None else f"{row[wanted.second]} {row[wanted.field]}"
-        for row in rows
-    ]
-    return wanted.convert(cells)
-
-
-def may_be_lists(structure: Structure) -> bool:
-    """Say whether the first rows can be transitions and not samples."""
-    columns = structure.columns
-    if columns.edges or columns.lasting:
-        return True
-    if not columns.clocks or any(clock.kind == "index" for clock in columns.clocks):
-        return False
-    heads = [_held(_head_values(structure, c), structure, c) for c in columns.values]
-    stamps = [head_stamps(structure, k) for k in range(len(columns.clocks))]
-    if columns.key is not None:
-        return _changes_by_channel(structure, heads)
-    return all(
-        is_transition_list(
-            stamps[k],
-            [h for h, of in zip(heads, columns.clock_of, strict=True) if of == k],
-            structure.cells[k].resolution,
-        )
-        for k in range(len(columns.clocks))
-    )
-
-
-def _head_values(structure: Structure, column: Column) -> FloatArray:
-    cells = [row[column.field] for row in structure.layout.rows]
-    convert = converter(column)
-    if convert is not None:
-        return convert(cells)
-    return np.array([number(cell, structure.layout.decimal) for cell in cells])
-
-
-def _changes_by_channel(structure: Structure, heads: list[FloatArray]) -> bool:
-    """Say whether rows told apart by channel are states that change from row to row."""
-    key = structure.columns.key
-    if key is None or len(heads) != 1:
-        return False
-    names = [row[key.field] for row in structure.layout.rows]
-    values = heads[0]
-    if np.unique(values[np.isfinite(values)]).size != 2:
-        return False
-    last: dict[str, float] = {}
-    n_same = 0
-    for name, value in zip(names, values.tolist(), strict=True):
-        n_same += last.get(name) == value
-        last[name] = value
-    return n_same <= 0.1 * len(names)
 
 
 def read_lists(structure: Structure, source: str) -> Lists | None:
@@ -173,17 +114,8 @@ def _listed(structure: Structure, table: FloatArray) -> Iterator[_Found]:
 def _channel(structure: Structure, column: Column, values: FloatArray) -> Listed:
     cells = [row[column.field] for row in structure.layout.rows]
     return Listed(
-        title=column.title, values=_held(values, structure, column), worded=names_edges(cells)
+        title=column.title, values=held(values, structure, column), worded=names_edges(cells)
     )
-
-
-def _held(values: FloatArray, structure: Structure, column: Column) -> FloatArray:
-    """Let a state hold on over the empty cells below it, where no cell names an unknown one."""
-    cells = [row[column.field] for row in structure.layout.rows]
-    if "" not in cells or any(cell.lower() in UNKNOWN_WORDS for cell in cells):
-        return values
-    told = np.where(np.isfinite(values), np.arange(values.size), 0)
-    return values[np.maximum.accumulate(told)]
 
 
 def _edges(table: FloatArray) -> _Found:

@@ -4,7 +4,6 @@ from __future__ import annotations
 
 import numpy as np
 
-from benchtool.formats.text.alike import KEEP, WORD, cut_chunks
 from benchtool.formats.text.digits import (
     ZEROS,
     Bytes,
@@ -16,6 +15,7 @@ from benchtool.formats.text.digits import (
     place_of,
     scaled,
 )
+from benchtool.formats.text.rowform import KEEP, WORD, cut_chunks
 from benchtool.model.arrays import BoolArray, FloatArray, IntArray
 
 ROOM = 24
@@ -198,7 +198,7 @@ def _without_exponent(
     ends = stops[some]
     tail = _words(text, ends, 1)[:, 0]
     hole = find_byte(tail | _LOWER, _E) & KEEP[np.minimum(ends - starts[some], WORD)]
-    after = 7 - place_of(hole)
+    after = np.maximum(7 - place_of(hole), 0)  # of a cell with more than one E it is no place
     sign = np.frombuffer(text, np.uint8)[ends - after]
     signed = (sign == _MINUS) | (sign == _PLUS)
     figures = after - signed

@@ -7,9 +7,9 @@ from dataclasses import replace
 
 from benchtool.errors import UsageError
 from benchtool.formats.overrules import OPTIONS, idle_option
-from benchtool.formats.text import words
-from benchtool.formats.text.column import ClockColumn, ClockKind, Column
-from benchtool.formats.text.columns import Columns, columns_of
+from benchtool.formats.text import unitwords
+from benchtool.formats.text.column import ClockColumn, ClockKind, Column, Columns, told_apart
+from benchtool.formats.text.columns import columns_of
 from benchtool.formats.text.heading import Heading
 from benchtool.formats.text.layout import Layout
 from benchtool.model.capture import ReadOptions
@@ -68,7 +68,7 @@ def overrule_time(
         clocks, taken = (clock,), {clock.column.field, clock.date}
     values = tuple(value for value in found.values if value.field not in taken)
     if not values:
-        values = tuple(
+        values = told_apart(
             c.column for c in found.clocks if c.column.field not in taken and c.kind != "stamp"
         )
     return Columns(
@@ -86,7 +86,7 @@ def _chosen(
     known = next((c for c in found.clocks if column.field in (c.column.field, c.date)), None)
     if known is not None and known.kind == "stamp":
         return known
-    counts = column.unit.lower() in words.COUNT_UNITS and column.unit != "n"
+    counts = column.unit.lower() in unitwords.COUNT_UNITS and column.unit != "n"
     kind: ClockKind = "index" if counts and options.time_unit is None else "number"
     return ClockColumn(
         column=column, kind="stamp" if column.kind == "S" else kind, evidence="--time"

@@ -10,8 +10,8 @@ from benchtool.formats.content import Content
 from benchtool.formats.steps import Steps, examine_steps
 from benchtool.formats.text.envelope import envelope_notice, is_envelope, without_twins
 from benchtool.formats.text.evidence import structure_points
-from benchtool.formats.text.lists import head_stamps, may_be_lists, read_lists
 from benchtool.formats.text.refusals import refuse_repeats, refuse_rows_of_channels
+from benchtool.formats.text.rowkinds import head_stamps, may_be_lists
 from benchtool.formats.text.sampled import Sampled, is_logic, refuse_empty, value_unit
 from benchtool.formats.text.scanning import Scan, scan_rows
 from benchtool.formats.text.structure import Structure, epoch_ns, find_structure
@@ -78,13 +78,16 @@ def _says_samples(structure: Structure, options: ReadOptions) -> bool:
 
 
 def _steps(structure: Structure, clock: int) -> Steps:
-    return examine_steps(
-        without_twins(head_stamps(structure, clock)), structure.cells[clock].resolution
-    )
+    """Look at the first stamps of a clock; a count of rows is not rounded."""
+    counts = structure.columns.clocks[clock].kind == "index"
+    resolution = 0.0 if counts else structure.cells[clock].resolution
+    return examine_steps(without_twins(head_stamps(structure, clock)), resolution)
 
 
 def _read_list(structure: Structure, content: Content, options: ReadOptions) -> Capture | None:
     """Read lists of transitions; None if later rows show that they are none."""
+    from benchtool.formats.text.lists import read_lists
+
     found = read_lists(structure, content.source)
     if found is None:
         return None

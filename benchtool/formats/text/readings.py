@@ -63,7 +63,7 @@ def _sound_layouts(lines: list[str], options: ReadOptions) -> list[tuple[int, La
     """Return the layouts under which lines are rows, with their number of rows, best first."""
     found = []
     for delimiter, decimal, paired in _candidates(lines, options):
-        layout = _try(lines, delimiter, decimal, paired=paired)
+        layout = _read_under(lines, delimiter, decimal, paired=paired)
         if layout is not None:
             found.append(layout)
     return sorted(found, key=lambda item: -item[0])
@@ -93,24 +93,19 @@ def _stated_delimiter(lines: list[str], options: ReadOptions) -> str | None:
     return match[1] if match else None
 
 
-def _try(
+def _read_under(
     lines: list[str], delimiter: str, decimal: str, *, paired: bool
 ) -> tuple[int, Layout] | None:
-    """Read the lines under one delimiter and decimal mark."""
+    """Read the lines under one delimiter and decimal mark; None where no line is a row then."""
     cells = [
         [] if is_comment(line) else split_cells(line, delimiter, paired=paired) for line in lines
     ]
     kinds = [tuple(kind_of(cell, decimal) for cell in row) for row in cells]
     if delimiter not in ("", " "):
         kinds = with_labels(cells, kinds)
-    widths = Counter(len(row) for row in kinds if _is_data(row))
-    if delimiter == " ":
-        widths.pop(1, None)
-    if not widths:
+    n_fields = _width_of_rows(cells, kinds, delimiter)
+    if n_fields is None:
         return None
-    n_fields = _usual_width(kinds, widths)
-    if delimiter not in ("", " "):
-        n_fields = _with_metadata_right(cells, kinds, n_fields)
     rows = [i for i, row in enumerate(kinds) if len(row) == n_fields and _is_data(row)]
     modal = _modal_kinds([kinds[i] for i in rows])
     good = [i for i in rows if _fits(kinds[i], modal)]
@@ -128,6 +123,21 @@ def _try(
         evidence=f"{len(good)} of the first {len(lines)} lines are rows of {n_fields}",
     )
     return len(good), layout
+
+
+def _width_of_rows(
+    cells: list[list[str]], kinds: list[tuple[Kind, ...]], delimiter: str
+) -> int | None:
+    """Return the number of fields of a row; None where no line can be one."""
+    widths = Counter(len(row) for row in kinds if _is_data(row))
+    if delimiter == " ":
+        widths.pop(1, None)
+    if not widths:
+        return None
+    n_fields = _usual_width(kinds, widths)
+    if delimiter in ("", " "):
+        return n_fields
+    return _with_metadata_right(cells, kinds, n_fields)
 
 
 def _usual_width(kinds: list[tuple[Kind, ...]], widths: Counter[int]) -> int:

@@ -6,9 +6,8 @@ import numpy as np
 
 from benchtool.errors import AmbiguousStructureError, CaptureError, MalformedCaptureError
 from benchtool.formats.clock import ClockScan
-from benchtool.formats.text import words
-from benchtool.formats.text.column import Column
-from benchtool.formats.text.columns import Columns
+from benchtool.formats.text import unitwords, words
+from benchtool.formats.text.column import Column, Columns
 from benchtool.formats.text.heading import Heading
 from benchtool.formats.text.layout import Layout
 from benchtool.formats.text.metadata import Metadata
@@ -30,19 +29,14 @@ def refuse_tables(
         MalformedCaptureError: With code ``no-values``, if it holds times and nothing else.
     """
     told = options.time is not None
-    swept = _swept(columns, told=told or options.interval_s is not None)
-    if swept:
+    if swept := _swept(columns, told=told or options.interval_s is not None):
         raise AmbiguousStructureError(
             f"{source} is no record over time: {swept}",
             hint=_time_hint(columns, layout, heading),
             code="no-time",
         )
     if columns.rivals and not told:
-        names = " or ".join(_shown(c) for c in columns.rivals[0])
-        raise AmbiguousStructureError(
-            f"the channels of {source} may belong to the time in {names}, which differ",
-            hint="Say which with --time, or export each channel beside its own time.",
-        )
+        raise _rivals(columns, source)
     if not columns.values and not columns.edges:
         raise MalformedCaptureError(
             f"{source} has a time column but no column of values",
@@ -50,6 +44,14 @@ def refuse_tables(
             path=source,
             code="no-values",
         )
+
+
+def _rivals(columns: Columns, source: str) -> AmbiguousStructureError:
+    names = " or ".join(_shown(column) for column in columns.rivals[0])
+    return AmbiguousStructureError(
+        f"the channels of {source} may belong to the time in {names}, which differ",
+        hint="Say which with --time, or export each channel beside its own time.",
+    )
 
 
 def _swept(columns: Columns, *, told: bool) -> str:
@@ -78,7 +80,7 @@ def _is_swept_within(columns: Columns, value: Column) -> bool:
 
 def _are_counts(columns: Columns) -> bool:
     """Say whether times without a name of their own stand beside nothing but numbers of hits."""
-    bare = all(words.time_unit(clock.column.name) is not None for clock in columns.clocks)
+    bare = all(unitwords.time_unit(clock.column.name) is not None for clock in columns.clocks)
     return (
         bool(columns.clocks) and bare and all(words.is_count_name(c.name) for c in columns.values)
     )

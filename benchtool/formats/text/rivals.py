@@ -7,8 +7,12 @@ from collections import Counter
 
 from benchtool.errors import AmbiguousStructureError, Way
 from benchtool.formats.text.cells import is_grouped, kind_of
-from benchtool.formats.text.layout import COMMENT, Layout
+from benchtool.formats.text.layout import COMMENT, Layout, delimiter_name
 from benchtool.model.capture import ReadOptions
+
+_FEW = 3  # lines that are damage and no mark of their own
+_MARKS = {".": "point", ",": "comma"}
+_THOUSAND = r"[1-9]\d{0,2}\.\d{3}"
 
 
 def single_best(found: list[tuple[int, Layout]], options: ReadOptions, source: str) -> Layout:
@@ -43,7 +47,7 @@ def _settle(a: Layout, b: Layout, source: str) -> Layout:
 
 
 def _way(delimiter: str, decimal: str, meaning: str) -> Way:
-    named = {"\t": "tab", " ": "space", "": "none"}.get(delimiter, delimiter)
+    named = delimiter_name(delimiter)
     return Way(options=(("delimiter", named), ("decimal", decimal)), meaning=meaning)
 
 
@@ -163,11 +167,6 @@ def refuse_mixed_marks(layout: Layout, lines: list[str], options: ReadOptions, s
             f"decimal {_MARKS[layout.decimal]}, or it counts thousands",
             hint="Export the capture with one decimal mark, or say which with --decimal.",
         )
-
-
-_FEW = 3  # lines that are damage and no mark of their own
-_MARKS = {".": "point", ",": "comma"}
-_THOUSAND = r"[1-9]\d{0,2}\.\d{3}"
 
 
 def _all_thousands(layout: Layout, numbers: list[int]) -> str | None:

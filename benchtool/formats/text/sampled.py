@@ -6,15 +6,15 @@ import numpy as np
 
 from benchtool.errors import MalformedCaptureError
 from benchtool.formats.grid import code_step, value_step
-from benchtool.formats.text import words
+from benchtool.formats.text import unitwords
 from benchtool.formats.text.cells import last_digit
 from benchtool.formats.text.column import Column
 from benchtool.formats.text.envelope import MiddleSamples, first_rows
 from benchtool.formats.text.layout import Layout
 from benchtool.formats.text.scanning import Range, Scan
 from benchtool.formats.text.timebase import ShiftedStamps, Timebase
+from benchtool.formats.text.unitwords import TimeUnit
 from benchtool.formats.text.walking import DataRows, TextSamples
-from benchtool.formats.text.words import TimeUnit
 from benchtool.frozen import frozen_record
 from benchtool.model.arrays import NDArray
 from benchtool.model.capture import (
@@ -163,11 +163,11 @@ def _within(dropped: NDArray[np.int64], n_rows: int) -> NDArray[np.int64]:
 def value_unit(column: Column, stated: str) -> tuple[str, float, bool]:
     """Return the unit of a channel, its size in that unit, and whether volts were assumed."""
     for text in (column.unit, stated):
-        factor = words.volt_factor(text)
+        factor = unitwords.volt_factor(text)
         if factor is not None:
             return "V", factor, False
     told = column.unit.strip()
-    if told and told.lower() not in words.COUNT_UNITS and told.lower() not in _CODES:
+    if told and told.lower() not in unitwords.COUNT_UNITS and told.lower() not in _CODES:
         return told, 1.0, False
     return "V", 1.0, True
 
@@ -198,7 +198,7 @@ def is_logic(column: Column, channel: Range, layout: Layout, *, others: bool) ->
     """
     if column.kind in "WH":
         return True
-    if not channel.binary or words.volt_factor(column.unit) is not None:
+    if not channel.binary or unitwords.volt_factor(column.unit) is not None:
         return False
     if not _prints_integers(column, layout):
         return False

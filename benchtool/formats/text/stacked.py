@@ -10,11 +10,10 @@ import re
 from collections.abc import Iterator
 
 from benchtool.errors import AmbiguousStructureError
-from benchtool.formats.text import words
+from benchtool.formats.text import unitwords, words
 from benchtool.formats.text.cells import kind_of
 from benchtool.formats.text.heading import header_cells
 from benchtool.formats.text.layout import Layout, is_comment
-from benchtool.formats.text.metadata import split_unit
 from benchtool.formats.text.scanning import Scan
 from benchtool.formats.text.structure import Structure
 from benchtool.frozen import frozen_record
@@ -103,7 +102,7 @@ def _names(text: str, layout: Layout) -> list[str]:
     cells = [cell for cell in header_cells(text, layout) if cell]
     kinds = {kind_of(cell, layout.decimal) for cell in cells}
     if layout.n_fields == 1:
-        return cells if any(split_unit(cell)[1] for cell in cells) else []
+        return cells if any(words.split_unit(cell)[1] for cell in cells) else []
     return cells if len(cells) > 1 and "T" in kinds and kinds <= {"T", "W"} else []
 
 
@@ -114,7 +113,7 @@ def _has_rows(line: _Line, layout: Layout) -> bool:
         kinds = {kind_of(cell, layout.decimal) for cell in cells}
         if "T" not in kinds:
             return bool(kinds & {"N", "S"})
-        if not all(words.is_unit(cell) for cell in cells):
+        if not all(unitwords.is_unit(cell) for cell in cells):
             return False
     return False
 

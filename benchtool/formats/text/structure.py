@@ -10,8 +10,8 @@ import numpy as np
 from benchtool.formats.content import Content
 from benchtool.formats.text.cells import plain
 from benchtool.formats.text.clockcells import ClockCells, clock_cells
-from benchtool.formats.text.column import ClockColumn
-from benchtool.formats.text.columns import Columns, assign_columns
+from benchtool.formats.text.column import ClockColumn, Columns
+from benchtool.formats.text.columns import assign_columns
 from benchtool.formats.text.decoding import Decoder, Wanted
 from benchtool.formats.text.encoding import Encoding, find_encoding, narrowed
 from benchtool.formats.text.ending import find_cut, last_lines
@@ -30,9 +30,9 @@ from benchtool.formats.text.refusals import (
 )
 from benchtool.formats.text.states import converter
 from benchtool.formats.text.timeunit import FoundUnit, find_time_unit, stated_interval
+from benchtool.formats.text.unitwords import TimeUnit
 from benchtool.formats.text.walking import DataRows
 from benchtool.formats.text.widths import without_wide
-from benchtool.formats.text.words import TimeUnit
 from benchtool.formats.zeros import without_zeros, zeros_notice
 from benchtool.frozen import frozen_record
 from benchtool.model.capture import ReadOptions
@@ -98,18 +98,12 @@ def find_structure(content: Content, options: ReadOptions) -> Structure:
     layout = find_layout(text.lines, options, content.source)
     heading = read_heading(text.lines, layout)
     metadata = read_metadata(_around(text.lines, layout, heading), layout)
-    known = bool(metadata.intervals) or options.interval_s is not None
-    columns = assign_columns(
-        layout, heading, stated=known, unit_given=options.time_unit is not None
-    )
-    columns = _overruled(columns, layout, heading, options, content.source)
-    refuse_tables(columns, layout, heading, options, content.source)
-    refuse_lost_fractions(layout, heading, content.source)
-    counted = not columns.clocks or any(c.kind == "index" for c in columns.clocks)
-    stated = stated_interval((*metadata.intervals, *columns.intervals), options, needed=counted)
-    if counted:
-        if stated is None:
-            raise no_time(content.source, columns, layout, heading)
+    columns = _columns(layout, heading, metadata, options, content.source)
+    statements = (*metadata.intervals, *columns.intervals)
+    stated = stated_interval(statements, options, needed=columns.counted)
+    if columns.counted and stated is None:
+        raise no_time(content.source, columns, layout, heading)
+    if columns.counted:
         refuse_thinned(metadata, options, content.source)
         refuse_wrapped(columns, content.source)
     cells = tuple(_cells_of(clock, layout, text) for clock in columns.clocks)
@@ -127,9 +121,26 @@ def find_structure(content: Content, options: ReadOptions) -> Structure:
         cells=cells,
         units=units,
         stated=stated,
-        warnings=(*cut, *zeros_notice(text.n_zeros), *_assumptions(units, stated, counted=counted)),
+        warnings=(*cut, *zeros_notice(text.n_zeros), *_assumptions(units, stated, columns)),
         above=tuple(text.lines[: layout.start]),
     )
+
+
+def _columns(
+    layout: Layout, heading: Heading, metadata: Metadata, options: ReadOptions, source: str
+) -> Columns:
+    """Return clocks and channels, as the user overrules them; refuse what is no capture."""
+    known = bool(metadata.intervals) or options.interval_s is not None
+    unit_given = options.time_unit is not None
+    columns = assign_columns(layout, heading, stated=known, unit_given=unit_given)
+    if options.time is not None or unit_given:
+        from benchtool.formats.text.overruled import overrule_time, refuse_idle_unit
+
+        columns = overrule_time(columns, layout, heading, options, source)
+        refuse_idle_unit(columns, options, source)
+    refuse_tables(columns, layout, heading, options, source)
+    refuse_lost_fractions(layout, heading, source)
+    return columns
 
 
 def _open_text(content: Content, skip: int | None) -> _Text:
@@ -172,19 +183,6 @@ def _around(lines: list[str], layout: Layout, heading: Heading) -> list[str]:
     return [*before, *among, *side]
 
 
-def _overruled(
-    columns: Columns, layout: Layout, heading: Heading, options: ReadOptions, source: str
-) -> Columns:
-    """Return the columns as the user overrules them."""
-    if options.time is None and options.time_unit is None:
-        return columns
-    from benchtool.formats.text.overruled import overrule_time, refuse_idle_unit
-
-    columns = overrule_time(columns, layout, heading, options, source)
-    refuse_idle_unit(columns, options, source)
-    return columns
-
-
 def _cells_of(clock: ClockColumn, layout: Layout, text: _Text) -> ClockCells:
     """Look at a clock's cells in the first and the last rows."""
     cells = [_joined(row, clock) for row in layout.rows]
@@ -213,10 +211,10 @@ def _unit_of(
 
 
 def _assumptions(
-    units: tuple[FoundUnit, ...], stated: Stated | None, *, counted: bool
+    units: tuple[FoundUnit, ...], stated: Stated | None, columns: Columns
 ) -> tuple[Notice, ...]:
     notices = [notice for found in units[:1] for notice in found.warnings]
-    if counted and stated is not None and stated.assumed_unit:
+    if columns.counted and stated is not None and stated.assumed_unit:
         notices.append(
             Notice(
                 code="assumed-time-unit",

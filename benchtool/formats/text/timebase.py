@@ -8,8 +8,9 @@ from dataclasses import replace
 
 import numpy as np
 
-from benchtool.formats.clock import ClockScan, Piece
-from benchtool.formats.text.words import TimeUnit
+from benchtool.formats.clock import ClockScan
+from benchtool.formats.pieces import Piece
+from benchtool.formats.text.unitwords import TimeUnit
 from benchtool.frozen import frozen_record
 from benchtool.model.arrays import AnyArray, FloatArray, NDArray
 from benchtool.model.capture import Samples, Span, UniformTime
@@ -107,14 +108,30 @@ def _grid(
     longest = scan.longest
     u_rel = scan.steps.resolution * math.sqrt(2 / 12) / longest if longest > 0 else 0.0
     n_rows = scan.pieces[-1].stop
+    notices: list[Notice] = []
+    if scan.n_doubtful:
+        u_rel = math.hypot(u_rel, (1 - scan.steps.typical / scan.mean_step) / math.sqrt(3))
+        notices.append(_doubtful(scan, unit))
     own = UniformTime(dt_s=_clean(step_s), u_rel=u_rel)
     evidence = f"(last - first)/(n - 1) over {n_rows} evenly spaced stamps"
     if stated is None:
-        return own, evidence, []
+        return own, evidence, notices
     off = abs(step_s / stated.value_s - 1)
     if off <= max(3 * u_rel, _AGREES) and not stated.nominal:
         return UniformTime(dt_s=stated.value_s), f"stated, and {n_rows} stamps agree", []
-    return own, evidence, [_differs(stated, step_s)] if stated.contradicts(step_s, u_rel) else []
+    if stated.contradicts(step_s, u_rel):
+        notices.append(_differs(stated, step_s))
+    return own, evidence, notices
+
+
+def _doubtful(scan: ClockScan, unit: TimeUnit) -> Notice:
+    step_s, digit_s = unit.seconds(scan.mean_step), unit.seconds(scan.steps.typical)
+    return Notice(
+        code="assumed-even-stamps",
+        text=f"{scan.n_doubtful} step(s) of the stamps are two digits long, all others one: "
+        f"either rows {step_s:.6g} s apart, rounded, which is assumed, or a row lost at each and "
+        f"{digit_s:.6g} s; U covers both (--time none --interval {digit_s:.6g} counts the rows)",
+    )
 
 
 def _differs(stated: StatedInterval, step_s: float) -> Notice:

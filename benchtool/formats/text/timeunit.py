@@ -8,10 +8,10 @@ from collections.abc import Sequence
 import numpy as np
 
 from benchtool.errors import AmbiguousStructureError
-from benchtool.formats.text import words
+from benchtool.formats.text import unitwords, words
 from benchtool.formats.text.column import ClockColumn, Column
 from benchtool.formats.text.metadata import Metadata, Stated
-from benchtool.formats.text.words import SECOND, TIME_UNITS, TimeUnit
+from benchtool.formats.text.unitwords import SECOND, TIME_UNITS, TimeUnit
 from benchtool.frozen import frozen_record
 from benchtool.model.arrays import FloatArray
 from benchtool.model.capture import ReadOptions
@@ -19,6 +19,7 @@ from benchtool.model.quantity import Notice
 
 _EPOCHS = ((1e9, "s"), (1e12, "ms"), (1e15, "us"), (1e18, "ns"))  # 2001-09-09 to 2096-10-02
 _EPOCH_SPAN = 4.0
+_FACTOR = r"[x×*·] ?1[0e]|10\^"
 _SERIAL_DAYS = (36526.0, 73051.0)  # 2000-01-01 to 2100-01-01
 
 
@@ -50,20 +51,9 @@ def find_time_unit(
     if options.time_unit is not None:
         return FoundUnit(unit=named_unit(options.time_unit), evidence="--time-unit")
     column = clock.column
-    if column.kind == "N" and re.search(r"[x×*·] ?1[0e]|10\^", column.raw):
-        raise AmbiguousStructureError(
-            f"the header {column.raw!r} gives a factor beside the unit of time",
-            hint="Name the unit that the numbers are in with --time-unit s, ms, us or ns.",
-        )
-    unit = words.time_unit(column.unit) if column.unit else _in_name(column.name)
-    if unit is not None:
-        notices = _contradicted(unit, metadata, column.raw)
-        return FoundUnit(unit=unit, evidence=f"header {column.raw!r}", warnings=notices)
-    if column.unit:
-        raise AmbiguousStructureError(
-            f"the time column {column.raw!r} has a unit that is none of time: {column.unit!r}",
-            hint="Name the unit with --time-unit s, ms, us or ns.",
-        )
+    named = _by_header(column, metadata)
+    if named is not None:
+        return named
     if metadata.time_unit is not None:
         return FoundUnit(unit=metadata.time_unit[0], evidence=metadata.time_unit[1])
     return (
@@ -72,6 +62,29 @@ def find_time_unit(
         or _by_serial_day(column)
         or _assumed(clock)
     )
+
+
+def _by_header(column: Column, metadata: Metadata) -> FoundUnit | None:
+    """Return the unit that a column's header names; None where it names none.
+
+    Raises:
+        AmbiguousStructureError: If it names one that is none of time, or a factor beside it.
+    """
+    if column.kind == "N" and re.search(_FACTOR, column.raw):
+        raise AmbiguousStructureError(
+            f"the header {column.raw!r} gives a factor beside the unit of time",
+            hint="Name the unit that the numbers are in with --time-unit s, ms, us or ns.",
+        )
+    unit = unitwords.time_unit(column.unit) if column.unit else _in_name(column.name)
+    if unit is not None:
+        notices = _contradicted(unit, metadata, column.raw)
+        return FoundUnit(unit=unit, evidence=f"header {column.raw!r}", warnings=notices)
+    if column.unit:
+        raise AmbiguousStructureError(
+            f"the time column {column.raw!r} has a unit that is none of time: {column.unit!r}",
+            hint="Name the unit with --time-unit s, ms, us or ns.",
+        )
+    return None
 
 
 def _contradicted(unit: TimeUnit, metadata: Metadata, raw: str) -> tuple[Notice, ...]:
@@ -93,7 +106,7 @@ def named_unit(name: str) -> TimeUnit:
     Raises:
         AmbiguousStructureError: If there is none of that name.
     """
-    unit = words.time_unit(name)
+    unit = unitwords.time_unit(name)
     if unit is None:
         raise AmbiguousStructureError(
             f"{name!r} is no unit of time", hint="Use --time-unit s, ms, us, ns, ps or fs."

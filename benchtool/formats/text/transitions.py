@@ -9,46 +9,15 @@ import numpy as np
 from benchtool.errors import MalformedCaptureError
 from benchtool.formats.grid import greatest_common_spacing
 from benchtool.formats.logic import UNKNOWN, States, logic_trace
-from benchtool.formats.steps import examine_steps
 from benchtool.formats.text.cells import EDGE_WORDS
-from benchtool.formats.text.words import TimeUnit
+from benchtool.formats.text.rowkinds import same
+from benchtool.formats.text.unitwords import TimeUnit
 from benchtool.frozen import frozen_record
 from benchtool.model.arrays import FloatArray, NDArray, distinct, middle
 from benchtool.model.capture import LogicTrace
 from benchtool.model.quantity import Notice
 
-_CHANGING = 0.4  # of the rows bring a change in a list of transitions, few in sampled states
 _SAME = 5e-3  # of an interval: how near a repeated one lies where there are few to tell
-
-
-def is_transition_list(stamps: FloatArray, columns: list[FloatArray], resolution: float) -> bool:
-    """Say whether rows are transitions and not samples.
-
-    Args:
-        stamps: First stamps, in the column's unit.
-        columns: First values of every channel, NaN for unknown states.
-        resolution: Last printed digit of the stamps.
-    """
-    rows = np.isfinite(stamps)
-    stamps, columns = stamps[rows], [c[rows] for c in columns]
-    if stamps.size < 2 or not columns or not all(_two_valued(c) for c in columns):
-        return False
-    changes = np.zeros(stamps.size - 1, bool)
-    for column in columns:
-        changes |= ~_same(column[1:], column[:-1])
-    if changes.all() and stamps.size > 2:
-        return True
-    uneven = not examine_steps(stamps, resolution).even
-    return uneven and int(np.count_nonzero(changes)) >= _CHANGING * changes.size
-
-
-def _same(a: FloatArray, b: FloatArray) -> NDArray[np.bool_]:
-    same: NDArray[np.bool_] = (a == b) | (np.isnan(a) & np.isnan(b))
-    return same
-
-
-def _two_valued(values: FloatArray) -> bool:
-    return distinct(values[np.isfinite(values)]).size in (1, 2)
 
 
 @frozen_record(eq=False)
@@ -143,7 +112,7 @@ def _seconds(unit: TimeUnit, counts: NDArray[np.int64] | int, resolution: float)
 def _change_rows(columns: list[FloatArray]) -> NDArray[np.bool_]:
     changed = np.zeros(columns[0].size, bool)
     for values in columns:
-        changed[1:] |= ~_same(values[1:], values[:-1])
+        changed[1:] |= ~same(values[1:], values[:-1])
     return changed
 
 

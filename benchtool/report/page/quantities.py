@@ -32,6 +32,8 @@ _UNJUDGED = ("quantity", _FIGURE, "U, relative", "observations")
 
 @frozen_record
 class _Row:
+    """One quantity of the table, with its verdict where it was checked."""
+
     name: str
     label: str
     cells: tuple[str, ...]
