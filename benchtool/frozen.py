@@ -32,29 +32,13 @@ def frozen_record(record: type[R] | None = None, /, *, eq: bool = True) -> Any:
     methods = {**_METHODS, **(_BY_VALUE if eq else {})}
 
     def make(record: type[R]) -> type[R]:
-        made = _found_by_the_standard(record)
+        made = dataclass(init=False, repr=False, eq=False, slots=True, kw_only=True)(record)
         for name, method in methods.items():
             if name not in record.__dict__:
                 setattr(made, name, method)
         return made
 
     return make if record is None else make(record)
-
-
-def _found_by_the_standard(record: type[R]) -> type[R]:
-    """Return the standard data class of a record, without what costs most of its making.
-
-    It writes a signature into a class without docstring, and searches each annotation that is a
-    text for three words; only that of a class variable means anything here.
-    """
-    record.__doc__ = record.__doc__ or record.__name__
-    told = record.__annotations__
-    record.__annotations__ = {n: t if "ClassVar" in str(t) else object for n, t in told.items()}
-    made = dataclass(init=False, repr=False, eq=False, slots=True, kw_only=True)(record)
-    made.__annotations__ = told
-    for found in fields(made):  # type: ignore[arg-type]  # it is one now
-        found.type = told.get(found.name, found.type)
-    return made
 
 
 def _fields(record: Any) -> tuple[Field[Any], ...]:
