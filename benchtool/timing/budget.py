@@ -26,6 +26,10 @@ from benchtool.timing.noise import NoiseFit, fit_noise
 from benchtool.timing.scatter import ENOUGH, Mean, mean_of_widths, mean_on_grid
 from benchtool.units import format_value
 
+_WELL_PLACED = 0.2
+"""Share of a step below which an edge's grid error is no overestimate, so that n of them average
+no better than √n."""
+
 _WALK = 2.0  # variance of a walk from end to end over the square of what it adds to a misfit
 
 FEW = 6
@@ -82,8 +86,12 @@ def width_grid(setting: Setting, n: int) -> float:
     """Return what the grid gives the mean of n widths, as a standard uncertainty in seconds."""
     edges = setting.edges
     if edges.resolved:
+        by_chance = 1 / math.sqrt(n) if edges.grid_s < _WELL_PLACED * edges.step_s else 0.0
         locks = [
-            phase_lock(edges.times_s[edges.rising == state], edges.step_s, setting.period_s)
+            max(
+                by_chance,
+                phase_lock(edges.times_s[edges.rising == state], edges.step_s, setting.period_s),
+            )
             for state in (True, False)
         ]
         return edges.grid_s / math.sqrt(12) * math.hypot(*locks)

@@ -232,7 +232,7 @@ def rounding_covariance(cycles: FloatArray, variance: FloatArray) -> FloatArray:
 
 
 def phase_lock(times_s: FloatArray, step_s: float, period_s: float | None) -> float:
-    """Return how far edges sit at one phase of the grid: 1/√n by chance, 1 all alike.
+    """Return how far edges sit at one phase of the grid: 0 spread evenly, 1 all alike.
 
     Interpolation itself bends the phases it gives, and noise spreads those of an even beat, so
     edges are locked only as far as both their times and their mean period say so.
@@ -245,12 +245,11 @@ def phase_lock(times_s: FloatArray, step_s: float, period_s: float | None) -> fl
     n = times_s.size
     if n < 6 or step_s == 0:
         return 1.0
-    by_chance = 1 / math.sqrt(n)
     seen = _alike(times_s / step_s)
     if period_s is None:
-        return max(by_chance, seen)
+        return seen
     even = np.arange(n, dtype=np.float64) * (period_s / step_s)
-    return max(by_chance, min(seen, _alike(even)))
+    return min(seen, _alike(even))
 
 
 def _alike(cycles: FloatArray) -> float:

@@ -66,8 +66,16 @@ def parse_alike(text: bytes, form: RowForm) -> tuple[FloatArray, BoolArray | Non
     return parse_rows(np.frombuffer(text, np.uint8).reshape(n_rows, width), form)
 
 
-def parse_rows(rows: Bytes, form: RowForm) -> tuple[FloatArray, BoolArray | None] | None:
-    """Do what ``parse_alike`` does with rows of bytes, shape (rows, width)."""
+def parse_rows(
+    rows: Bytes, form: RowForm, limits: tuple[Bytes, Bytes] | None = None
+) -> tuple[FloatArray, BoolArray | None] | None:
+    """Do what ``parse_alike`` does with rows of bytes, shape (rows, width).
+
+    Args:
+        rows: The rows.
+        form: The form of a row.
+        limits: The extremes of all bytes, where they are known.
+    """
     n_rows, width = rows.shape
     model = read_model(rows[0].tobytes().translate(_SHAPE), form)
     if model is None:
@@ -78,7 +86,7 @@ def parse_rows(rows: Bytes, form: RowForm) -> tuple[FloatArray, BoolArray | None
     unsure: BoolArray | None = None
     for first in range(0, n_rows, n_near):
         last = min(first + n_near, n_rows)
-        digits = _less_model(rows[first:last], model, room)
+        digits = _less_model(rows[first:last], model, room, limits)
         if digits is None:
             return None
         doubt = _fill(table[first:last], digits, model.numbers)
@@ -88,7 +96,9 @@ def parse_rows(rows: Bytes, form: RowForm) -> tuple[FloatArray, BoolArray | None
     return table, unsure
 
 
-def _less_model(rows: Bytes, model: Model, room: Bytes) -> Digits | None:
+def _less_model(
+    rows: Bytes, model: Model, room: Bytes, limits: tuple[Bytes, Bytes] | None
+) -> Digits | None:
     """Return the digits of rows; None if a row departs from the model."""
     n_rows, width = rows.shape
     digits = room[: WORD + rows.size]
@@ -100,8 +110,11 @@ def _less_model(rows: Bytes, model: Model, room: Bytes) -> Digits | None:
                 model.bytes[: n * width],
                 out=digits[WORD + start * width : WORD + stop * width].reshape(-1, n * width),
             )
-    low, high = extremes(digits[WORD:].reshape(n_rows, width))
-    if (high > model.most).any():
+    if limits is None:
+        low, high = extremes(digits[WORD:].reshape(n_rows, width))
+    else:
+        low, high = (limit - model.bytes[:width] for limit in limits)
+    if (np.maximum(low, high) > model.most).any():
         return None
     return Digits(bytes=digits, n_rows=n_rows, width=width, low=low.tolist(), high=high.tolist())
 

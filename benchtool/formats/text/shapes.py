@@ -19,6 +19,7 @@ _ZERO, _NEWLINE = ord("0"), ord("\n")
 _LEAST = 400  # rows of one shape: fewer are read faster with all others
 _LONGEST = 256  # bytes of a row
 _MOST_SHAPES = 64
+_FEW = 10  # lines to one that is chosen, for these to be taken one by one
 _FEW_LENGTHS = 4  # with more of them the delimiters tell rows apart too
 _ODD, _KEYS = 37, 0xFFF  # numbers of lengths and places: rarely the same for two shapes
 
@@ -43,7 +44,7 @@ class _Sorting:
         if odd.size:
             self._split(rows, places, int(odd[0]))
             return
-        decoded = parse_rows(rows, self._form)
+        decoded = parse_rows(rows, self._form, (low, high))
         if decoded is None:
             return
         values, unsure = decoded
@@ -53,8 +54,8 @@ class _Sorting:
         if places is None:
             self.table, self.left = values, left
             return
-        for k in range(values.shape[1]):
-            self.table[places, k] = values[:, k]
+        for column, told in zip(self.table.T, values.T, strict=True):
+            column[places] = told
         self.left[places] = left
 
     def _split(self, rows: Bytes, places: IntArray | None, at: int) -> None:
@@ -135,6 +136,10 @@ def _groups(key: IntArray) -> Iterator[IntArray]:
 
 def chosen_lines(text: bytes, chosen: IntArray, stops: IntArray) -> bytes:
     """Return some lines of a text, given one past the end of each."""
+    if chosen.size < stops.size // _FEW:
+        starts = np.where(chosen > 0, stops[chosen - 1], 0).tolist()
+        pairs = zip(starts, stops[chosen].tolist(), strict=True)
+        return b"".join([text[start:stop] for start, stop in pairs])
     kept = np.zeros(stops.size, np.bool_)
     kept[chosen] = True
     return np.frombuffer(text, np.uint8)[np.repeat(kept, np.diff(stops, prepend=0))].tobytes()

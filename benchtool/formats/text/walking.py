@@ -16,7 +16,7 @@ from benchtool.frozen import frozen_record
 from benchtool.model.arrays import AnyArray, NDArray
 from benchtool.model.watching import tell
 
-BLOCK_BYTES = 1 << 20
+BLOCK_BYTES = 2 << 20
 _FREED_BYTES = 16 << 20  # of memory that the C library is taught to keep
 
 

@@ -1,4 +1,4 @@
-"""The words that captures use for times, units, intervals and rates, in several languages."""
+"""The words that captures use for times, channels, intervals and rates, in several languages."""
 
 from __future__ import annotations
 
