@@ -26,7 +26,7 @@ from benchtool.timing.noise import NoiseFit, fit_noise
 from benchtool.timing.scatter import ENOUGH, Mean, mean_of_widths, mean_on_grid
 from benchtool.units import format_value
 
-_WELL_PLACED = 0.2
+_WELL_PLACED = 0.1
 """Share of a step below which an edge's grid error is no overestimate, so that n of them average
 no better than √n."""
 
