@@ -12,7 +12,14 @@ The tree::
     │   └── MalformedCaptureError     recognised, but damaged; carries path and line
     ├── MeasurementError          the data do not hold what was asked of them
     ├── DesignError               the design file; carries every fault with its key and line
-    └── SolveError                no circuit of the given topology gives these times
+    ├── SolveError                no circuit of the given topology gives these times
+    └── InstrumentError           a live instrument; carries the step the exchange stood at
+        ├── NotConnectedError         it cannot be reached, or has gone away
+        ├── InstrumentTimeoutError    no answer, or only a part of one, in time
+        ├── ReplyError                an answer that is not what was to come
+        ├── RefusedError              its error queue says that a command was not carried out
+        ├── NoTriggerError            armed, but nothing was recorded
+        └── DriverMissingError        a library that the connection needs is not installed
 
 A board that fails is a result and never an exception.
 """
@@ -187,3 +194,77 @@ class SolveError(BenchtoolError):
     """No circuit of the given topology gives the measured times."""
 
     default_code = "no-solution"
+
+
+@frozen_record
+class Step:
+    """Where an exchange with an instrument stood.
+
+    Attributes:
+        resource: The connection, as the user named it.
+        command: The command that was under way.
+        expected: What was to come back.
+        got: What came, its first bytes made printable.
+        last_good: The last step that worked.
+    """
+
+    resource: str = ""
+    command: str = ""
+    expected: str = ""
+    got: str = ""
+    last_good: str = ""
+
+
+class InstrumentError(BenchtoolError):
+    """A live instrument that did not do what was asked of it.
+
+    Args:
+        message: What went wrong, one sentence.
+        hint: What to do.
+        step: Where the exchange stood.
+        code: Stable name of the error.
+    """
+
+    default_code = "instrument"
+
+    def __init__(
+        self, message: str, *, hint: str, step: Step | None = None, code: str | None = None
+    ) -> None:
+        super().__init__(message, hint=hint, code=code)
+        self.step = step or Step()
+
+
+class NotConnectedError(InstrumentError):
+    """The instrument cannot be reached, or has gone away."""
+
+    default_code = "not-connected"
+
+
+class InstrumentTimeoutError(InstrumentError):
+    """No answer came in time, or only a part of one."""
+
+    default_code = "instrument-timeout"
+
+
+class ReplyError(InstrumentError):
+    """An answer came that is not what was to come."""
+
+    default_code = "instrument-reply"
+
+
+class RefusedError(InstrumentError):
+    """The error queue of the instrument says that a command was not carried out."""
+
+    default_code = "instrument-refused"
+
+
+class NoTriggerError(InstrumentError):
+    """The acquisition was armed, but nothing was recorded in time."""
+
+    default_code = "no-trigger"
+
+
+class DriverMissingError(InstrumentError):
+    """A library that the connection needs is not installed."""
+
+    default_code = "driver-missing"

@@ -23,6 +23,7 @@ ALLOWED: dict[str, set[str]] = {
     "plugins": set(),
     "model": set(),
     "manual": set(),
+    "instruments": {"model"},
     "uncertainty": {"model"},
     "timing": {"model", "units", "uncertainty"},
     "circuits": {"model", "units", "uncertainty", "plugins"},
@@ -37,6 +38,8 @@ ALLOWED: dict[str, set[str]] = {
     "comparison": {"model", "uncertainty"},
     "observation": {"model", "timing", "diagnose", "targets"},
     "assessment": {"model", "circuits", "judge", "observation"},
+    "settings": {"model", "units", "designs"},
+    "jobs": {"pipeline", "records", "model", "instruments", "uncertainty", "units"},
     "selftest": {"model", "uncertainty", "circuits", "timing", "simulation"},
 }
 FREE = {"pipeline": {"cli", "report", "records", "jobs"}, "cli": {"__main__"}}

@@ -8,6 +8,7 @@ from benchtool.errors import (
     CaptureError,
     DesignError,
     InputError,
+    InstrumentError,
     MeasurementError,
     SolveError,
     UnknownStructureError,
@@ -19,6 +20,7 @@ FAIL = 1
 USAGE = 2
 UNDECIDED = 3
 UNUSABLE = 4
+INSTRUMENT = 5
 DESIGN = 6
 INTERNAL = 70
 INTERRUPTED = 130
@@ -33,6 +35,7 @@ _BY_ERROR: dict[type[BenchtoolError], int] = {
     MeasurementError: UNUSABLE,
     SolveError: UNUSABLE,
     DesignError: DESIGN,
+    InstrumentError: INSTRUMENT,
 }
 
 BY_VERDICT: dict[str | None, int] = {

@@ -1,0 +1,100 @@
+"""What a driver must offer: the seam between live instruments and everything else.
+
+An instrument that is asked for a record is an ``Instrument``; one that sends edges by itself, and a
+file that grows, is a ``Stream``. Either gives whole captures or raises; never a part of one.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from typing import Protocol
+
+from benchtool.frozen import frozen_record
+from benchtool.model.capture import Capture
+
+Progress = Callable[[int, int], None]
+"""Is told bytes behind, and bytes in all (0 where nobody knows)."""
+
+Armed = Callable[[], None]
+"""Is told once the instrument waits for its trigger."""
+
+
+@frozen_record
+class Order:
+    """What to acquire.
+
+    Attributes:
+        channels: Names of the channels as the instrument knows them; none for the dialect's own.
+        arm: Start a new acquisition; otherwise what is in the instrument's memory is read.
+        force: Trigger it by command where it waits; only when the user asked for that.
+        trigger_timeout_s: How long to wait for the trigger; None for the dialect's own time.
+        settings: Commands to send first, each as the user gave it; an order without them leaves
+            the instrument as it stands.
+    """
+
+    channels: tuple[str, ...] = ()
+    arm: bool = True
+    force: bool = False
+    trigger_timeout_s: float | None = None
+    settings: tuple[str, ...] = ()
+
+
+class Instrument(Protocol):
+    """An instrument that delivers a record when asked."""
+
+    @property
+    def resource(self) -> str:
+        """The connection, as the user named it."""
+        ...
+
+    @property
+    def identity(self) -> str:
+        """What it answers when asked who it is; shown and stored, never interpreted."""
+        ...
+
+    @property
+    def dialect(self) -> str:
+        """Name of the dialect it is spoken to in."""
+        ...
+
+    def settings(self) -> tuple[tuple[str, str], ...]:
+        """Return the settings that its dialect knows how to read, each query with its answer."""
+        ...
+
+    def acquire(
+        self, order: Order, *, progress: Progress | None = None, armed: Armed | None = None
+    ) -> Capture:
+        """Return one whole record.
+
+        Raises:
+            InstrumentError: As the tree in ``benchtool.errors`` says; nothing is returned then.
+        """
+        ...
+
+    def close(self) -> None:
+        """End the connection, leaving the instrument as it was found."""
+        ...
+
+
+class Stream(Protocol):
+    """Something that delivers edges or samples by itself: a serial line, a file that grows."""
+
+    @property
+    def source(self) -> str:
+        """The connection or file, as the user named it."""
+        ...
+
+    def newest(self, timeout_s: float) -> Capture | None:
+        """Return what came last as a capture, None where nothing new came within the time.
+
+        The capture holds the newest stretch of the stream (a window that its opener chose), as
+        one trace or several; what was lost on the way is a gap, and counted in its warnings.
+
+        Raises:
+            InstrumentError: If the stream has ended or the connection has gone.
+        """
+        ...
+
+    def close(self) -> None:
+        """End the connection."""
+        ...
