@@ -225,7 +225,7 @@ class InstrumentError(BenchtoolError):
         code: Stable name of the error.
     """
 
-    default_code = "instrument"
+    default_code = "instrument-error"
 
     def __init__(
         self, message: str, *, hint: str, step: Step | None = None, code: str | None = None

@@ -52,11 +52,14 @@ class Settings:
 
 
 def settle(options: MeasureOptions, design: Design | None) -> Settings:
-    """Return the settings: an option wins, then the design, then the default."""
+    """Return the settings: an option wins, then the kit, then the design, then the default."""
+    kept = options.instrument
     instrument = design.instrument if design else None
     stated = instrument.timebase_rel if instrument else None
     if options.timebase_rel is not None:
         timebase_rel, source = options.timebase_rel, "option --timebase"
+    elif kept is not None and kept.timebase_rel is not None:
+        timebase_rel, source = kept.timebase_rel, f"{kept.name} of the kit"
     elif stated is not None:
         timebase_rel, source = stated, "[instrument] of the design"
     else:

@@ -20,15 +20,19 @@ from benchtool.formats import read_capture
 from benchtool.model.capture import Capture
 from benchtool.model.options import MeasureOptions
 from benchtool.model.quantity import Notice
-from benchtool.model.result import Analysis, Source, StageResult
+from benchtool.model.result import Analysis, StageResult
 from benchtool.model.timing import Timing
 from benchtool.observation import glance, observe, settle
+from benchtool.provenance import source_of, warnings_of
 from benchtool.targets import Target, choose_stages, choose_targets, find_channel, line_up
 
 if TYPE_CHECKING:
     from benchtool.model.design import Design, Ic, TopologyName
 
 FilePath = str | Path
+CaptureSource = FilePath | Capture
+"""A capture file, ``-`` for standard input, or a capture that is already in memory."""
+
 DEFAULTS = MeasureOptions()
 MOST_LISTED = 64
 """Traces of a file that ``look`` lists; it counts the others."""
@@ -60,9 +64,9 @@ def look(sources: Sequence[FilePath], *, options: MeasureOptions = DEFAULTS) -> 
     )
     return Analysis(
         command="look",
-        sources=tuple(_source(capture, options) for capture in captures),
+        sources=tuple(source_of(capture, options) for capture in captures),
         results=results,
-        warnings=(*_warnings(captures), *_unlisted(captures, options)),
+        warnings=(*warnings_of(captures, options), *_unlisted(captures, options)),
     )
 
 
@@ -83,12 +87,15 @@ def _unlisted(captures: Sequence[Capture], options: MeasureOptions) -> Iterator[
 
 
 def measure(
-    source: FilePath, *, baseline: FilePath | None = None, options: MeasureOptions = DEFAULTS
+    source: CaptureSource,
+    *,
+    baseline: CaptureSource | None = None,
+    options: MeasureOptions = DEFAULTS,
 ) -> Analysis:
     """Measure the timing of a capture, and its change against a baseline where one is given.
 
     Args:
-        source: The capture file, or ``-`` for standard input.
+        source: The capture, or its file; ``-`` is standard input.
         baseline: An earlier capture of the same board.
         options: What is overruled.
 
@@ -118,7 +125,7 @@ def measure(
 
 
 def solve(
-    source: FilePath | Timing,
+    source: CaptureSource | Timing,
     design: FilePath | Design,
     *,
     stage: str | None = None,
@@ -128,7 +135,7 @@ def solve(
     """Solve for the products of a designed circuit.
 
     Args:
-        source: The capture file, ``-`` for standard input, or times already known.
+        source: The capture, its file, ``-`` for standard input, or times already known.
         design: The design file, or the design.
         stage: Solve this stage alone; of plain times, the first where none is named.
         known: Reference of a part to its value in ohms or farads.
@@ -153,7 +160,7 @@ def solve(
 
 
 def solve_topology(
-    source: FilePath | Timing,
+    source: CaptureSource | Timing,
     topology: TopologyName,
     *,
     ic: Ic | None = None,
@@ -164,7 +171,7 @@ def solve_topology(
     """Solve for the products where there is no design.
 
     Args:
-        source: The capture file, ``-`` for standard input, or times already known.
+        source: The capture, its file, ``-`` for standard input, or times already known.
         topology: The circuit.
         ic: Family and thresholds; a CMOS timer is assumed, with a notice, where none is given.
         supply_v: Supply in volts, where known.
@@ -186,7 +193,7 @@ def solve_topology(
 
 
 def analyse(
-    source: FilePath,
+    source: CaptureSource,
     design: FilePath | Design,
     *,
     stage: str | None = None,
@@ -195,7 +202,7 @@ def analyse(
     """Take a capture the whole way, to a verdict against its design.
 
     Args:
-        source: The capture file, or ``-`` for standard input.
+        source: The capture, or its file; ``-`` is standard input.
         design: The design file, or the design.
         stage: Judge this stage alone.
         options: What is overruled.
@@ -218,7 +225,10 @@ def analyse(
 
 
 def _times(
-    source: FilePath | Timing, design: Design | None, stage: str | None, options: MeasureOptions
+    source: CaptureSource | Timing,
+    design: Design | None,
+    stage: str | None,
+    options: MeasureOptions,
 ) -> Analysis:
     """Return the times to solve: measured, or as given."""
     if isinstance(source, Timing):
@@ -239,9 +249,9 @@ def _given(timing: Timing, design: Design | None, stage: str | None) -> Analysis
     return Analysis(command="solve", sources=(), results=(result,), design=design)
 
 
-def _read(source: FilePath, options: MeasureOptions) -> Capture:
+def _read(source: CaptureSource, options: MeasureOptions) -> Capture:
     """Read a capture, or the part of it that is asked for."""
-    capture = read_capture(source, options.read)
+    capture = source if isinstance(source, Capture) else read_capture(source, options.read)
     if options.window is None:
         return capture
     from benchtool.timing.window import narrow
@@ -250,7 +260,7 @@ def _read(source: FilePath, options: MeasureOptions) -> Capture:
 
 
 def _observe_all(
-    source: FilePath,
+    source: CaptureSource,
     design: Design | None,
     stage: str | None,
     options: MeasureOptions,
@@ -263,36 +273,13 @@ def _observe_all(
     )
     return Analysis(
         command=command,
-        sources=(_source(capture, options),),
+        sources=(source_of(capture, options),),
         results=tuple(
             observe(target, settings, design, required=command != "judge") for target in targets
         ),
         design=design,
         timebase_rel=settings.timebase_rel,
         timebase_from=settings.timebase_from,
-        warnings=_warnings([capture]),
+        instrument=options.instrument,
+        warnings=warnings_of([capture], options),
     )
-
-
-def _source(capture: Capture, options: MeasureOptions) -> Source:
-    origin = capture.origin
-    typed: tuple[str, ...] = ()
-    if options.window is not None or options.read != DEFAULTS.read:
-        from benchtool.formats.overrules import words_of
-
-        typed = words_of(options.read, options.window)
-    return Source(
-        role="main",
-        name=origin.source,
-        sha256=origin.sha256,
-        format=origin.format,
-        structure=capture.structure,
-        start_ns=origin.start_ns,
-        instrument=origin.instrument,
-        window=capture.window,
-        options=typed,
-    )
-
-
-def _warnings(captures: Sequence[Capture]) -> tuple[Notice, ...]:
-    return tuple(dict.fromkeys(notice for item in captures for notice in item.warnings))

@@ -18,7 +18,7 @@ from benchtool import __version__
 from benchtool.cli import exits
 from benchtool.cli.commands import DESIGN, PARTS, SECTIONS
 from benchtool.cli.verbs import VerbGroup
-from benchtool.errors import BenchtoolError, DesignError, InputError, UsageError
+from benchtool.errors import BenchtoolError, DesignError, InputError, InstrumentError, UsageError
 
 _FULL = InputError(
     "the output could not be written: no space left on device",
@@ -182,5 +182,11 @@ def _write_report(error: BenchtoolError, arguments: list[str]) -> None:
             near = f" (nearest known key: {fault.near})" if fault.near else ""
             place = f"line {fault.line}: " if fault.line else ""
             click.echo(printable(f"  {place}{fault.key}: {fault.message}{near}"), err=True)
+    if isinstance(error, InstrumentError):
+        from dataclasses import asdict
+
+        for name, value in asdict(error.step).items():
+            if value:
+                click.echo(printable(f"  {name.replace('_', ' ')}: {value}"), err=True)
     click.echo(f"  {printable(error.hint)}", err=True)
     click.echo(f"  More: benchtool explain {error.code}", err=True)

@@ -57,7 +57,8 @@ _MEASURING = (
     click.option("--active", type=click.Choice(["high", "low"]), help="State that begins a cycle."),
     click.option("--level", metavar="VOLTS", help="Mid reference level for the edge times."),
     click.option("--timebase", metavar="REL", help="Timebase error, half-width, such as 50ppm."),
-    click.option("--probe", metavar='"R C"', help='Probe load, such as "10M 12p".'),
+    click.option("--instrument", metavar="NAME", help="Instrument of your kit that recorded it."),
+    click.option("--probe", metavar='"R C"', help='Probe load, such as "10M 12p", or its name.'),
     click.option("--temperature", metavar="TEMP", help="Board temperature, such as 23degC."),
 )
 
@@ -108,13 +109,15 @@ def _measure_options(given: dict[str, Any]) -> Any:
         structure=given.pop("structure"),
     )
     active: Literal["high", "low"] | None = given.pop("active")
+    instrument, probe = _kit(given.pop("instrument"), given.pop("probe"))
     return MeasureOptions(
         read=read,
         window=_window(given.pop("from_"), given.pop("to")),
         active=active,
         level_v=value_of("--level", given.pop("level"), "V"),
         timebase_rel=share("--timebase", given.pop("timebase")),
-        probe=_probe(given.pop("probe")),
+        probe=probe,
+        instrument=instrument,
         temperature_c=value_of("--temperature", given.pop("temperature"), "degC"),
     )
 
@@ -184,16 +187,29 @@ def _window(start: str | None, stop: str | None) -> Any:
     return Window(from_s=from_s, to_s=to_s)
 
 
-def _probe(text: str | None) -> Any:
-    if text is None:
-        return None
+def _kit(instrument: str | None, probe: str | None) -> Any:
+    """Return the instrument of the user's kit, and the load of its probe or of the one named."""
+    load = None if probe is None or _is_name(probe) else _probe(probe)
+    if instrument is None and (probe is None or load is not None):
+        return None, load
+    from benchtool.cli.kit import named_in_kit
+
+    return named_in_kit(instrument, None if load else probe, load)
+
+
+def _is_name(probe: str) -> bool:
+    """Tell the name of a probe from its load, which begins with a figure."""
+    return len(probe.split()) == 1 and not probe.lstrip()[:1].isdigit()
+
+
+def _probe(text: str) -> Any:
     from benchtool.model.design import Probe
 
     words = text.split()
     if len(words) != 2:
         raise UsageError(
             f"--probe wants resistance and capacitance, got {text!r}",
-            hint='Write it like --probe "10M 12p".',
+            hint='Write it like --probe "10M 12p", or name a probe of your kit.',
         )
     r_ohm, c_f = positive("--probe", words[0], "ohm"), value_of("--probe", words[1], "F")
     if r_ohm is None or c_f is None or c_f < 0:

@@ -2,8 +2,9 @@
 
 from __future__ import annotations
 
-import os
 from pathlib import Path
+
+from benchtool.folder import user_folder
 
 BESIDE = "benchtool-structures.toml"
 """Name of the file beside the captures."""
@@ -15,18 +16,9 @@ def beside(source: str) -> Path | None:
 
 
 def of_the_user() -> Path | None:
-    """Return where a user's own structures are kept; None for a user without a folder.
-
-    References:
-        XDG Base Directory Specification: a relative XDG_CONFIG_HOME is ignored.
-    """
-    base = Path(os.environ.get("XDG_CONFIG_HOME", ""))
-    if not base.is_absolute():
-        try:
-            base = Path.home() / ".config"
-        except RuntimeError:
-            return None
-    return base / "benchtool" / "structures.toml"
+    """Return where a user's own structures are kept; None for a user without a folder."""
+    folder = user_folder()
+    return folder and folder / "structures.toml"
 
 
 def places(source: str) -> list[Path]:

@@ -10,6 +10,7 @@ from benchtool.model.capture import ReadOptions
 
 if TYPE_CHECKING:
     from benchtool.model.design import Probe
+    from benchtool.model.kit import KitInstrument
     from benchtool.model.window import Window
 
 TIMEBASE_REL = 50e-6
@@ -32,6 +33,7 @@ class MeasureOptions:
         probe: The probe's load.
         read: What is overruled about the file's structure.
         window: The part of the record to measure.
+        instrument: The instrument of the user's kit that recorded it.
     """
 
     active: Literal["high", "low"] | None = None
@@ -42,3 +44,4 @@ class MeasureOptions:
     probe: Probe | None = None
     read: ReadOptions = field(default_factory=ReadOptions)
     window: Window | None = None
+    instrument: KitInstrument | None = None

@@ -12,6 +12,7 @@ from benchtool.model.timing import Dropped, Intervals, Jitter, Levels, Stability
 if TYPE_CHECKING:
     from benchtool.model.design import Design, Rule, Stage
     from benchtool.model.judgement import Change, Check, Solution, VerdictName
+    from benchtool.model.kit import KitInstrument
     from benchtool.model.overview import Overview
     from benchtool.model.window import Window
 
@@ -127,4 +128,5 @@ class Analysis:
     design: Design | None = None
     timebase_rel: float | None = None
     timebase_from: str = ""
+    instrument: KitInstrument | None = None
     warnings: tuple[Notice, ...] = ()

@@ -4,9 +4,10 @@ from __future__ import annotations
 
 import math
 from collections.abc import Callable
+from dataclasses import asdict
 from typing import TYPE_CHECKING, Any
 
-from benchtool.errors import BenchtoolError, DesignError
+from benchtool.errors import BenchtoolError, DesignError, InstrumentError
 from benchtool.model.quantity import Bound, Measured, Notice, Quantity
 from benchtool.model.result import (
     Analysis,
@@ -16,7 +17,7 @@ from benchtool.model.result import (
     TraceFacts,
 )
 from benchtool.model.timing import Jitter, Levels, StabilityPoint, Timing
-from benchtool.report.sources import source_document
+from benchtool.report.sources import instrument_document, source_document
 from benchtool.uncertainty import coverage_factor
 
 if TYPE_CHECKING:
@@ -55,6 +56,8 @@ def analysis_document(
     if analysis.rule is not None:
         rule = analysis.rule
         document["rule"] = {"name": rule.name, "guard": rule.guard, "coverage": rule.coverage}
+    if analysis.instrument is not None:
+        document["instrument"] = instrument_document(analysis.instrument)
     document["warnings"] = [_notice(item) for item in analysis.warnings]
     return document
 
@@ -73,6 +76,7 @@ def rows_document(command: str, rows: list[Json], *, version: str, made_at: str)
 def error_document(error: BenchtoolError, *, command: str | None) -> Json:
     """Return the document of an error."""
     faults = error.faults if isinstance(error, DesignError) else ()
+    step: Json = {"step": asdict(error.step)} if isinstance(error, InstrumentError) else {}
     return {
         "schema": SCHEMA,
         "command": command,
@@ -90,6 +94,7 @@ def error_document(error: BenchtoolError, *, command: str | None) -> Json:
                 }
                 for fault in faults
             ],
+            **step,
         },
     }
 

@@ -5,6 +5,7 @@ from __future__ import annotations
 from typing import Any
 
 from benchtool.model.capture import StructurePoint
+from benchtool.model.kit import KitInstrument
 from benchtool.model.result import Source
 
 Json = dict[str, Any]
@@ -30,3 +31,15 @@ def source_document(item: Source) -> Json:
 def structure(points: tuple[StructurePoint, ...]) -> dict[str, str]:
     """Return what was found of a file's structure, name to value."""
     return {point.name: point.value for point in points}
+
+
+def instrument_document(item: KitInstrument) -> Json:
+    """Return what the user's kit says of an instrument."""
+    return {
+        "name": item.name,
+        "resource": item.resource,
+        "dialect": item.dialect,
+        "timebase_rel": item.timebase_rel,
+        "calibration_due": item.calibration_due,
+        "probe": item.probe and item.probe.name,
+    }

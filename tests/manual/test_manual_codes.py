@@ -7,17 +7,18 @@ from pathlib import Path
 import pytest
 
 import benchtool
+import benchtool_drivers
 from benchtool.circuits.faults import FAULTS
 from benchtool.circuits.topologies import TOPOLOGIES
 from benchtool.designs.vocabulary import IC_TERMS, QUANTITIES
 from benchtool.manual import lookup
 
-ROOT = Path(benchtool.__file__).parent
+ROOTS = [Path(package.__file__).parent for package in (benchtool, benchtool_drivers)]
 
 
 def literal_codes() -> Iterator[str]:
     """Yield every text given as ``code=`` or as an error class's ``default_code``."""
-    for path in ROOT.rglob("*.py"):
+    for path in (path for root in ROOTS for path in root.rglob("*.py")):
         for node in ast.walk(ast.parse(path.read_text("utf-8"))):
             for name, value in _named(node):
                 if name in {"code", "default_code"} and isinstance(value, ast.Constant):

@@ -6,6 +6,7 @@ import math
 from collections.abc import Iterable
 
 from benchtool.model.design import Band, Part, Probe, Stage
+from benchtool.model.kit import KitInstrument
 from benchtool.model.result import Analysis, StageResult, TraceFacts
 from benchtool.model.timing import Levels
 from benchtool.report.page.views import Facts
@@ -32,7 +33,18 @@ def timebase_rows(analysis: Analysis) -> tuple[tuple[str, str], ...]:
     if analysis.timebase_rel is None:
         return ()
     origin = f", {analysis.timebase_from}" if analysis.timebase_from else ""
-    return (("timebase", f"± {format_value(analysis.timebase_rel, '1')}{origin}"),)
+    timebase = ("timebase", f"± {format_value(analysis.timebase_rel, '1')}{origin}")
+    return (*_instrument(analysis.instrument), timebase)
+
+
+def _instrument(kept: KitInstrument | None) -> tuple[tuple[str, str], ...]:
+    """Return the instrument of the user's kit, with the days until which it is calibrated."""
+    if kept is None:
+        return ()
+    words = [kept.name, *([f"probe {kept.probe.name}"] if kept.probe else [])]
+    days = (kept.calibration_due, kept.probe.calibration_due if kept.probe else None)
+    due = [f"calibration due {min(day for day in days if day)}"] if any(days) else []
+    return (("instrument", ", ".join([*words, *due])),)
 
 
 def _measured_on(result: StageResult) -> Iterable[tuple[str, str]]:
