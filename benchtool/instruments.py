@@ -98,3 +98,21 @@ class Stream(Protocol):
     def close(self) -> None:
         """End the connection."""
         ...
+
+
+class Recorder(Stream, Protocol):
+    """A stream that can also be recorded from now on."""
+
+    def record(
+        self,
+        *,
+        until_periods: int | None = None,
+        duration_s: float | None = None,
+        progress: Progress | None = None,
+    ) -> Capture:
+        """Return all of the stream from now until so many periods or seconds have come.
+
+        Raises:
+            InstrumentError: If the stream ends or goes before; nothing is returned then.
+        """
+        ...

@@ -41,7 +41,10 @@ ALLOWED: dict[str, set[str]] = {
     "observation": {"model", "timing", "diagnose", "targets"},
     "assessment": {"model", "circuits", "judge", "observation"},
     "kit": {"model", "units", "designs"},
-    "jobs": {"pipeline", "records", "model", "instruments", "uncertainty", "units"},
+    "jobs": {
+        *("pipeline", "records", "model", "instruments", "uncertainty", "units", "plugins"),
+        *("formats", "assessment"),
+    },
     "selftest": {"model", "uncertainty", "circuits", "timing", "simulation"},
 }
 FREE = {"pipeline": {"cli", "report", "records", "jobs"}, "cli": {"__main__"}}

@@ -16,6 +16,9 @@ SECTIONS: dict[str, dict[str, Verb]] = {
         "parts": Verb("parts.group", "read part markings"),
         "simulate": Verb("simulate", "a synthetic capture with its truth"),
     },
+    "Bench": {
+        "acquire": Verb("acquire", "captures from a live instrument or a serial line, into files"),
+    },
     "Reference": {
         "explain": Verb("explain", "a word, figure, warning, code or formula"),
         "selftest": Verb("selftest", "formulas and uncertainties, tried on this machine"),

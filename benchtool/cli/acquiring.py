@@ -1,0 +1,142 @@
+"""One run of ``benchtool acquire``: from an open source to whole files."""
+
+from __future__ import annotations
+
+import hashlib
+import json
+import sys
+from collections.abc import Iterator
+from contextlib import closing, contextmanager
+from dataclasses import replace
+from functools import partial
+from io import BytesIO
+from pathlib import Path
+from typing import Any
+
+from benchtool.cli.cautions import tell_cautions
+from benchtool.cli.output import Output, made_at, refuse_existing, write_file
+from benchtool.errors import UsageError
+from benchtool.formats import write_npz
+from benchtool.instruments import Order, Recorder
+from benchtool.jobs.acquiring import Enough, acquire, count_periods, named, record
+from benchtool.jobs.sources import Wanted, kind_of, open_instrument, open_recorder
+from benchtool.model.capture import Capture
+from benchtool.model.watching import tell
+from benchtool.report.sidecar import Saved, Taken, acquisition_document
+
+Found = Iterator[tuple[Capture, int]]
+Run = tuple[Taken, Found]
+
+
+def run_acquisition(
+    wanted: Wanted, order: Order, enough: Enough, path: Path, output: Output, *, power_up: bool
+) -> None:
+    """Acquire, write each capture with its sidecar as soon as it is whole, and say so.
+
+    Args:
+        wanted: The source.
+        order: What to acquire of an instrument.
+        enough: When to stop.
+        path: The file to write; with several captures, numbered.
+        output: Where to say what was written.
+        power_up: Whether the supply comes on only after arming.
+
+    Raises:
+        BenchtoolError: As opening and acquiring; captures written before stand.
+    """
+    several = enough.captures > 1 or (enough.periods is not None and "::" in wanted.resource)
+    for name in (first := _numbered(path, 1, several=several), _beside(first)):
+        refuse_existing(name, force=output.force)
+    tell_cautions(output)
+    written: list[dict[str, Any]] = []
+    with _opened(wanted, order, enough, output) as (found, captures):
+        taken = replace(found, power_up=power_up)
+        if power_up:
+            _say(output, "switch the supply on once this says that it is armed or recording")
+        for capture, periods in captures:
+            number = len(written) + 1
+            target = _numbered(path, number, several=several)
+            saved = _write(target, named(capture, wanted.kept), periods, number, taken, output)
+            written.append(saved)
+    if output.as_json:
+        output.print_made("acquire", written)
+    output.tell_written([item["file"] for item in written], "benchtool measure")
+
+
+@contextmanager
+def _opened(wanted: Wanted, order: Order, enough: Enough, output: Output) -> Iterator[Run]:
+    """Open the source; yield how captures are taken, and the captures with their periods."""
+    kind, taken = kind_of(wanted.resource), Taken(source=wanted.resource, kept=wanted.kept)
+    if kind == "file":
+        raise UsageError(
+            f"{wanted.resource} is a file already",
+            hint=f"Measure it: benchtool measure {wanted.resource}, or follow it: benchtool watch.",
+            code="already-a-file",
+        )
+    if kind == "stream":
+        with closing(open_recorder(wanted)) as stream:
+            yield taken, _recorded(stream, enough, output)
+        return
+    with closing(open_instrument(wanted)) as instrument:
+        told = replace(
+            taken,
+            identity=instrument.identity,
+            dialect=instrument.dialect,
+            settings=instrument.settings(),
+            changed=order.settings,
+        )
+        armed = partial(_say, output, "armed")
+        yield told, acquire(instrument, order, enough, progress=_transferred, armed=armed)
+
+
+def _recorded(stream: Recorder, enough: Enough, output: Output) -> Found:
+    for _ in range(enough.captures):
+        _say(output, "recording")
+        capture = record(stream, enough, progress=_transferred)
+        yield capture, count_periods(capture)
+
+
+def _transferred(done: int, total: int) -> None:
+    tell("receiving", done, total)
+
+
+def _write(
+    path: Path, capture: Capture, periods: int, number: int, taken: Taken, output: Output
+) -> dict[str, Any]:
+    content = BytesIO()
+    write_npz(capture, content)
+    data = content.getvalue()
+    saved = Saved(
+        file=path.name,
+        sha256=hashlib.sha256(data).hexdigest(),
+        number=number,
+        periods=periods,
+        capture=capture,
+        made_at=made_at(),
+    )
+    document = acquisition_document(taken, saved)
+    write_file(path, data, force=output.force)
+    text = json.dumps(document, indent=1, ensure_ascii=False) + "\n"
+    write_file(_beside(path), text.encode(), force=output.force)
+    for notice in capture.warnings:
+        _say(output, f"warning: {notice.text}")
+    _say(output, f"{path}: {periods} complete periods")
+    return {"file": str(path), "sidecar": str(_beside(path)), **document}
+
+
+def _say(output: Output, text: str) -> None:
+    if not output.quiet and not output.as_json:
+        from benchtool.cli.progress import make_room
+        from benchtool.report.text import printable
+
+        make_room()
+        sys.stderr.write(printable(text) + "\n")
+        sys.stderr.flush()
+
+
+def _numbered(path: Path, number: int, *, several: bool) -> Path:
+    return path.with_name(f"{path.stem}-{number:03}{path.suffix}") if several else path
+
+
+def _beside(path: Path) -> Path:
+    return path.with_name(path.name + ".json")
