@@ -1,0 +1,1 @@
+"""The simulated instrument: something to try the live commands on with nothing attached."""

@@ -1,0 +1,1 @@
+"""The transports that a simulated instrument is served over."""
