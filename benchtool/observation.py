@@ -153,6 +153,7 @@ def _result(target: Target, seen: _Seen, warnings: Iterable[tuple[Notice, ...]])
         intervals=_counts(seen.intervals),
         warnings=tuple(dict.fromkeys((*target.warnings, *(x for some in warnings for x in some)))),
         overview=make_overview(target.shape.trace, seen.edges, seen.intervals),
+        edges=seen.edges,
         series=seen.intervals,
     )
 

@@ -12,26 +12,23 @@ from __future__ import annotations
 
 from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import replace
-from pathlib import Path
 from types import MappingProxyType
 from typing import TYPE_CHECKING
 
-from benchtool.formats import read_capture
+from benchtool.intake import CaptureSource, FilePath, observe_all, take, times_of
 from benchtool.model.capture import Capture
 from benchtool.model.options import MeasureOptions
 from benchtool.model.quantity import Notice
-from benchtool.model.result import Analysis, StageResult
+from benchtool.model.result import Analysis
 from benchtool.model.timing import Timing
-from benchtool.observation import glance, observe, settle
+from benchtool.observation import glance, settle
 from benchtool.provenance import source_of, warnings_of
-from benchtool.targets import Target, choose_stages, choose_targets, find_channel, line_up
+from benchtool.targets import Target, find_channel, line_up
 
 if TYPE_CHECKING:
+    from benchtool.evidence import Companion
     from benchtool.model.design import Design, Ic, TopologyName
-
-FilePath = str | Path
-CaptureSource = FilePath | Capture
-"""A capture file, ``-`` for standard input, or a capture that is already in memory."""
+    from benchtool.model.diagnosis import Reading
 
 DEFAULTS = MeasureOptions()
 MOST_LISTED = 64
@@ -56,7 +53,7 @@ def look(sources: Sequence[FilePath], *, options: MeasureOptions = DEFAULTS) -> 
         UsageError: If one has no channel of the name given (``no-such-channel``).
     """
     settings = settle(options, None)
-    captures = [_read(source, options) for source in sources]
+    captures = [take(source, options) for source in sources]
     results = tuple(
         replace(glance(Target(shape=lineup.shapes[i], role=lineup.roles[i]), settings), source=k)
         for k, lineup in enumerate(map(line_up, captures))
@@ -108,12 +105,12 @@ def measure(
         UsageError: If several traces could be meant (``choose-channel``).
         MeasurementError: If one holds no complete interval; the message gives the bound.
     """
-    analysis = _observe_all(source, None, None, options, "measure")
+    analysis = observe_all(source, None, None, options, "measure")
     if baseline is None:
         return analysis
     from benchtool.comparison import compare_timing
 
-    earlier = _observe_all(baseline, None, None, options, "measure")
+    earlier = observe_all(baseline, None, None, options, "measure")
     now, before = analysis.results[0], earlier.results[0]
     changes = compare_timing(now.timing or Timing(), before.timing or Timing())
     return replace(
@@ -152,7 +149,7 @@ def solve(
     from benchtool.designs.settling import settled_design
 
     intent = settled_design(design, options)
-    analysis = _times(source, intent, stage, options)
+    analysis = times_of(source, intent, stage, options)
     return replace(
         analysis,
         results=tuple(solve_stage(item, intent, known=known) for item in analysis.results),
@@ -187,7 +184,7 @@ def solve_topology(
     """
     from benchtool.assessment import solve_plain
 
-    analysis = _times(source, None, None, options)
+    analysis = times_of(source, None, None, options)
     solved = solve_plain(analysis.results[0], topology, ic=ic, supply_v=supply_v, known=known)
     return replace(analysis, results=(solved,))
 
@@ -219,67 +216,49 @@ def analyse(
 
     intent = settled_design(design, options)
     settings = settle(options, intent)
-    analysis = _observe_all(source, intent, stage, options, "judge")
+    analysis = observe_all(source, intent, stage, options, "judge")
     results, verdict = judge_board(analysis.results, intent, settings)
     return replace(analysis, results=results, verdict=verdict, rule=intent.rule)
 
 
-def _times(
-    source: CaptureSource | Timing,
-    design: Design | None,
-    stage: str | None,
-    options: MeasureOptions,
-) -> Analysis:
-    """Return the times to solve: measured, or as given."""
-    if isinstance(source, Timing):
-        return _given(source, design, stage)
-    return _observe_all(source, design, stage, options, "solve")
-
-
-def _given(timing: Timing, design: Design | None, stage: str | None) -> Analysis:
-    chosen = choose_stages(design, stage)[0] if design else None
-    result = StageResult(
-        source=0,
-        stage=chosen.name if chosen else None,
-        design=chosen,
-        trace=None,
-        timing=timing,
-        warnings=timing.warnings,
-    )
-    return Analysis(command="solve", sources=(), results=(result,), design=design)
-
-
-def _read(source: CaptureSource, options: MeasureOptions) -> Capture:
-    """Read a capture, or the part of it that is asked for."""
-    capture = source if isinstance(source, Capture) else read_capture(source, options.read)
-    if options.window is None:
-        return capture
-    from benchtool.timing.window import narrow
-
-    return narrow(capture, options.window)
-
-
-def _observe_all(
+def diagnose(
     source: CaptureSource,
-    design: Design | None,
-    stage: str | None,
-    options: MeasureOptions,
-    command: str,
+    design: FilePath | Design,
+    *,
+    stage: str | None = None,
+    companions: Sequence[Companion] = (),
+    readings: Sequence[Reading] = (),
+    options: MeasureOptions = DEFAULTS,
 ) -> Analysis:
-    capture = _read(source, options)
-    settings = settle(options, design)
-    targets = choose_targets(
-        line_up(capture), channel=options.read.channel, design=design, stage=stage
+    """Rank what may have happened to a board, and name what to measure next.
+
+    Args:
+        source: The capture of the board as it is, or its file; ``-`` is standard input.
+        design: The design file, or the design.
+        stage: Diagnose this stage alone.
+        companions: Further captures of the board, each with what was different.
+        readings: Figures that were brought.
+        options: What is overruled.
+
+    Returns:
+        One result a stage. A board that stands still is diagnosed too.
+
+    Raises:
+        BenchtoolError: As the tree in ``benchtool.errors`` says.
+    """
+    from benchtool.designs.settling import settled_design
+    from benchtool.evidence import diagnose_stage
+
+    intent = settled_design(design, options)
+    main = observe_all(source, intent, stage, options, "diagnose")
+    further = [
+        (item, observe_all(item.source, intent, stage, options, "diagnose")) for item in companions
+    ]
+    results = tuple(
+        diagnose_stage(
+            result, [(item, seen.results[k]) for item, seen in further], readings, intent
+        )
+        for k, result in enumerate(main.results)
     )
-    return Analysis(
-        command=command,
-        sources=(source_of(capture, options),),
-        results=tuple(
-            observe(target, settings, design, required=command != "judge") for target in targets
-        ),
-        design=design,
-        timebase_rel=settings.timebase_rel,
-        timebase_from=settings.timebase_from,
-        instrument=options.instrument,
-        warnings=warnings_of([capture], options),
-    )
+    sources = (replace(seen.sources[0], role=item.role) for item, seen in further)
+    return replace(main, results=results, sources=(*main.sources, *sources))

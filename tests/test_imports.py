@@ -11,6 +11,7 @@ from pathlib import Path
 import pytest
 
 import benchtool
+import benchtool_drivers
 
 ROOT = Path(benchtool.__file__).parent
 EVERYWHERE = {"errors", "frozen", "__init__"}
@@ -39,12 +40,16 @@ ALLOWED: dict[str, set[str]] = {
     "provenance": {"model", "formats"},
     "comparison": {"model", "uncertainty"},
     "observation": {"model", "timing", "diagnose", "targets"},
+    "intake": {"model", "formats", "timing", "observation", "provenance", "targets"},
+    "evidence": {"model", "diagnose"},
     "assessment": {"model", "circuits", "judge", "observation"},
     "kit": {"model", "units", "designs"},
     "jobs": {
         *("pipeline", "records", "model", "instruments", "uncertainty", "units", "plugins"),
-        *("formats", "assessment"),
+        *("formats", "assessment", "circuits", "judge", "observation", "targets", "timing"),
     },
+    "fitting": {"model"},
+    "node": {"model", "uncertainty", "fitting", "timing", "circuits"},
     "selftest": {"model", "uncertainty", "circuits", "timing", "simulation"},
 }
 FREE = {"pipeline": {"cli", "report", "records", "jobs"}, "cli": {"__main__"}}
@@ -53,6 +58,7 @@ FREE = {"pipeline": {"cli", "report", "records", "jobs"}, "cli": {"__main__"}}
 PURE = (
     *("timing", "circuits", "parts", "judge", "diagnose", "simulation", "model"),
     *("targets", "comparison", "observation", "assessment", "selftest"),
+    *("fitting", "node"),
 )
 IMPURE_MODULES = {"os", "io", "pathlib", "time", "datetime", "rich", "pandas", "sys", "click"}
 
@@ -138,3 +144,29 @@ def test_start_up_loads_nothing_heavy(statement: str, forbidden: set[str]) -> No
     code = f"{statement}; import sys; print(*sys.modules)"
     run = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, check=True)
     assert not forbidden & set(run.stdout.split())
+
+
+DRIVERS = Path(benchtool_drivers.__file__).parent
+BEHIND_THE_SEAM = {"errors", "frozen", "folder", "model", "units", "instruments", "designs"}
+"""What drivers may know: files of theirs tell their faults as designs do."""
+LOOPBACK = BEHIND_THE_SEAM | {"simulation", "circuits"}
+WIRES = {"pyvisa", "pyvisa_py", "serial", "usb"}
+
+
+@pytest.mark.parametrize(
+    "path", sorted(DRIVERS.rglob("*.py")), ids=lambda path: str(path.relative_to(DRIVERS))
+)
+def test_a_driver_knows_only_what_lies_behind_the_seam(path: Path) -> None:
+    allowed = LOOPBACK if path.relative_to(DRIVERS).parts[0] == "loopback" else BEHIND_THE_SEAM
+    assert rooms_imported(path) - {"__init__"} <= allowed
+
+
+@pytest.mark.parametrize("path", python_files(), ids=lambda path: str(path.relative_to(ROOT)))
+def test_only_drivers_know_the_libraries_of_wires(path: Path) -> None:
+    assert not {name.split(".")[0] for name in imports_of(path)} & WIRES
+
+
+@pytest.mark.parametrize("path", python_files(), ids=lambda path: str(path.relative_to(ROOT)))
+def test_only_cli_names_a_driver_and_others_load_it_by_name(path: Path) -> None:
+    if room_of(path) != "cli":
+        assert "benchtool_drivers" not in {name.split(".")[0] for name in imports_of(path)}

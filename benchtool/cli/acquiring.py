@@ -92,7 +92,7 @@ def _opened(wanted: Wanted, order: Order, enough: Enough, output: Output) -> Ite
 def _recorded(stream: Recorder, enough: Enough, output: Output) -> Found:
     for _ in range(enough.captures):
         _say(output, "recording")
-        capture = record(stream, enough, progress=_transferred)
+        capture = record(stream, enough, progress=partial(tell, "recording"))
         yield capture, count_periods(capture)
 
 

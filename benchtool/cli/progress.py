@@ -11,6 +11,9 @@ from typing import TextIO
 LEAST_S = 1.0
 """A walk that takes no longer than that gets no line."""
 
+NO_BYTES = ("recording",)
+"""Walks that are told in something else than bytes, such as periods."""
+
 _EVERY_S = 0.2
 _BAR = 20
 _SHOWN: list[Progress] = []
@@ -72,6 +75,8 @@ def progress_line(doing: str, done: int, total: int, rate: float) -> str:
     filled = int(share * _BAR)
     bar = "#" * filled + "." * (_BAR - filled)
     left = _told((total - done) / rate) if rate > 0 else "?"
+    if doing in NO_BYTES:
+        return f"{doing:<9} [{bar}] {share:4.0%}, {left} left"
     size = f"{total / 1e6:.0f} MB" if total < 1e10 else f"{total / 1e9:.0f} GB"
     return f"{doing:<9} [{bar}] {share:4.0%} of {size}, {rate / 1e6:.0f} MB/s, {left} left"
 

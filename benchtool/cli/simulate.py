@@ -57,27 +57,42 @@ _KINDS = ("waveform", "sampled-logic", "logic")
     show_default=True,
     help="The same number gives the same noise again.",
 )
+@click.option(
+    "--serve",
+    type=click.Choice(["tcp", "hislip", "pty"]),
+    help="Be an instrument in place of writing a file; pty prints edge times.",
+)
+@click.option("--port", type=click.IntRange(0, 65535), default=0, help="TCP port of --serve.")
+@click.option("--speaks", default="positional", metavar="NAME", help="Structure it speaks.")
+@click.option("--trimmer", metavar='"REF LOW HIGH TIME"', help="A part that is turned to and fro.")
+@click.option("--pace", type=float, default=1.0, help="Edges so many times faster than in life.")
 @output_options
 def command(design: str, output: Output, **given: Any) -> int:
     """Simulate a capture of DESIGN into the file of -o: .csv, .vcd or .npz.
 
-    Beside it, with .truth.json added to its name, goes what the capture holds in truth.
+    Beside it, with .truth.json added to its name, goes what the capture holds in truth. With
+    --serve it is an instrument in place of that, for the live verbs to be tried on.
 
     \b
     benchtool simulate mist_valve.toml --rate 200Hz --periods 6 -o good.csv
     benchtool simulate mist_valve.toml --fault C-low --size=-20% \\
         --rate 200Hz --periods 6 -o low.csv
+    benchtool simulate mist_valve.toml --rate 200Hz --periods 6 --serve tcp
     """  # noqa: D301 - click's mark of lines to keep as they are
     from benchtool.designs import load_design
     from benchtool.simulation import simulate_stage
     from benchtool.targets import choose_stages
 
-    path = _target(output.path)
+    path = None if given["serve"] else _target(output.path)
     loaded = load_design(design)
     stages = choose_stages(loaded, given["stage"])
     if len(stages) > 1:
         names = ", ".join(stage.name for stage in stages)
         raise UsageError(f"{design} has {len(stages)} stages", hint=f"Give --stage: {names}.")
+    if path is None:
+        from benchtool.cli.serving import serve_stage
+
+        return serve_stage(stages[0], loaded, _acquisition(given), _fault(given), given)
     capture, truth = simulate_stage(
         stages[0], loaded, _acquisition(given), fault=_fault(given), seed=given["seed"]
     )

@@ -56,7 +56,11 @@ def read_capture(
         MalformedCaptureError: The file is damaged or holds nothing to measure.
         UsageError: An option cannot apply, or a kept structure has a fault.
     """
-    content = open_content(source, in_memory_bytes)
+    return read_content(open_content(source, in_memory_bytes), options)
+
+
+def read_content(content: Content, options: ReadOptions = _DEFAULTS) -> Capture:
+    """Read a capture whose bytes are at hand; returns and raises as ``read_capture`` does."""
     if options.structure is None and not places(content.source):
         return _read_as(content, options, _NOTHING)
     from benchtool.formats.keptfiles import choose_kept

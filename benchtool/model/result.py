@@ -7,10 +7,19 @@ from typing import TYPE_CHECKING, Literal
 from benchtool.frozen import frozen_record
 from benchtool.model.capture import Role, StructurePoint
 from benchtool.model.quantity import Notice
-from benchtool.model.timing import Dropped, Intervals, Jitter, Levels, StabilityPoint, Timing
+from benchtool.model.timing import (
+    Dropped,
+    Edges,
+    Intervals,
+    Jitter,
+    Levels,
+    StabilityPoint,
+    Timing,
+)
 
 if TYPE_CHECKING:
     from benchtool.model.design import Design, Rule, Stage
+    from benchtool.model.diagnosis import Diagnosis
     from benchtool.model.judgement import Change, Check, Solution, VerdictName
     from benchtool.model.kit import KitInstrument
     from benchtool.model.overview import Overview
@@ -92,7 +101,8 @@ class StageResult:
 
     ``trace`` is None where plain figures were given in place of a capture; ``source`` is the
     index of the file in the analysis. ``likely`` is one sentence that names the likeliest
-    part; ``series`` the intervals themselves; ``flat`` is set where there is no edge.
+    part; ``edges`` and ``series`` are the edges and the intervals themselves; ``flat`` is set
+    where there is no edge.
     """
 
     source: int
@@ -111,9 +121,11 @@ class StageResult:
     findings: tuple[Finding, ...] = ()
     warnings: tuple[Notice, ...] = ()
     overview: Overview | None = None
+    edges: Edges | None = None
     series: Intervals | None = None
     flat: Flat | None = None
     design: Stage | None = None
+    diagnosis: Diagnosis | None = None
 
 
 @frozen_record(eq=False)

@@ -17,6 +17,7 @@ from benchtool.model.result import (
     TraceFacts,
 )
 from benchtool.model.timing import Jitter, Levels, StabilityPoint, Timing
+from benchtool.report.diagnosis import diagnosis_parts
 from benchtool.report.sources import instrument_document, source_document
 from benchtool.uncertainty import coverage_factor
 
@@ -131,6 +132,7 @@ def _result(item: StageResult, parts: tuple[str, ...], several: bool) -> Json:
             made[name] = _MAKERS[name](item)
     if item.changes:
         made["changes"] = [_change(change) for change in item.changes]
+    made |= diagnosis_parts(item.diagnosis, quantity)
     if item.likely is not None:
         made["likely"] = item.likely
     made["findings"] = [_finding(found) for found in item.findings]
@@ -293,4 +295,6 @@ _PARTS: dict[str, tuple[str, ...]] = {
     "measure": _MEASURED,
     "solve": (*_MEASURED, "circuit"),
     "judge": (*_MEASURED, "circuit", "checks", "verdict"),
+    "diagnose": _MEASURED,
+    "watch": (*_LOOKED, "timing", "jitter", "checks"),
 }

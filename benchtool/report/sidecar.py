@@ -97,11 +97,10 @@ def acquisition_document(taken: Taken, saved: Saved) -> Json:
 
 def _trace(trace: Trace) -> Json:
     if isinstance(trace, Waveform):
-        even = isinstance(trace.time, UniformTime)
         return {
             "channel": trace.channel,
             "samples": trace.samples.size,
-            "sample_interval_s": trace.time.dt_s if even else None,
+            "sample_interval_s": trace.time.dt_s if isinstance(trace.time, UniformTime) else None,
         }
     return {
         "channel": trace.channel,

@@ -12,6 +12,7 @@ from benchtool.report.page.provenance import provenance_blocks
 from benchtool.report.page.quality import quality_blocks
 from benchtool.report.page.quantities import number_lines, quantity_grid
 from benchtool.report.page.rules import rule_text
+from benchtool.report.page.suspects import compass_blocks, next_blocks, suspect_blocks
 from benchtool.report.page.verdicts import board_verdict, result_verdict
 from benchtool.report.page.views import (
     Block,
@@ -32,7 +33,13 @@ MOST_SHEETS = 64
 """Traces shown of a capture with more of them; the rest are counted."""
 
 _NO_FILE = "Figures as given"
-_MADE = {"look": "looked at", "measure": "measured", "solve": "solved", "judge": "judged"}
+_MADE = {
+    "look": "looked at",
+    "measure": "measured",
+    "solve": "solved",
+    "judge": "judged",
+    "diagnose": "diagnosed",
+}
 
 
 def build_page(analysis: Analysis, stamp: Stamp) -> Page:
@@ -93,6 +100,9 @@ def _sheet_title(analysis: Analysis, result: StageResult) -> str:
 def _sections(analysis: Analysis, result: StageResult) -> Iterable[Section]:
     """Yield what is said of one result; what it does not hold is left out."""
     parts: tuple[tuple[str, str, tuple[Block | None, ...]], ...] = (
+        ("suspects", "Suspects", suspect_blocks(result.diagnosis)),
+        ("compass", "Which way the times went", compass_blocks(result.diagnosis)),
+        ("next", "What to measure next", next_blocks(result.diagnosis)),
         ("quantities", "Quantities", (quantity_grid(result, command=analysis.command),)),
         ("lines", "Against the limits", (number_lines(result),)),
         ("circuit", "What the numbers imply", circuit_blocks(result)),

@@ -7,10 +7,12 @@ from collections.abc import Callable, Iterable, Sequence
 from typing import Any
 
 from benchtool.report.numberline import LEGEND
-from benchtool.report.page.strips import line_rows, picture_rows
+from benchtool.report.page.strips import BAR_HEADS, compass_rows, line_rows, picture_rows
 from benchtool.report.page.views import (
+    Bars,
     Block,
     Command,
+    Compass,
     Facts,
     Grid,
     Lines,
@@ -77,6 +79,11 @@ def _pictures(block: Pictures) -> list[str]:
     return _fenced(rows) if rows else ["There is too little to draw."]
 
 
+def _bars(block: Bars) -> list[str]:
+    rows = ([_escaped(cell) for cell in (r.name, r.percent, r.meaning, r.size)] for r in block.rows)
+    return _table(BAR_HEADS, rows, frozenset({1}))
+
+
 def _notes(block: Notes) -> list[str]:
     return [f"- **{note.word}** {_escaped(note.text)} `{note.code}`" for note in block.notes]
 
@@ -127,6 +134,8 @@ _WRITERS: dict[str, Callable[[Any], list[str]]] = {
     Grid.kind: _grid,
     Lines.kind: lambda block: _fenced((*line_rows(block.lines), LEGEND)),
     Pictures.kind: _pictures,
+    Bars.kind: _bars,
+    Compass.kind: lambda block: _fenced(compass_rows(block.points)),
     Notes.kind: _notes,
     Command.kind: lambda block: _fenced([printable(block.text)], "sh"),
 }

@@ -7,10 +7,12 @@ from textwrap import wrap
 from typing import Any
 
 from benchtool.report.numberline import LEGEND
-from benchtool.report.page.strips import line_rows, picture_rows
+from benchtool.report.page.strips import BAR_HEADS, compass_rows, line_rows, picture_rows
 from benchtool.report.page.views import (
+    Bars,
     Block,
     Command,
+    Compass,
     Facts,
     Grid,
     Lines,
@@ -80,6 +82,11 @@ def _pictures(block: Pictures) -> list[str]:
     return [_INDENT + row for row in rows]
 
 
+def _bars(block: Bars) -> list[str]:
+    rows = tuple((row.name, row.percent, row.meaning, row.size) for row in block.rows)
+    return _grid(Grid(caption="", heads=BAR_HEADS, rows=rows, numeric=frozenset({1})))
+
+
 def _notes(block: Notes) -> list[str]:
     texts = (f"{note.word}: {note.text} [{note.code}]" for note in block.notes)
     return [row for text in texts for row in _wrapped(text)]
@@ -144,6 +151,8 @@ _WRITERS: dict[str, Callable[[Any], list[str]]] = {
     Grid.kind: _grid,
     Lines.kind: _lines,
     Pictures.kind: _pictures,
+    Bars.kind: _bars,
+    Compass.kind: lambda block: [_INDENT + row for row in compass_rows(block.points)],
     Notes.kind: _notes,
     Command.kind: _command,
 }

@@ -12,8 +12,10 @@ from collections.abc import Callable, Iterable, Sequence
 from typing import Any
 
 from benchtool.report.page.views import (
+    Bars,
     Block,
     Command,
+    Compass,
     Facts,
     Grid,
     Lines,
@@ -34,6 +36,7 @@ _CHAR = 0.5 * _BODY  # width of a letter
 _HEADING = 2.2  # of a section, with the gap above it
 _LABEL = 6.0  # of the names of facts
 _COLUMNS = 3
+_COMPASS = 14.0  # height of the drawing, as the style sheet has it
 _IN_COLUMNS = {"more", "conditions", "quality", "traceability", "rule", "cautions"}
 
 
@@ -156,6 +159,8 @@ _HEIGHTS: dict[str, Callable[[Any, float], float]] = {
     Grid.kind: _grid,
     Lines.kind: _lines,
     Pictures.kind: _pictures,
+    Bars.kind: lambda block, _width: (len(block.rows) + 1) * (_LINE + 0.3),
+    Compass.kind: lambda _block, _width: _COMPASS,
     Notes.kind: _notes,
     Command.kind: lambda block, width: _wrapped((block.text,), width / 1.15) + 0.5,
 }

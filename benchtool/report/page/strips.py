@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable
+from collections.abc import Iterable, Sequence
 from dataclasses import replace
 
 import numpy as np
@@ -10,6 +10,7 @@ import numpy as np
 from benchtool.model.arrays import FloatArray
 from benchtool.model.overview import Overview
 from benchtool.model.result import StageResult
+from benchtool.report.compass import Point, draw_compass
 from benchtool.report.numberline import draw_line
 from benchtool.report.page.geometry import off_line
 from benchtool.report.page.views import Line
@@ -21,6 +22,17 @@ _LABEL = 10  # of what stands left of a picture
 _COLUMNS = WIDTH - _LABEL - 2
 _NAME = 22  # of what stands left of a number line
 _LINE = 40
+
+
+BAR_HEADS = ("suspect", "likely", "what it is", "its size")
+_COMPASS = (41, 13)
+
+
+def compass_rows(points: Sequence[Point]) -> list[str]:
+    """Return the compass as rows of characters, with what stands in it."""
+    width, height = _COMPASS
+    legend = "   ".join(f"{point.letter} {point.name}" for point in points)
+    return [*draw_compass(points, width=width, height=height), "", f"+ as designed   {legend}"]
 
 
 def line_rows(lines: Iterable[Line]) -> list[str]:

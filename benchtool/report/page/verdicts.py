@@ -43,6 +43,8 @@ def result_verdict(analysis: Analysis, result: StageResult) -> Verdict:
         sentence = verdict_sentence(result) or "Nothing was found that could be judged."
         return Verdict(word=result.verdict, name=result.verdict, sentence=sentence)
     word = _WORDS.get(analysis.command, analysis.command)
+    if result.diagnosis is not None:
+        return Verdict(word="diagnosed", sentence=result.diagnosis.sentence)
     if analysis.command == "look":
         return Verdict(word=word, sentence=_recognised(result))
     return Verdict(word=word, sentence=f"{_essence(result)} {_UNJUDGED}")

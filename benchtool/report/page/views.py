@@ -12,7 +12,9 @@ from typing import ClassVar
 from benchtool.frozen import frozen_record
 from benchtool.model.judgement import VerdictName
 from benchtool.model.result import StageResult
+from benchtool.report.compass import Point
 from benchtool.report.numberline import NumberLine
+from benchtool.report.suspicion import Row
 
 
 @frozen_record
@@ -121,6 +123,22 @@ class Pictures:
 
 
 @frozen_record
+class Bars:
+    """Suspects, each with a bar as long as its probability."""
+
+    kind: ClassVar[str] = "bars"
+    rows: tuple[Row, ...]
+
+
+@frozen_record
+class Compass:
+    """Which way high and low time went, beside where faults lead."""
+
+    kind: ClassVar[str] = "compass"
+    points: tuple[Point, ...]
+
+
+@frozen_record
 class Note:
     """A finding or a warning."""
 
@@ -145,7 +163,7 @@ class Command:
     text: str
 
 
-Block = Prose | Facts | Grid | Lines | Pictures | Notes | Command
+Block = Prose | Facts | Grid | Lines | Pictures | Bars | Compass | Notes | Command
 
 
 @frozen_record(eq=False)

@@ -15,6 +15,7 @@ _SCREENS = {
     "measure": "measured:draw_measured",
     "solve": "solved:draw_solved",
     "judge": "judged:draw_judged",
+    "diagnose": "diagnosed:draw_diagnosed",
 }
 
 

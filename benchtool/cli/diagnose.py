@@ -1,0 +1,94 @@
+"""``benchtool diagnose``: which part moved, how sure, and what to measure next."""
+
+from __future__ import annotations
+
+from dataclasses import replace
+from typing import TYPE_CHECKING, Any, get_args
+
+import click
+
+from benchtool.cli.companions import companion_options
+from benchtool.cli.exits import OK
+from benchtool.cli.options import measuring_options, output_options, report_option
+from benchtool.cli.output import Output
+from benchtool.errors import UsageError
+from benchtool.model.design import TopologyName
+from benchtool.model.options import MeasureOptions
+
+if TYPE_CHECKING:
+    from benchtool.evidence import Companion
+    from benchtool.model.design import Design
+    from benchtool.model.quantity import Notice
+
+
+@click.command("diagnose")
+@click.argument("file", metavar="FILE")
+@click.option("--design", metavar="FILE", help="The design file (TOML).")
+@click.option("--stage", metavar="NAME", help="Diagnose this stage alone.")
+@click.option(
+    "--reading",
+    "readings",
+    multiple=True,
+    metavar="NAME=VALUE",
+    help="A meter's reading: control-pin=7.95V, RB<=46.8k, C=8.1u.",
+)
+@companion_options
+@click.option(
+    "--topology", type=click.Choice(get_args(TopologyName)), help="The circuit, without a design."
+)
+@click.option("--RA", "RA", metavar="PART", help="As marked, without a design.")
+@click.option("--RB", "RB", metavar="PART", help="As marked, without a design.")
+@click.option("--R", "R", metavar="PART", help="As marked, without a design.")
+@click.option("--C", "C", metavar="PART", help="As marked, without a design.")
+@click.option("--ic", metavar="FAMILY", help="cmos or bipolar, without a design.")
+@click.option("--supply-nominal", metavar="VOLTS", help="Supply, without a design.")
+@report_option
+@measuring_options
+@output_options
+def command(
+    file: str,
+    readings: tuple[str, ...],
+    companions: tuple[Companion, ...],
+    report: str | None,
+    options: MeasureOptions,
+    output: Output,
+    **given: Any,
+) -> int:
+    """Say which part of the board of FILE has moved, how sure that is, and what to measure next.
+
+    Every reading and every further capture makes the answer sharper.
+
+    \b
+    benchtool diagnose slow.csv --design mist_valve.toml
+    benchtool diagnose slow.csv --design mist_valve.toml --reading control-pin=7.95V
+    benchtool diagnose slow.csv --design mist_valve.toml --shunt 2M2 shunted.csv
+    benchtool diagnose slow.csv --topology astable --RA 100k --RB 330k --C 47u
+    """  # noqa: D301 - click's mark of lines to keep as they are
+    from benchtool.cli.readings import reading_of
+    from benchtool.pipeline import diagnose
+
+    design, assumed = _design(given)
+    analysis = diagnose(
+        file,
+        design,
+        stage=given["stage"],
+        companions=companions,
+        readings=tuple(reading_of(text) for text in readings),
+        options=options,
+    )
+    output.show(replace(analysis, warnings=(*analysis.warnings, *assumed)), report=report)
+    return OK
+
+
+def _design(given: dict[str, Any]) -> tuple[str | Design, tuple[Notice, ...]]:
+    """Return the design, or its file, and what was assumed of it."""
+    if (given["design"] is None) == (given["topology"] is None):
+        raise UsageError(
+            "diagnose needs to know the circuit",
+            hint="Give either --design FILE, or --topology with the parts as marked.",
+        )
+    if given["design"] is not None:
+        return given["design"], ()
+    from benchtool.cli.undrawn import undrawn_design
+
+    return undrawn_design(given)

@@ -1,0 +1,83 @@
+"""From captures and a technician's readings to the evidence that a diagnosis takes."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Sequence
+from dataclasses import replace
+
+from benchtool.diagnose import diagnose
+from benchtool.frozen import frozen_record
+from benchtool.model.design import Design
+from benchtool.model.diagnosis import Evidence, Observation, ObservationRole, Reading
+from benchtool.model.result import StageResult
+from benchtool.model.timing import Timing
+
+
+@frozen_record
+class Companion:
+    """A further capture of the board, and what was different when it was made.
+
+    Attributes:
+        role: What it is: power-up, shunt, added-capacitor, probe-lifted, supply, heated, baseline.
+        source: The capture file.
+        value, u: Of what was added or set, SI units; None where the role needs none.
+        part: What was heated.
+        same_board: For a baseline: whether it is the same board, earlier.
+    """
+
+    role: ObservationRole
+    source: str
+    value: float | None = None
+    u: float = 0.0
+    part: str | None = None
+    same_board: bool = True
+
+
+def observation_of(result: StageResult, companion: Companion | None = None) -> Observation:
+    """Return what one capture says to a diagnosis.
+
+    Args:
+        result: What was observed in it.
+        companion: What was different; None for the board as it is.
+    """
+    timing = result.timing or Timing()
+    state = result.flat.state if result.flat else None
+    if companion is None:
+        return Observation(timing=timing, state=state)
+    if companion.role == "power-up":
+        timing = Timing(first_high=timing.first_high, delay=timing.delay)
+    return Observation(
+        role=companion.role,
+        timing=timing,
+        state=state,
+        value=companion.value,
+        u=companion.u,
+        part=companion.part,
+        same_board=companion.same_board,
+    )
+
+
+def diagnose_stage(
+    result: StageResult,
+    companions: Sequence[tuple[Companion, StageResult]],
+    readings: Iterable[Reading],
+    design: Design,
+) -> StageResult:
+    """Add the diagnosis of a stage.
+
+    Args:
+        result: What was observed of it, in the capture of the board as it is.
+        companions: Further captures, and what was observed of the stage in each.
+        readings: Figures that were brought.
+        design: Its supply, temperature and probe.
+
+    Raises:
+        SolveError: If there is neither a time nor a standstill to diagnose.
+    """
+    if result.design is None:
+        return result
+    further = (observation_of(seen, companion) for companion, seen in companions)
+    evidence = Evidence(observations=(observation_of(result), *further), readings=tuple(readings))
+    found = diagnose(evidence, result.design, design)
+    warnings = tuple(dict.fromkeys((*result.warnings, *found.warnings)))
+    return replace(result, diagnosis=found, warnings=warnings)

@@ -1,0 +1,99 @@
+"""The first half of the way, which all verbs share: from a source to what its traces show."""
+
+from __future__ import annotations
+
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+from benchtool.formats import read_capture
+from benchtool.model.capture import Capture
+from benchtool.model.options import MeasureOptions
+from benchtool.model.result import Analysis, StageResult
+from benchtool.model.timing import Timing
+from benchtool.observation import observe, settle
+from benchtool.provenance import source_of, warnings_of
+from benchtool.targets import choose_stages, choose_targets, line_up
+
+if TYPE_CHECKING:
+    from benchtool.model.design import Design
+
+FilePath = str | Path
+CaptureSource = FilePath | Capture
+"""A capture file, ``-`` for standard input, or a capture that is already in memory."""
+
+_DEAD_TOO = ("judge", "diagnose")
+"""Verbs to which a board without an interval is a result."""
+
+
+def times_of(
+    source: CaptureSource | Timing,
+    design: Design | None,
+    stage: str | None,
+    options: MeasureOptions,
+) -> Analysis:
+    """Return the times to solve: measured, or as given."""
+    if isinstance(source, Timing):
+        return _given(source, design, stage)
+    return observe_all(source, design, stage, options, "solve")
+
+
+def _given(timing: Timing, design: Design | None, stage: str | None) -> Analysis:
+    chosen = choose_stages(design, stage)[0] if design else None
+    result = StageResult(
+        source=0,
+        stage=chosen.name if chosen else None,
+        design=chosen,
+        trace=None,
+        timing=timing,
+        warnings=timing.warnings,
+    )
+    return Analysis(command="solve", sources=(), results=(result,), design=design)
+
+
+def take(source: CaptureSource, options: MeasureOptions) -> Capture:
+    """Read a capture, or the part of it that is asked for."""
+    capture = source if isinstance(source, Capture) else read_capture(source, options.read)
+    if options.window is None:
+        return capture
+    from benchtool.timing.window import narrow
+
+    return narrow(capture, options.window)
+
+
+def observe_all(
+    source: CaptureSource,
+    design: Design | None,
+    stage: str | None,
+    options: MeasureOptions,
+    command: str,
+) -> Analysis:
+    """Measure every trace that is to be measured.
+
+    Args:
+        source: The capture, or its file.
+        design: The design, where there is one: a result a stage.
+        stage: Measure this stage alone.
+        options: What is overruled.
+        command: The verb; to some a dead trace is a result, to others an error.
+
+    Raises:
+        BenchtoolError: As reading, choosing and observing.
+    """
+    capture = take(source, options)
+    settings = settle(options, design)
+    targets = choose_targets(
+        line_up(capture), channel=options.read.channel, design=design, stage=stage
+    )
+    return Analysis(
+        command=command,
+        sources=(source_of(capture, options),),
+        results=tuple(
+            observe(target, settings, design, required=command not in _DEAD_TOO)
+            for target in targets
+        ),
+        design=design,
+        timebase_rel=settings.timebase_rel,
+        timebase_from=settings.timebase_from,
+        instrument=options.instrument,
+        warnings=warnings_of([capture], options),
+    )

@@ -1,0 +1,102 @@
+"""Words and figures about suspects that screen and page share."""
+
+from __future__ import annotations
+
+from benchtool.frozen import frozen_record
+from benchtool.manual import lookup
+from benchtool.model.diagnosis import Diagnosis, Group, NextReading, Suspect
+from benchtool.report.compass import Point, place_directions
+from benchtool.units import format_value
+
+_LEAST_SHOWN = 0.005
+_MOST_SHOWN = 8
+_MOST_NAMED = 6
+
+
+@frozen_record
+class Row:
+    """One suspect in words.
+
+    Attributes:
+        name: Name of the fault, or of both.
+        share: Its probability.
+        percent: The same in words.
+        meaning: What it is.
+        size: Its size with its interval; empty where it has none.
+    """
+
+    name: str
+    share: float
+    percent: str
+    meaning: str
+    size: str
+
+
+def suspect_rows(found: Diagnosis) -> tuple[Row, ...]:
+    """Return the suspects worth a row, the likeliest first."""
+    return tuple(_row(item) for item in _shown(found))
+
+
+def others_text(found: Diagnosis) -> str:
+    """Return what is left for all suspects without a row; empty where that is nothing."""
+    left = 1 - sum(item.probability for item in _shown(found))
+    return f"All others together: {percent(left)}." if left >= _LEAST_SHOWN else ""
+
+
+def compass_points(found: Diagnosis) -> tuple[Point, ...]:
+    """Return the points of the compass; none of a board that is likely healthy or stands still."""
+    if found.best.fault == "healthy":
+        return ()
+    return place_directions(found.directions, [item.fault for item in _shown(found)])
+
+
+def group_text(group: Group) -> str:
+    """Return why the members of a group cannot be told apart; empty for one alone."""
+    if len(group.members) < 2 or not group.why:
+        return ""
+    more = len(group.members) - _MOST_NAMED
+    names = ", ".join(group.members[:_MOST_NAMED]) + (f" and {more} more" if more > 0 else "")
+    return f"Not told apart: {names}. {group.why}"
+
+
+def reading_title(item: NextReading) -> str:
+    """Return the name of a reading with what is to be clipped on or set."""
+    value = f" {format_value(item.value, item.unit)}" if item.value is not None else ""
+    return f"{item.reading}{value}"
+
+
+def reading_cost(item: NextReading) -> str:
+    """Return what a reading costs and tells."""
+    return f"about {item.minutes:g} min, {item.gain_bits:.2f} bit"
+
+
+def percent(p: float) -> str:
+    """Return a probability in percent, never rounded to certainty."""
+    if p > 0.995:
+        return "> 99 %"
+    return "< 1 %" if p < 0.01 else f"{100 * p:.0f} %"
+
+
+def _shown(found: Diagnosis) -> list[Suspect]:
+    return [item for item in found.suspects if item.probability >= _LEAST_SHOWN][:_MOST_SHOWN]
+
+
+def _row(item: Suspect) -> Row:
+    entry = None if item.faults else lookup(item.fault)
+    return Row(
+        name=" + ".join(item.faults) if item.faults else item.fault,
+        share=item.probability,
+        percent=percent(item.probability),
+        meaning=entry.title if entry else "two faults at once" if item.faults else "",
+        size=_size(item),
+    )
+
+
+def _size(item: Suspect) -> str:
+    if item.estimate is None:
+        return ""
+    unit = item.estimate.unit
+    if item.lower is None or item.upper is None:
+        return format_value(item.estimate.value, unit)
+    text = f"{format_value(item.lower, unit, 3)} … {format_value(item.upper, unit, 3)}"
+    return f"{text} (design {format_value(item.nominal, unit, 3)})" if item.nominal else text
