@@ -40,6 +40,11 @@ Scalars = Mapping[str, NDArray[Any]]
 
 _FIRST = 8192
 """Samples from which the step of codes is told."""
+_VOLTS = Notice(
+    code="assumed-volts",
+    text="the arrays state no unit for their values: volts are assumed; only voltages "
+    "depend on it, no time does",
+)
 
 
 def contradiction(content: Content, reason: str) -> MalformedCaptureError:
@@ -85,36 +90,45 @@ def foreign_traces(
             code="no-values",
         )
     clock = _clock_name(columns, options, content)
+    notices: tuple[Notice, ...] = ()
     traces: tuple[Trace, ...]
     if clock is None:
-        if options.time_unit is not None:
-            raise idle_option(
-                "time_unit", content.source, "no array gives time", "Name the array with --time."
-            )
-        dt_s, evidence = _interval(scalars, options, content)
-        traces = tuple(
-            _channel(name, a, UniformTime(dt_s=dt_s), (Span(start=0, stop=a.size, start_s=0.0),))
-            for name, a in columns.items()
-        )
-        notices: tuple[Notice, ...] = ()
+        traces, evidence = _counted_channels(columns, scalars, options, content)
     else:
         timebase, stamps, evidence, notices = _timed(columns[clock], clock, options, content)
         traces = _timed_channels(columns, clock, timebase, stamps, content)
-    volts = Notice(
-        code="assumed-volts",
-        text="the arrays state no unit for their values: volts are assumed; only voltages "
-        "depend on it, no time does",
-    )
     assumed = any(notice.code == "assumed-time-unit" for notice in notices)
-    interval = getattr(traces[0], "time", None)
-    points: list[tuple[str, str, str, Sureness]] = [
-        ("time", clock or "none", evidence, "assumed" if assumed else "stated")
-    ]
+    points = _time_points(traces[0], clock, evidence, assumed=assumed)
+    return traces, points, (*notices, _VOLTS)
+
+
+def _time_points(
+    trace: Trace, clock: str | None, evidence: str, *, assumed: bool
+) -> list[StructurePoint]:
+    """Return what gives time, and the interval where it is even."""
+    sure: Sureness = "assumed" if assumed else "stated"
+    points = [StructurePoint(name="time", value=clock or "none", evidence=evidence, sure=sure)]
+    interval = getattr(trace, "time", None)
     if isinstance(interval, UniformTime):
-        shown = f"{interval.dt_s:.9g} s"
-        points.append(("interval", shown, evidence, "measured" if clock else "stated"))
-    made = [StructurePoint(name=n, value=v, evidence=e, sure=s) for n, v, e, s in points]
-    return traces, made, (*notices, volts)
+        shown, sure = f"{interval.dt_s:.9g} s", "measured" if clock else "stated"
+        points.append(StructurePoint(name="interval", value=shown, evidence=evidence, sure=sure))
+    return points
+
+
+def _counted_channels(
+    columns: Columns, scalars: Scalars, options: ReadOptions, content: Content
+) -> tuple[tuple[Trace, ...], str]:
+    """Return the channels of arrays none of which gives time, and what the interval is from."""
+    if options.time_unit is not None:
+        raise idle_option(
+            "time_unit", content.source, "no array gives time", "Name the array with --time."
+        )
+    dt_s, evidence = _interval(scalars, options, content)
+    traces = tuple(
+        _channel(name, a, UniformTime(dt_s=dt_s), (Span(start=0, stop=a.size, start_s=0.0),))
+        for name, a in columns.items()
+    )
+    return traces, evidence
 
 
 def _clock_name(columns: Columns, options: ReadOptions, content: Content) -> str | None:

@@ -1,4 +1,4 @@
-"""Array types and three functions, all so that numpy loads no more of itself than is needed.
+"""Array types, and functions by which numpy loads no more of itself than is needed.
 
 ``numpy.typing`` takes 20 ms to load, and masked arrays, which ``numpy.median``, ``numpy.quantile``
 and ``numpy.unique`` import on their first call, as long again.
@@ -31,7 +31,11 @@ _Number = TypeVar("_Number", np.int64, np.float64)
 
 def distinct(values: NDArray[_Number]) -> NDArray[_Number]:
     """Return the different values in order, as ``numpy.unique`` does."""
-    ordered = np.sort(values)
+    return without_repeats(np.sort(values))
+
+
+def without_repeats(ordered: NDArray[_Number]) -> NDArray[_Number]:
+    """Return the different values of some that are in order."""
     return ordered[np.append(ordered[1:] != ordered[:-1], True)] if ordered.size else ordered
 
 
@@ -66,4 +70,5 @@ __all__ = [
     "distinct",
     "middle",
     "quantile",
+    "without_repeats",
 ]

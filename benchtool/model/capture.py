@@ -17,33 +17,28 @@ from benchtool.model.watching import tell
 if TYPE_CHECKING:
     from benchtool.model.window import Window
 
-BLOCK = 1 << 18
-"""Samples in a block: small enough for the cache, large enough for numpy."""
-
-BLOCK_BYTES = 1 << 21
-"""Bytes in a block of narrow samples, which take numpy so little time that more of them fit."""
+BLOCK, BLOCK_BYTES = 1 << 18, 1 << 21
+"""Samples in a block, small enough for the cache and large enough for numpy, and bytes in one of
+narrow samples, which take numpy so little time that more of them fit."""
 
 
 class Samples(Protocol):
     """A row of samples that can be walked in blocks as often as needed.
 
-    An array, a mapped file and a text file meet it alike, so the size of a capture costs time
-    and not memory. An implementation that holds a file opens and closes it inside ``blocks``.
+    An array, a mapped file and a text file meet it alike; a file is opened and closed inside
+    ``blocks``. The size of a capture costs time and not memory.
     """
 
     @property
     def size(self) -> int:
         """Number of samples."""
-        ...
 
     @property
     def dtype(self) -> np.dtype[np.generic]:
         """Type of a sample: an integer for codes, a float for volts."""
-        ...
 
     def blocks(self, start: int = 0, stop: int | None = None) -> Iterator[AnyArray]:
         """Yield consecutive 1-D pieces of the samples ``start`` to ``stop``."""
-        ...
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -81,8 +76,7 @@ class Scale:
     """Volts from codes: ``volts = gain * code + offset``.
 
     Attributes:
-        gain: Volts a code; 1.0 where the samples are volts already.
-        offset: Volts at code zero.
+        gain, offset: Volts a code (1.0 where the samples are volts) and volts at code zero.
         step_v: Size of one code in volts, or None where the samples have no fixed step.
     """
 
@@ -130,8 +124,7 @@ class Span:
     """A gap-free piece of a waveform: samples ``start`` to ``stop`` (exclusive).
 
     Attributes:
-        start: Index of the first sample.
-        stop: One past the last sample.
+        start, stop: Index of the first sample, and one past the last.
         start_s: Time of the first sample in seconds after the first sample of the trace.
     """
 
@@ -221,10 +214,7 @@ class LogicTrace:
 
 
 Trace = Waveform | LogicTrace
-
 Role = Literal["output", "capacitor", "supply", "trigger", "other"]
-
-
 Sureness = Literal["stated", "measured", "assumed"]
 
 
@@ -233,8 +223,7 @@ class StructurePoint:
     """One thing found about a file's structure, and what it was found from.
 
     Attributes:
-        name: What it is about.
-        value: What was found.
+        name, value: What it is about, and what was found.
         evidence: What it was found from.
         sure: Stated by the file or the user, measured from the rows, or assumed.
     """
@@ -250,8 +239,7 @@ class Origin:
     """Where a capture came from.
 
     Attributes:
-        source: File name as given, or ``-`` for standard input.
-        format: Name of the reader: text, vcd, npz, wav.
+        source, format: File name as given (``-`` for standard input); text, vcd, npz or wav.
         sha256: Of the file's bytes as stored.
         start_ns: Absolute start in integer nanoseconds since 1970 (UTC), where the file says.
         instrument: What the file says of the instrument, where it does.

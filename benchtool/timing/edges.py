@@ -114,7 +114,8 @@ def _edges_of_waveform(trace: Waveform, levels: Levels) -> tuple[Edges, Tally]:
     found, lengths = walked.runs, walked.lengths
     crossings = join_runs(found)
     step_s = _grid_step(trace, found)
-    placed = place_edges(trace, levels, limits, crossings, lengths, step_s)
+    holed = walked.tally.n_missing > 0
+    placed = place_edges(trace, levels, limits, crossings, lengths, step_s, holed=holed)
     edges = Edges(
         times_s=placed.times_s,
         rising=crossings.rising,

@@ -17,10 +17,12 @@ from benchtool.timing.onelevel import one_level
 from benchtool.timing.pieces import walk_pieces
 from benchtool.timing.plateaus import (
     Plateau,
+    Stretches,
     curved_noise,
     find_plateau,
     local_noise,
     values_beyond,
+    whole_runs,
 )
 from benchtool.timing.survey import Survey, exceeds, survey_samples, widen
 from benchtool.timing.tally import Tally
@@ -102,7 +104,8 @@ def _decide(waveform: Waveform, survey: Survey) -> Levels:
     levels = _two_levels(survey)
     if is_two_state(survey, levels):
         return _behind_spikes(survey, levels) or levels
-    noise_v = min(local_noise(survey.runs), curved_noise(survey.runs))
+    runs = whole_runs(survey.runs)
+    noise_v = min(local_noise(runs), curved_noise(runs))
     return one_level(kind_without_states(survey, noise_v), survey, noise_v=noise_v)
 
 
@@ -130,14 +133,15 @@ def _behind_spikes(survey: Survey, levels: Levels) -> Levels | None:
 def _two_levels(survey: Survey) -> Levels:
     modes = _modes(survey)
     spacing = modes[1] - modes[0]
-    resting = [find_plateau(survey.runs, mode, spacing * _REFERENCE) for mode in modes]
-    noise_v = local_noise([piece for plateau in resting for piece in plateau.pieces])
+    runs = whole_runs(survey.runs)
+    resting = [find_plateau(runs, mode, spacing * _REFERENCE) for mode in modes]
+    noise_v = local_noise(*(plateau.stretches for plateau in resting))
     states = [
         _state(plateau, mode, noise_v, survey.step_v, spacing / _BINS)
         for plateau, mode in zip(resting, modes, strict=True)
     ]
     (low_v, u_low_v), (high_v, u_high_v) = states
-    lower, upper = _references(survey, low_v, high_v, noise_v)
+    lower, upper = _references(runs, low_v, high_v, noise_v)
     clipped = _is_clipped(survey)
     return Levels(
         kind="two-state",
@@ -201,7 +205,9 @@ def _modes(survey: Survey) -> tuple[float, float]:
     return float(low), float(centre[half + int(np.argmax(count[half:]))])
 
 
-def _references(survey: Survey, low_v: float, high_v: float, noise_v: float) -> tuple[float, float]:
+def _references(
+    runs: Stretches, low_v: float, high_v: float, noise_v: float
+) -> tuple[float, float]:
     """Return the reference levels, drawn inwards where a state wanders away from its mode.
 
     Eight standard deviations of noise stay between them, so that no edge counts twice.
@@ -209,7 +215,7 @@ def _references(survey: Survey, low_v: float, high_v: float, noise_v: float) -> 
     amplitude = high_v - low_v
     most = float(np.clip(0.5 - 4 * noise_v / amplitude, _REFERENCE, _INWARDS))
     middle = (low_v + high_v) / 2
-    below, above = (values_beyond(survey.runs, middle, above=side) for side in (False, True))
+    below, above = (values_beyond(runs, middle, above=side) for side in (False, True))
     wander_low = quantile(below, 0.9) if below.size else low_v
     wander_high = quantile(above, 0.1) if above.size else high_v
     lower = low_v + amplitude * float(

@@ -40,6 +40,25 @@ class Piece:
     rows: Rows
 
 
+@frozen_record(eq=False)
+class Stretch:
+    """Consecutive samples that were not looked at; fields as in :class:`Piece`."""
+
+    values: Codes
+    first: int
+    times_s: FloatArray | None
+    begins_run: bool
+
+    def part(self, start: int, stop: int) -> Stretch:
+        """Return some of them."""
+        return Stretch(
+            values=self.values[start:stop],
+            first=self.first + start,
+            times_s=None if self.times_s is None else self.times_s[start:stop],
+            begins_run=self.begins_run and start == 0,
+        )
+
+
 def walk_pieces(waveform: Waveform, tally: Tally | None = None) -> Iterator[Piece]:
     """Yield the waveform in order, split at its spans and at rows of missing samples.
 
@@ -55,6 +74,31 @@ def walk_pieces(waveform: Waveform, tally: Tally | None = None) -> Iterator[Piec
                 yield piece
                 begins = False
             begins = begins or not is_finite(block.values[-1])
+
+
+def walk_stretches(waveform: Waveform, *, holed: bool) -> Iterator[Stretch]:
+    """Yield the pieces of a waveform; where none of its samples is missing, without looking.
+
+    Args:
+        waveform: The trace.
+        holed: Whether samples of it are missing.
+    """
+    if holed:
+        for piece in walk_pieces(waveform):
+            yield Stretch(
+                values=piece.values,
+                first=piece.first,
+                times_s=piece.times_s,
+                begins_run=piece.begins_run,
+            )
+        return
+    for span in waveform.spans:
+        first = span.start
+        for values, times_s in _paired_blocks(waveform, span):
+            yield Stretch(
+                values=values, first=first, times_s=times_s, begins_run=first == span.start
+            )
+            first += values.size
 
 
 def cut_pieces(pieces: Iterable[Piece], length: int) -> Iterator[Piece]:

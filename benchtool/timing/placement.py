@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Sequence
+from collections.abc import Iterator, Sequence
 
 import numpy as np
 
@@ -12,6 +12,7 @@ from benchtool.model.arrays import BoolArray, FloatArray, middle
 from benchtool.model.capture import StampedTime, Waveform
 from benchtool.model.timing import Levels
 from benchtool.timing.crossings import Crossings
+from benchtool.timing.cutouts import Window, cut_windows
 from benchtool.timing.fits import Ramped, fit_edges, fit_ramps
 from benchtool.timing.levels import dither
 from benchtool.timing.pieces import Index
@@ -93,6 +94,8 @@ def place_edges(
     crossings: JoinedCrossings,
     lengths: tuple[float, float],
     step_s: float,
+    *,
+    holed: bool,
 ) -> Placement:
     """Place each edge in time.
 
@@ -103,24 +106,19 @@ def place_edges(
         crossings: One crossing an edge.
         lengths: Typical samples strictly between the references, rising and falling.
         step_s: Sample interval in seconds.
+        holed: Whether samples of the waveform are missing.
     """
-    times_s, u_s = np.zeros(crossings.index.size), np.zeros(crossings.index.size)
     gain = abs(trace.scale.gain)
     setting = _Setting(
         trace=trace,
+        holed=holed,
         limits=limits,
         amplitude=(levels.high_v - levels.low_v) / gain,
         noise=max(levels.noise_v, levels.step_v / math.sqrt(12)) / gain,
         code=levels.step_v / gain,
         step_s=step_s,
     )
-    placed: list[_Direction] = []
-    for rising, length in zip((True, False), lengths, strict=True):
-        chosen = _of_direction(crossings.rising, rising)
-        if crossings.rising[chosen].size:
-            part = _place(setting, crossings, chosen, length)
-            times_s[chosen], u_s[chosen] = part.times_s, part.u_s
-            placed.append(part)
+    times_s, u_s, placed = _place_both(setting, crossings, lengths)
     resolution_s = trace.time.resolution_s if isinstance(trace.time, StampedTime) else 0.0
     share = math.sqrt(sum(part.share**2 for part in placed) / max(1, len(placed)))
     return Placement(
@@ -137,6 +135,7 @@ class _Setting:
     """What all edges of a trace share; amplitude, noise and code step in stored units."""
 
     trace: Waveform
+    holed: bool
     limits: Thresholds
     amplitude: float
     noise: float
@@ -146,6 +145,25 @@ class _Setting:
     def codes(self, reach: float) -> float:
         """Return over how many codes the rounding error averages."""
         return max(1.0, reach / self.code) if self.code else 1.0
+
+    def windows(self, index: Index, half: int) -> Iterator[Window]:
+        """Return the samples around edges."""
+        return cut_windows(self.trace, index, half, holed=self.holed)
+
+
+def _place_both(
+    setting: _Setting, crossings: JoinedCrossings, lengths: tuple[float, float]
+) -> tuple[FloatArray, FloatArray, list[_Direction]]:
+    """Place the edges of both directions; return also what those of each have in common."""
+    times_s, u_s = np.zeros(crossings.index.size), np.zeros(crossings.index.size)
+    placed: list[_Direction] = []
+    for rising, length in zip((True, False), lengths, strict=True):
+        chosen = _of_direction(crossings.rising, rising)
+        if crossings.rising[chosen].size:
+            part = _place(setting, crossings, chosen, length)
+            times_s[chosen], u_s[chosen] = part.times_s, part.u_s
+            placed.append(part)
+    return times_s, u_s, placed
 
 
 def _of_direction(rising: BoolArray, direction: bool) -> Index | slice:
@@ -204,7 +222,7 @@ def _on_ramps(
         return None
     known = Ramped(mid=setting.limits.mid, amplitude=setting.amplitude, noise=setting.noise)
     half = math.ceil(whole / 2) + 1
-    fit = fit_ramps(setting.trace, index, rough_s - after_s, known, half)
+    fit = fit_ramps(setting.windows(index, half), rough_s - after_s, known)
     if fit is None:
         return None
     times_s, u_s = rough_s.copy(), setting.noise * fit.per_noise_s * np.ones(index.size)
@@ -226,7 +244,8 @@ def _fitted(
     """Place edges by a fit, those without one by the interpolation between two samples."""
     half = max(2, round(_FIT_SHARE * length))
     limits = setting.limits
-    fit = fit_edges(setting.trace, index, limits.mid, half, setting.noise)
+    windows = setting.windows(index, half)
+    fit = fit_edges(windows, index.size, limits.mid, half, setting.noise)
     slew = fit.slew if fit else (limits.upper - limits.lower) / ((length + 1) * setting.step_s)
     times_s, u_s = rough_s.copy(), np.full(index.size, setting.noise / slew)
     if fit:

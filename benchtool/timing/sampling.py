@@ -30,8 +30,14 @@ def sample_runs(waveform: Waveform) -> tuple[FloatArray, ...]:
         inside = [place for place in wanted if start <= place[0] < stop]
         found += _cut(waveform.samples, (start, stop), inside)
     gain, offset = waveform.scale.gain, waveform.scale.offset
-    runs = (run[np.isfinite(run)] * gain + offset for run in found)
+    runs = (_present(run) * gain + offset for run in found)
     return tuple(run for run in runs if run.size)
+
+
+def _present(values: FloatArray) -> FloatArray:
+    """Return the samples that are there."""
+    there = np.isfinite(values)
+    return values if there.all() else values[there]
 
 
 def _places(waveform: Waveform) -> list[tuple[int, int]]:

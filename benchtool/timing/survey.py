@@ -7,7 +7,7 @@ from dataclasses import replace
 import numpy as np
 
 from benchtool.frozen import frozen_record
-from benchtool.model.arrays import FloatArray, distinct, middle, quantile
+from benchtool.model.arrays import FloatArray, middle, quantile, without_repeats
 from benchtool.model.capture import Waveform
 from benchtool.timing.pieces import Piece, walk_pieces
 from benchtool.timing.rows import ROW
@@ -178,14 +178,14 @@ def _codes(waveform: Waveform, ordered: FloatArray) -> tuple[float, list[float] 
     return step_v or find_step(ordered), None
 
 
-def find_step(values: FloatArray) -> float:
+def find_step(ordered: FloatArray) -> float:
     """Return the code step of printed or floating samples, 0 where they lie on no grid.
 
     Args:
-        values: Samples in volts, shape (n,).
+        ordered: Samples in volts in order of size, shape (n,).
     """
-    unique = distinct(values)
-    if unique.size < 4 or unique.size > max(16, values.size // 4):
+    unique = without_repeats(ordered)
+    if unique.size < 4 or unique.size > max(16, ordered.size // 4):
         return 0.0
     gaps = np.diff(unique)
     step = middle(gaps[gaps <= 1.5 * quantile(gaps, 0.05)])

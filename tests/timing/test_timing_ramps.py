@@ -7,7 +7,7 @@ import pytest
 from timing_waves import Board, digitise, edge_times, exponential, trapezoid
 
 from benchtool.timing import find_edges
-from benchtool.timing.ramps import find_ramp, place_on_ramp
+from benchtool.timing.ramps import Ramp, _placed, find_ramp, place_on_ramp
 
 DT_S = 1e-5
 
@@ -69,3 +69,19 @@ def test_edges_behind_a_slow_filter_keep_their_fit() -> None:
     late_s = seen.times_s - edges - 5e-5 * np.log(2)
     # ln 2 of the time constant late, whatever the phase of the samples, to 2 % of it
     assert np.max(np.abs(late_s[1:-1])) < 1e-6
+
+
+@pytest.mark.parametrize("n_samples", [4, 6, 7])
+def test_edges_placed_all_at_once_are_those_placed_one_by_one(n_samples: int) -> None:
+    rng = np.random.default_rng(n_samples)
+    shift = rng.uniform(-0.5, 0.5, 500) * DT_S
+    times = np.broadcast_to((np.arange(n_samples) - n_samples // 2) * DT_S, (500, n_samples))
+    above = np.clip((times - shift[:, None]) / (3 * DT_S), -0.5, 0.5) + rng.normal(
+        0, 0.01, times.shape
+    )
+    rough = shift + rng.normal(0, 0.05, 500) * DT_S
+    ramp = Ramp(slope=1 / (3 * DT_S), reach_s=1.44 * DT_S)
+    together = place_on_ramp(times, above, rough, ramp)
+    alone = _placed(times, above, rough, ramp)
+    for one, other in zip(together, alone, strict=True):
+        np.testing.assert_array_equal(one, other)  # to the last bit

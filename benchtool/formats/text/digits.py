@@ -26,8 +26,7 @@ SHORT = 15
 _TENS: FloatArray = np.array([float(10**n) for n in range(EXACT_POWER + 1)])
 _EXACT = np.uint64(1 << 53)
 _SPLIT = 134217729.0  # 2**27 + 1
-_NEAR = 1e-6  # of the last place: nearer to half of it the sum of two parts does not tell
-_TIE = 0.5 - _NEAR
+_NEAR = 2.0**-72  # a millionth of the last place: so near to half of it two parts do not tell
 
 
 def _each(byte: int) -> np.uint64:
@@ -170,10 +169,9 @@ def _divided(mantissa: Words, power: NDArray[np.int64]) -> tuple[FloatArray, Boo
     product, rest = _product(first, tens)
     second = ((high - product) - rest + low) / tens
     values = first + second
-    left = np.abs(second - (values - first)) / np.spacing(values)
-    # below a power of two the places are half as wide
-    tie = (left > _TIE) | (np.abs(left - 0.25) < _NEAR)
-    return values, (power > 0) | tie
+    slack = values * _NEAR
+    near_tie = (first + (second + slack)) != (first + (second - slack))
+    return values, (power > 0) | near_tie
 
 
 def _product(a: FloatArray, b: FloatArray) -> tuple[FloatArray, FloatArray]:

@@ -107,9 +107,16 @@ def _mantissa(
     if n_fraction is None:
         return _any_mantissa(words, lengths, decimal)
     hole = n_fraction if n_fraction >= 0 else None
-    total: Words | None = None
-    valid = lengths > (hole is not None)
-    for chunk in cut_chunks(ROOM - WORD * n_words, ROOM, None if hole is None else ROOM - 1 - hole):
+    mantissa, valid = _sum_of_words(words, lengths, None if hole is None else ROOM - 1 - hole)
+    valid &= lengths > (hole is not None)
+    return mantissa, max(n_fraction, 0), valid
+
+
+def _sum_of_words(words: Words, lengths: IntArray, hole: int | None) -> tuple[Words, BoolArray]:
+    """Return the whole numbers that words spell, ``hole`` being no digit, and which are sound."""
+    n_words = words.shape[1]
+    total, valid = np.zeros(lengths.size, np.uint64), np.ones(lengths.size, np.bool_)
+    for chunk in cut_chunks(ROOM - WORD * n_words, ROOM, hole):
         k = (ROOM - chunk.stop) // WORD
         digits = words[:, n_words - 1 - k] ^ ZEROS
         digits &= _KEPT[k][lengths]
@@ -120,15 +127,12 @@ def _mantissa(
             part |= digits
         valid &= all_digits(part)
         part = fold(part)
-        if total is None:
-            total = part
-            continue
         if k == _LAST:
             valid &= part < _MOST_ABOVE
-        part *= chunk.tens
+        if k:
+            part *= chunk.tens
         total += part
-    assert total is not None
-    return total, max(n_fraction, 0), valid
+    return total, valid
 
 
 def _common_fraction(text: bytes, stops: IntArray, lengths: IntArray, decimal: bytes) -> int | None:

@@ -193,8 +193,6 @@ def scan_rows(
         scan.index.add(n_rows, offset)
         _feed(scan, decoded, clock_of)
         _note_damage(scan, decoded, n_rows, line)
-        if not scan.first.size:
-            scan.first = decoded.table
         if keep:
             tables.append(decoded.table)
         else:
@@ -204,14 +202,15 @@ def scan_rows(
     for clock in clocks:
         clock.finish()
     if keep and tables:
-        scan.table = (
-            np.concatenate(tables)[: scan.n_rows] if tables[1:] else tables[0][: scan.n_rows]
-        )
+        table = np.concatenate(tables) if tables[1:] else tables[0]
+        scan.table = table[: scan.n_rows]
     return scan
 
 
 def _feed(scan: Scan, decoded: Decoded, clock_of: tuple[int | None, ...]) -> None:
     n_clocks = len(scan.clocks)
+    if not scan.first.size:
+        scan.first = decoded.table
     for k, clock in enumerate(scan.clocks):
         clock.feed(decoded.table[:, k])
     for k, (channel, of) in enumerate(zip(scan.ranges, clock_of, strict=True)):

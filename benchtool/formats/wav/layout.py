@@ -105,11 +105,8 @@ def _layout(
         raise malformed(content, "has no whole fmt chunk before its data", "header-cut")
     code, n_channels, rate_hz, _, align, bits = struct.unpack_from(f"{order}HHIIHH", form)
     kind, valid = _coding(code, bits, form, order)
-    n_bytes = (bits + 7) // 8
-    if n_channels and align % n_channels == 0 and n_bytes < align // n_channels <= 4:
-        n_bytes = align // n_channels  # a wider container, the sample in its highest bits
-    readable = bits in (32, 64) if kind == FLOAT else kind == PCM and 1 <= n_bytes <= 4
-    if not readable or not 1 <= n_channels <= _MOST_CHANNELS or not rate_hz:
+    n_bytes = _width(bits, align, n_channels)
+    if not (_is_readable(kind, bits, n_bytes) and 1 <= n_channels <= _MOST_CHANNELS and rate_hz):
         what = f"has coding {code} with {bits} bits, {n_channels} channels at {rate_hz} Hz"
         raise malformed(content, f"{what}; only PCM of 1 to 32 bits and floats are read", None)
     frame = n_channels * n_bytes
@@ -129,6 +126,18 @@ def _layout(
         n_frames=n_there if n_promised is None else min(n_there, n_promised),
         n_promised=n_promised,
     )
+
+
+def _width(bits: int, align: int, n_channels: int) -> int:
+    """Return the bytes of a sample; in a wider container it stands in the highest bits."""
+    n_bytes = (bits + 7) // 8
+    if n_channels and align % n_channels == 0 and n_bytes < align // n_channels <= 4:
+        return align // n_channels
+    return n_bytes
+
+
+def _is_readable(kind: int, bits: int, n_bytes: int) -> bool:
+    return bits in (32, 64) if kind == FLOAT else kind == PCM and 1 <= n_bytes <= 4
 
 
 def _coding(code: int, bits: int, form: bytes, order: str) -> tuple[int, int]:
