@@ -19,6 +19,10 @@ if TYPE_CHECKING:
     from benchtool.evidence import Companion
     from benchtool.model.design import Design
     from benchtool.model.quantity import Notice
+    from benchtool.model.result import Analysis
+
+
+_PARTS = ("RA", "RB", "R", "C")
 
 
 @click.command("diagnose")
@@ -33,6 +37,7 @@ if TYPE_CHECKING:
     help="A meter's reading: control-pin=7.95V, RB<=46.8k, C=8.1u.",
 )
 @companion_options
+@click.option("--node", metavar="FILE", help="A capture of the capacitor node.")
 @click.option(
     "--topology", type=click.Choice(get_args(TopologyName)), help="The circuit, without a design."
 )
@@ -40,7 +45,7 @@ if TYPE_CHECKING:
 @click.option("--RB", "RB", metavar="PART", help="As marked, without a design.")
 @click.option("--R", "R", metavar="PART", help="As marked, without a design.")
 @click.option("--C", "C", metavar="PART", help="As marked, without a design.")
-@click.option("--ic", metavar="FAMILY", help="cmos or bipolar, without a design.")
+@click.option("--ic", type=click.Choice(["bipolar", "cmos"]), help="IC family, without a design.")
 @click.option("--supply-nominal", metavar="VOLTS", help="Supply, without a design.")
 @report_option
 @measuring_options
@@ -63,21 +68,35 @@ def command(
     benchtool diagnose slow.csv --design mist_valve.toml --reading control-pin=7.95V
     benchtool diagnose slow.csv --design mist_valve.toml --shunt 2M2 shunted.csv
     benchtool diagnose slow.csv --topology astable --RA 100k --RB 330k --C 47u
+    benchtool diagnose slow.csv --topology astable
     """  # noqa: D301 - click's mark of lines to keep as they are
     from benchtool.cli.readings import reading_of
     from benchtool.pipeline import diagnose
 
+    if given["topology"] is not None and not any(given[ref] for ref in _PARTS):
+        output.show(_unmarked(file, given, options), report=report)
+        return OK
     design, assumed = _design(given)
     analysis = diagnose(
         file,
         design,
         stage=given["stage"],
         companions=companions,
+        node=given["node"],
         readings=tuple(reading_of(text) for text in readings),
         options=options,
     )
     output.show(replace(analysis, warnings=(*analysis.warnings, *assumed)), report=report)
     return OK
+
+
+def _unmarked(file: str, given: dict[str, Any], options: MeasureOptions) -> Analysis:
+    """Return what can be said where neither a drawing nor a marking tells the parts."""
+    from benchtool.model.design import Ic
+    from benchtool.pipeline import diagnose_unmarked
+
+    ic = Ic(family=given["ic"]) if given["ic"] else None
+    return diagnose_unmarked(file, given["topology"], ic=ic, options=options)
 
 
 def _design(given: dict[str, Any]) -> tuple[str | Design, tuple[Notice, ...]]:

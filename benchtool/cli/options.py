@@ -109,7 +109,7 @@ def _measure_options(given: dict[str, Any]) -> Any:
         structure=given.pop("structure"),
     )
     active: Literal["high", "low"] | None = given.pop("active")
-    instrument, probe = _kit(given.pop("instrument"), given.pop("probe"))
+    instrument, probe = kit_of(given.pop("instrument"), given.pop("probe"))
     return MeasureOptions(
         read=read,
         window=_window(given.pop("from_"), given.pop("to")),
@@ -187,7 +187,7 @@ def _window(start: str | None, stop: str | None) -> Any:
     return Window(from_s=from_s, to_s=to_s)
 
 
-def _kit(instrument: str | None, probe: str | None) -> Any:
+def kit_of(instrument: str | None, probe: str | None) -> Any:
     """Return the instrument of the user's kit, and the load of its probe or of the one named."""
     load = None if probe is None or _is_name(probe) else _probe(probe)
     if instrument is None and (probe is None or load is not None):

@@ -5,6 +5,7 @@ from __future__ import annotations
 from benchtool.frozen import frozen_record
 from benchtool.manual import lookup
 from benchtool.model.diagnosis import Diagnosis, Group, NextReading, Suspect
+from benchtool.model.picking import Combinations
 from benchtool.report.compass import Point, place_directions
 from benchtool.units import format_value
 
@@ -68,6 +69,31 @@ def reading_title(item: NextReading) -> str:
 def reading_cost(item: NextReading) -> str:
     """Return what a reading costs and tells."""
     return f"about {item.minutes:g} min, {item.gain_bits:.2f} bit"
+
+
+def unmarked_sentence(found: Combinations) -> str:
+    """Return what can be said of a board of which no part is known."""
+    counted = (
+        f"{found.n_fitting} sets of preferred values give these times; the usual ones first"
+        if found.n_fitting
+        else "no set of preferred values gives these times: a part has moved, or is of no series"
+    )
+    return f"The output tells products of R and C and no part alone; {counted}."
+
+
+def combination_rows(found: Combinations) -> tuple[tuple[str, str, str], ...]:
+    """Return a row for each set of preferred values: its parts, how far off its products are."""
+    return tuple(
+        (
+            "  ".join(
+                f"{ref} {format_value(value, 'F' if ref == 'C' else 'ohm')}"
+                for ref, value in item.parts.items()
+            ),
+            f"{100 * item.off_charge:+.1f} %",
+            f"{100 * item.off_discharge:+.1f} %",
+        )
+        for item in found.best
+    )
 
 
 def percent(p: float) -> str:

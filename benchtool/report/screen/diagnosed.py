@@ -8,6 +8,7 @@ from rich.console import Console
 from rich.text import Text
 
 from benchtool.model.diagnosis import Diagnosis, NextReading
+from benchtool.model.picking import Combinations
 from benchtool.model.result import Analysis, StageResult
 from benchtool.report.commands import quoted, same_capture
 from benchtool.report.compass import draw_compass
@@ -21,13 +22,16 @@ from benchtool.report.screen.blocks import (
     draw_rows,
 )
 from benchtool.report.screen.measured import trace_line, trace_title
+from benchtool.report.screen.solved import draw_products
 from benchtool.report.suspicion import (
+    combination_rows,
     compass_points,
     group_text,
     others_text,
     reading_cost,
     reading_title,
     suspect_rows,
+    unmarked_sentence,
 )
 from benchtool.units import format_value
 
@@ -43,13 +47,24 @@ def draw_diagnosed(console: Console, analysis: Analysis) -> None:
         draw_line(console, f"{trace_title(result)}: {trace_line(result)}", "dim")
         if result.diagnosis is not None:
             _draw_answer(console, result.diagnosis)
+        if result.combinations is not None:
+            _draw_unmarked(console, result, result.combinations)
         draw_notes(console, analysis, result)
     draw_next(console, _next_command(analysis))
 
 
 def _title(analysis: Analysis, result: StageResult) -> str:
-    name = analysis.design.name if analysis.design else ""
-    return f"{name}  stage {result.stage}".strip()
+    if analysis.design is None:
+        return "Board without a drawing or markings"
+    return f"{analysis.design.name}  stage {result.stage}"
+
+
+def _draw_unmarked(console: Console, result: StageResult, found: Combinations) -> None:
+    console.print()
+    draw_line(console, unmarked_sentence(found), "bold")
+    draw_products(console, result, with_parts=False)
+    console.print()
+    draw_rows(console, combination_rows(found), heads=("parts that fit", "charge", "discharge"))
 
 
 def _draw_answer(console: Console, found: Diagnosis) -> None:

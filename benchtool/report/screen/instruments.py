@@ -117,6 +117,14 @@ def draw_trial(console: Console, resource: str, identity: str, dialect: str) -> 
     console.print()
 
 
+def draw_whole_trial(console: Console, row: Row, notices: Sequence[Notice]) -> None:
+    """Draw a trial from its beginning to its end."""
+    draw_trial(console, row["resource"], row["identity"], row["dialect"])
+    for step in row["steps"]:
+        draw_step(console, step)
+    draw_summary(console, row, notices)
+
+
 _MARKS = {"sent": ">", "asked": "?", "block": "#", "field": "=", "note": ":"}
 
 
