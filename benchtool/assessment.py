@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping
 from dataclasses import replace
 
-from benchtool.circuits import solve, solve_without_design
+from benchtool.circuits import find_topology, solve, solve_without_design
 from benchtool.circuits.inverse import NOTHING_KNOWN
 from benchtool.errors import SolveError
 from benchtool.judge import judge_stage, name_likely_part, stage_limits, worst
@@ -15,6 +15,7 @@ from benchtool.model.quantity import Measured, Notice
 from benchtool.model.result import StageResult
 from benchtool.model.timing import Timing
 from benchtool.observation import Settings
+from benchtool.parts.combinations import fit_combinations
 
 
 def solve_stage(
@@ -47,6 +48,21 @@ def solve_plain(
     timing = result.timing or Timing()
     solution = solve_without_design(timing, topology, ic=ic, supply_v=supply_v, known=known)
     return replace(result, solution=solution, warnings=(*result.warnings, *solution.warnings))
+
+
+def combine_parts(result: StageResult) -> StageResult:
+    """Add which preferred values could give the products of a board without markings."""
+    solution = result.solution
+    if solution is None or solution.tau_charge is None:
+        return result
+    charge, discharge = find_topology(solution.topology).resistors
+    found = fit_combinations(
+        solution.tau_charge,
+        solution.tau_discharge or solution.tau_charge,
+        charge=charge,
+        discharge=discharge,
+    )
+    return replace(result, combinations=found)
 
 
 def judge_board(

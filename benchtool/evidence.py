@@ -11,6 +11,7 @@ from benchtool.model.design import Design
 from benchtool.model.diagnosis import Evidence, Observation, ObservationRole, Reading
 from benchtool.model.result import StageResult
 from benchtool.model.timing import Timing
+from benchtool.nodes import NOTHING, NodeEvidence
 
 
 @frozen_record
@@ -62,6 +63,7 @@ def diagnose_stage(
     companions: Sequence[tuple[Companion, StageResult]],
     readings: Iterable[Reading],
     design: Design,
+    node: NodeEvidence = NOTHING,
 ) -> StageResult:
     """Add the diagnosis of a stage.
 
@@ -70,6 +72,7 @@ def diagnose_stage(
         companions: Further captures, and what was observed of the stage in each.
         readings: Figures that were brought.
         design: Its supply, temperature and probe.
+        node: What a record of the capacitor node says.
 
     Raises:
         SolveError: If there is neither a time nor a standstill to diagnose.
@@ -77,7 +80,9 @@ def diagnose_stage(
     if result.design is None:
         return result
     further = (observation_of(seen, companion) for companion, seen in companions)
-    evidence = Evidence(observations=(observation_of(result), *further), readings=tuple(readings))
+    evidence = Evidence(
+        observations=(observation_of(result), *further), readings=(*readings, *node.readings)
+    )
     found = diagnose(evidence, result.design, design)
-    warnings = tuple(dict.fromkeys((*result.warnings, *found.warnings)))
-    return replace(result, diagnosis=found, warnings=warnings)
+    warnings = tuple(dict.fromkeys((*result.warnings, *node.warnings, *found.warnings)))
+    return replace(result, diagnosis=found, node=node.fit, warnings=warnings)

@@ -7,10 +7,11 @@ file that grows, is a ``Stream``. Either gives whole captures or raises; never a
 from __future__ import annotations
 
 from collections.abc import Callable
-from typing import Protocol
+from typing import Literal, Protocol, runtime_checkable
 
 from benchtool.frozen import frozen_record
 from benchtool.model.capture import Capture
+from benchtool.model.counted import Counted
 
 Progress = Callable[[int, int], None]
 """Is told bytes behind, and bytes in all (0 where nobody knows)."""
@@ -30,6 +31,8 @@ class Order:
         trigger_timeout_s: How long to wait for the trigger; None for the dialect's own time.
         settings: Commands to send first, each as the user gave it; an order without them leaves
             the instrument as it stands.
+        functions: What a counter is to count; none for all that its dialect knows.
+        readings: Readings of each function, or time stamps; None for the dialect's own number.
     """
 
     channels: tuple[str, ...] = ()
@@ -37,6 +40,8 @@ class Order:
     force: bool = False
     trigger_timeout_s: float | None = None
     settings: tuple[str, ...] = ()
+    functions: tuple[str, ...] = ()
+    readings: int | None = None
 
 
 class Instrument(Protocol):
@@ -73,6 +78,26 @@ class Instrument(Protocol):
 
     def close(self) -> None:
         """End the connection, leaving the instrument as it was found."""
+        ...
+
+
+@runtime_checkable
+class Counter(Instrument, Protocol):
+    """An instrument that counts: it delivers single readings, or time stamps of edges."""
+
+    @property
+    def delivers(self) -> Literal["readings", "edges"]:
+        """Whether ``count`` or ``acquire`` gives what it has; the other one is refused."""
+        ...
+
+    def count(
+        self, order: Order, *, progress: Progress | None = None, armed: Armed | None = None
+    ) -> Counted:
+        """Return the readings of each function; ``progress`` is told readings behind and in all.
+
+        Raises:
+            InstrumentError: As the tree in ``benchtool.errors`` says; nothing is returned then.
+        """
         ...
 
 

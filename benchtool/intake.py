@@ -12,7 +12,7 @@ from benchtool.model.result import Analysis, StageResult
 from benchtool.model.timing import Timing
 from benchtool.observation import observe, settle
 from benchtool.provenance import source_of, warnings_of
-from benchtool.targets import choose_stages, choose_targets, line_up
+from benchtool.targets import Lineup, choose_stages, choose_targets, line_up
 
 if TYPE_CHECKING:
     from benchtool.model.design import Design
@@ -79,11 +79,30 @@ def observe_all(
     Raises:
         BenchtoolError: As reading, choosing and observing.
     """
-    capture = take(source, options)
-    settings = settle(options, design)
-    targets = choose_targets(
-        line_up(capture), channel=options.read.channel, design=design, stage=stage
-    )
+    return observe_lineup(line_up(take(source, options)), design, stage, options, command)
+
+
+def observe_lineup(
+    lineup: Lineup,
+    design: Design | None,
+    stage: str | None,
+    options: MeasureOptions,
+    command: str,
+) -> Analysis:
+    """Measure every trace of a capture, already lined up, that is to be measured.
+
+    Args:
+        lineup: The capture, its traces and their roles.
+        design: As of ``observe_all``.
+        stage: As of ``observe_all``.
+        options: As of ``observe_all``.
+        command: As of ``observe_all``.
+
+    Raises:
+        BenchtoolError: As choosing and observing.
+    """
+    capture, settings = lineup.capture, settle(options, design)
+    targets = choose_targets(lineup, channel=options.read.channel, design=design, stage=stage)
     return Analysis(
         command=command,
         sources=(source_of(capture, options),),

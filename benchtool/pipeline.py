@@ -15,7 +15,7 @@ from dataclasses import replace
 from types import MappingProxyType
 from typing import TYPE_CHECKING
 
-from benchtool.intake import CaptureSource, FilePath, observe_all, take, times_of
+from benchtool.intake import CaptureSource, FilePath, observe_all, observe_lineup, take, times_of
 from benchtool.model.capture import Capture
 from benchtool.model.options import MeasureOptions
 from benchtool.model.quantity import Notice
@@ -189,6 +189,33 @@ def solve_topology(
     return replace(analysis, results=(solved,))
 
 
+def diagnose_unmarked(
+    source: CaptureSource,
+    topology: TopologyName,
+    *,
+    ic: Ic | None = None,
+    options: MeasureOptions = DEFAULTS,
+) -> Analysis:
+    """Say what can be said of a board without a drawing and without markings.
+
+    Args:
+        source: The capture, or its file; ``-`` is standard input.
+        topology: The circuit.
+        ic: Family of the IC; a CMOS timer is assumed, with a notice, where none is given.
+        options: What is overruled.
+
+    Returns:
+        One result: the products, and the preferred values that could give them.
+
+    Raises:
+        BenchtoolError: As ``solve_topology``.
+    """
+    from benchtool.assessment import combine_parts
+
+    solved = solve_topology(source, topology, ic=ic, options=options)
+    return replace(solved, command="diagnose", results=tuple(map(combine_parts, solved.results)))
+
+
 def analyse(
     source: CaptureSource,
     design: FilePath | Design,
@@ -228,6 +255,7 @@ def diagnose(
     stage: str | None = None,
     companions: Sequence[Companion] = (),
     readings: Sequence[Reading] = (),
+    node: FilePath | None = None,
     options: MeasureOptions = DEFAULTS,
 ) -> Analysis:
     """Rank what may have happened to a board, and name what to measure next.
@@ -238,6 +266,7 @@ def diagnose(
         stage: Diagnose this stage alone.
         companions: Further captures of the board, each with what was different.
         readings: Figures that were brought.
+        node: A capture of the capacitor node; the main one gives it too where it holds it.
         options: What is overruled.
 
     Returns:
@@ -248,17 +277,27 @@ def diagnose(
     """
     from benchtool.designs.settling import settled_design
     from benchtool.evidence import diagnose_stage
+    from benchtool.nodes import read_node
 
     intent = settled_design(design, options)
-    main = observe_all(source, intent, stage, options, "diagnose")
+    lineup = line_up(take(source, options))
+    main = observe_lineup(lineup, intent, stage, options, "diagnose")
+    noded = lineup if node is None else line_up(take(node, options))
     further = [
         (item, observe_all(item.source, intent, stage, options, "diagnose")) for item in companions
     ]
+    settings, required = settle(options, intent), node is not None
     results = tuple(
         diagnose_stage(
-            result, [(item, seen.results[k]) for item, seen in further], readings, intent
+            result,
+            [(item, seen.results[k]) for item, seen in further],
+            readings,
+            intent,
+            read_node(noded, result.design, intent, settings, required=required),
         )
         for k, result in enumerate(main.results)
     )
-    sources = (replace(seen.sources[0], role=item.role) for item, seen in further)
+    sources = [replace(seen.sources[0], role=item.role) for item, seen in further]
+    if noded is not lineup:
+        sources.append(replace(source_of(noded.capture, options), role="node"))
     return replace(main, results=results, sources=(*main.sources, *sources))

@@ -41,8 +41,9 @@ ALLOWED: dict[str, set[str]] = {
     "comparison": {"model", "uncertainty"},
     "observation": {"model", "timing", "diagnose", "targets"},
     "intake": {"model", "formats", "timing", "observation", "provenance", "targets"},
-    "evidence": {"model", "diagnose"},
-    "assessment": {"model", "circuits", "judge", "observation"},
+    "nodes": {"model", "circuits", "node", "observation", "targets", "timing"},
+    "evidence": {"model", "diagnose", "nodes"},
+    "assessment": {"model", "circuits", "judge", "observation", "parts"},
     "kit": {"model", "units", "designs"},
     "jobs": {
         *("pipeline", "records", "model", "instruments", "uncertainty", "units", "plugins"),

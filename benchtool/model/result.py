@@ -22,7 +22,9 @@ if TYPE_CHECKING:
     from benchtool.model.diagnosis import Diagnosis
     from benchtool.model.judgement import Change, Check, Solution, VerdictName
     from benchtool.model.kit import KitInstrument
+    from benchtool.model.node import NodeFit
     from benchtool.model.overview import Overview
+    from benchtool.model.picking import Combinations
     from benchtool.model.window import Window
 
 
@@ -126,6 +128,8 @@ class StageResult:
     flat: Flat | None = None
     design: Stage | None = None
     diagnosis: Diagnosis | None = None
+    node: NodeFit | None = None
+    combinations: Combinations | None = None
 
 
 @frozen_record(eq=False)
