@@ -73,7 +73,8 @@ def command(
     from benchtool.cli.readings import reading_of
     from benchtool.pipeline import diagnose
 
-    if given["topology"] is not None and not any(given[ref] for ref in _PARTS):
+    undrawn = given["design"] is None and given["topology"] is not None
+    if undrawn and not any(given[ref] for ref in _PARTS):
         output.show(_unmarked(file, given, options), report=report)
         return OK
     design, assumed = _design(given)

@@ -8,6 +8,7 @@ if TYPE_CHECKING:
     from collections.abc import Callable
 
     from benchtool.model.diagnosis import Diagnosis, NextReading, Suspect
+    from benchtool.model.picking import Combinations
     from benchtool.model.quantity import Quantity
 
 Json = dict[str, Any]
@@ -48,6 +49,17 @@ def diagnosis_parts(
             for item in found.directions
         ],
     }
+
+
+def combination_parts(found: Combinations | None) -> Json:
+    """Return which preferred values could give the products; nothing where nobody asked."""
+    if found is None:
+        return {}
+    best = [
+        {"parts": item.parts, "off_charge": item.off_charge, "off_discharge": item.off_discharge}
+        for item in found.best
+    ]
+    return {"combinations": {"fitting": found.n_fitting, "best": best}}
 
 
 def _suspect(item: Suspect, estimate: Json | None) -> Json:

@@ -17,7 +17,8 @@ from benchtool.model.result import (
     TraceFacts,
 )
 from benchtool.model.timing import Jitter, Levels, StabilityPoint, Timing
-from benchtool.report.diagnosis import diagnosis_parts
+from benchtool.report.counting import counted_document
+from benchtool.report.diagnosis import combination_parts, diagnosis_parts
 from benchtool.report.sources import instrument_document, source_document
 from benchtool.uncertainty import coverage_factor
 
@@ -128,11 +129,14 @@ def _result(item: StageResult, parts: tuple[str, ...], several: bool) -> Json:
     made: Json = {"source": item.source} if several else {}
     made["stage"] = item.stage
     for name in parts:
-        if name in _MAKERS and (item.trace is not None or name not in _OF_TRACE):
+        of_counter = name == "jitter" and item.counted is not None
+        if name in _MAKERS and (item.trace or of_counter or name not in _OF_TRACE):
             made[name] = _MAKERS[name](item)
+    if item.counted is not None:
+        made["counted"] = counted_document(item.counted)
     if item.changes:
         made["changes"] = [_change(change) for change in item.changes]
-    made |= diagnosis_parts(item.diagnosis, quantity)
+    made |= diagnosis_parts(item.diagnosis, quantity) | combination_parts(item.combinations)
     if item.likely is not None:
         made["likely"] = item.likely
     made["findings"] = [_finding(found) for found in item.findings]

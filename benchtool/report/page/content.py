@@ -90,6 +90,8 @@ def _sheet(analysis: Analysis, result: StageResult) -> Sheet:
 def _sheet_title(analysis: Analysis, result: StageResult) -> str:
     several = len(analysis.results) > 1  # of one alone the head of the page says the stage
     words = [f"stage {result.stage}" if result.stage and several else ""]
+    if result.counted is not None:
+        words.append(f"{TITLE} of input {result.counted.channel}")
     if result.trace is not None:
         words.append(f"{result.trace.role} on {result.trace.channel}")
     if len(analysis.sources) > 1:

@@ -9,6 +9,7 @@ from benchtool.model.design import Band, Part, Probe, Stage
 from benchtool.model.kit import KitInstrument
 from benchtool.model.result import Analysis, StageResult, TraceFacts
 from benchtool.model.timing import Levels
+from benchtool.report.counting import TITLE, readings_line
 from benchtool.report.page.views import Facts
 from benchtool.units import format_value
 
@@ -48,6 +49,10 @@ def _instrument(kept: KitInstrument | None) -> tuple[tuple[str, str], ...]:
 
 
 def _measured_on(result: StageResult) -> Iterable[tuple[str, str]]:
+    if result.counted is not None:
+        yield "trace", f"none: {TITLE} of input {result.counted.channel}"
+        yield "readings", readings_line(result.counted)
+        return
     if result.trace is None:
         yield "trace", "none: figures as given"
         return

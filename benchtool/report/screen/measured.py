@@ -8,6 +8,7 @@ from benchtool.model.quantity import Measured, Quantity
 from benchtool.model.result import Analysis, StageResult
 from benchtool.model.timing import Jitter, Timing
 from benchtool.report.commands import same_capture
+from benchtool.report.counting import TITLE, readings_line
 from benchtool.report.phrases import file_name, gloss, quantity_text
 from benchtool.report.screen.blocks import (
     draw_heading,
@@ -64,6 +65,8 @@ def _rows(record: Timing | Jitter | None, names: tuple[str, ...]) -> list[tuple[
 
 def trace_title(result: StageResult) -> str:
     """Return what the trace is: "output on CH1"."""
+    if result.counted is not None:
+        return f"{TITLE} of input {result.counted.channel}"
     if result.trace is None:
         return "figures as given"
     return f"{result.trace.role} on {result.trace.channel}"
@@ -71,6 +74,8 @@ def trace_title(result: StageResult) -> str:
 
 def trace_line(result: StageResult) -> str:
     """Return one line about the record: kind, samples, span, whole periods."""
+    if result.counted is not None:
+        return readings_line(result.counted)
     trace = result.trace
     if trace is None:
         return "no capture behind them"

@@ -27,7 +27,7 @@ _WITHIN = {True: "within tolerance", False: "OUT OF TOLERANCE", None: "not decid
 def draw_solved(console: Console, analysis: Analysis) -> None:
     """Draw the times and the products they give."""
     for result in analysis.results:
-        of_trace = "" if result.trace is None else file_name(analysis, result)
+        of_trace = "" if result.trace is None and result.counted is None else file_name(analysis, result)
         draw_heading(console, f"{trace_title(result)}{_circuit(result)}", of_trace)
         draw_line(console, trace_line(result), "dim")
         console.print()
