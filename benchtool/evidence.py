@@ -12,6 +12,7 @@ from benchtool.model.diagnosis import Evidence, Observation, ObservationRole, Re
 from benchtool.model.result import StageResult
 from benchtool.model.timing import Timing
 from benchtool.nodes import NOTHING, NodeEvidence
+from benchtool.sightings import further_findings
 
 
 @frozen_record
@@ -80,9 +81,17 @@ def diagnose_stage(
     if result.design is None:
         return result
     further = (observation_of(seen, companion) for companion, seen in companions)
-    evidence = Evidence(
-        observations=(observation_of(result), *further), readings=(*readings, *node.readings)
-    )
+    brought = (*readings, *node.readings)
+    evidence = Evidence(observations=(observation_of(result), *further), readings=brought)
     found = diagnose(evidence, result.design, design)
-    warnings = tuple(dict.fromkeys((*result.warnings, *node.warnings, *found.warnings)))
-    return replace(result, diagnosis=found, node=node.fit, warnings=warnings)
+    power_ups = [seen for companion, seen in companions if companion.role == "power-up"]
+    is_healthy = found.best.fault == "healthy"
+    findings, noted = further_findings(result, power_ups, brought, design, is_healthy=is_healthy)
+    warnings = (*result.warnings, *node.warnings, *noted, *found.warnings)
+    return replace(
+        result,
+        diagnosis=found,
+        node=node.fit,
+        findings=findings,
+        warnings=tuple(dict.fromkeys(warnings)),
+    )

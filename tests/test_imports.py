@@ -40,9 +40,11 @@ ALLOWED: dict[str, set[str]] = {
     "provenance": {"model", "formats"},
     "comparison": {"model", "uncertainty"},
     "observation": {"model", "timing", "diagnose", "targets"},
-    "intake": {"model", "formats", "timing", "observation", "provenance", "targets"},
+    "counts": {"model", "timing", "observation", "provenance", "targets"},
+    "intake": {"counts", "model", "formats", "timing", "observation", "provenance", "targets"},
     "nodes": {"model", "circuits", "node", "observation", "targets", "timing"},
-    "evidence": {"model", "diagnose", "nodes"},
+    "sightings": {"model", "units", "uncertainty", "circuits", "diagnose", "node", "timing"},
+    "evidence": {"model", "diagnose", "nodes", "sightings"},
     "assessment": {"model", "circuits", "judge", "observation", "parts"},
     "kit": {"model", "units", "designs"},
     "jobs": {

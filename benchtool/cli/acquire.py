@@ -29,6 +29,12 @@ _POWER_UP_S = 600.0
 @click.option("--channel", "channels", multiple=True, metavar="NAME", help="Channel; repeatable.")
 @click.option("--captures", type=click.IntRange(min=1), default=1, metavar="N", help="So many.")
 @click.option("--until", metavar="LENGTH", help='Until "50 periods", or a time for a stream.')
+@click.option(
+    "--readings", type=click.IntRange(min=1), metavar="N", help="Of a counter: so many of each."
+)
+@click.option(
+    "--function", "functions", multiple=True, metavar="NAME", help="Of a counter; repeatable."
+)
 @click.option("--power-up", is_flag=True, help="Arm first, then switch the supply on.")
 @click.option("--from-memory", is_flag=True, help="Read what the instrument holds; do not arm.")
 @click.option("--force-trigger", is_flag=True, help="Trigger by command.")
@@ -40,11 +46,13 @@ def command(wanted: Wanted, output: Output, power_up: bool, **given: Any) -> int
     """Acquire captures from SOURCE into the file of -o, an .npz with a .json beside it.
 
     SOURCE is an instrument's resource, a name of your kit, or a serial port that sends edges.
+    A counter gives readings of t_high, t_low, period, frequency, duty, or time stamps of edges.
     Settings of the instrument are read and recorded, and left as they are unless --set says so.
 
     \b
     benchtool acquire TCPIP::192.0.2.7::hislip0::INSTR -o board.npz
     benchtool acquire left --power-up -o first_pulse.npz
+    benchtool acquire counter --readings 100 --function period -o readings.npz
     benchtool acquire /dev/ttyACM0 --until "50 periods" -o edges.npz
     """  # noqa: D301 - click's mark of lines to keep as they are
     from benchtool.cli.acquiring import run_acquisition
@@ -84,4 +92,6 @@ def _order(wanted: Wanted, given: dict[str, Any], *, power_up: bool) -> Order:
         force=given["force_trigger"],
         trigger_timeout_s=timeout_s or (_POWER_UP_S if power_up else None),
         settings=given["changes"],
+        functions=given["functions"],
+        readings=given["readings"],
     )

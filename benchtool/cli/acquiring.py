@@ -16,15 +16,17 @@ from typing import Any
 from benchtool.cli.cautions import tell_cautions
 from benchtool.cli.output import Output, made_at, refuse_existing, write_file
 from benchtool.errors import UsageError
-from benchtool.formats import write_npz
+from benchtool.formats import write_counted, write_npz
 from benchtool.instruments import Order, Recorder
 from benchtool.jobs.acquiring import Enough, acquire, count_periods, named, record
+from benchtool.jobs.counting import count, gives_readings, refuse_counting, with_name
 from benchtool.jobs.sources import Wanted, kind_of, open_instrument, open_recorder
 from benchtool.model.capture import Capture
+from benchtool.model.counted import Counted
 from benchtool.model.watching import tell
 from benchtool.report.sidecar import Saved, Taken, acquisition_document
 
-Found = Iterator[tuple[Capture, int]]
+Found = Iterator[tuple[Capture | Counted, int]]
 Run = tuple[Taken, Found]
 
 
@@ -56,7 +58,12 @@ def run_acquisition(
         for capture, periods in captures:
             number = len(written) + 1
             target = _numbered(path, number, several=several)
-            saved = _write(target, named(capture, wanted.kept), periods, number, taken, output)
+            own = (
+                named(capture, wanted.kept)
+                if isinstance(capture, Capture)
+                else with_name(capture, wanted.kept)
+            )
+            saved = _write(target, own, periods, number, taken, output)
             written.append(saved)
     if output.as_json:
         output.print_made("acquire", written)
@@ -85,7 +92,13 @@ def _opened(wanted: Wanted, order: Order, enough: Enough, output: Output) -> Ite
             settings=instrument.settings(),
             changed=order.settings,
         )
+        _say(output, f"{instrument.identity}: dialect {instrument.dialect}")
         armed = partial(_say, output, "armed")
+        if gives_readings(instrument):
+            telling = partial(tell, "counting")
+            yield told, count(instrument, order, enough, progress=telling, armed=armed)
+            return
+        refuse_counting(instrument, order)
         yield told, acquire(instrument, order, enough, progress=_transferred, armed=armed)
 
 
@@ -101,10 +114,13 @@ def _transferred(done: int, total: int) -> None:
 
 
 def _write(
-    path: Path, capture: Capture, periods: int, number: int, taken: Taken, output: Output
+    path: Path, capture: Capture | Counted, periods: int, number: int, taken: Taken, output: Output
 ) -> dict[str, Any]:
     content = BytesIO()
-    write_npz(capture, content)
+    if isinstance(capture, Capture):
+        write_npz(capture, content)
+    else:
+        write_counted(capture, content)
     data = content.getvalue()
     saved = Saved(
         file=path.name,
@@ -120,8 +136,15 @@ def _write(
     write_file(_beside(path), text.encode(), force=output.force)
     for notice in capture.warnings:
         _say(output, f"warning: {notice.text}")
-    _say(output, f"{path}: {periods} complete periods")
+    _say(output, f"{path}: {_held(capture, periods)}")
     return {"file": str(path), "sidecar": str(_beside(path)), **document}
+
+
+def _held(capture: Capture | Counted, periods: int) -> str:
+    """Return what a file holds, in a few words."""
+    if isinstance(capture, Capture):
+        return f"{periods} complete periods"
+    return ", ".join(f"{item.values.size} {name}" for name, item in capture.readings.items())
 
 
 def _say(output: Output, text: str) -> None:

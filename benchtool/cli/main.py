@@ -16,7 +16,7 @@ import click
 
 from benchtool import __version__
 from benchtool.cli import exits
-from benchtool.cli.commands import DESIGN, PARTS, SECTIONS
+from benchtool.cli.commands import DESIGN, INSTRUMENTS, PARTS, SECTIONS
 from benchtool.cli.verbs import VerbGroup
 from benchtool.errors import BenchtoolError, DesignError, InputError, InstrumentError, UsageError
 
@@ -31,7 +31,11 @@ _QUIET = {
 }
 """What libraries are told before they load."""
 
-_BELOW: dict[str | None, Collection[str]] = {"design": DESIGN["Verbs"], "parts": PARTS["Verbs"]}
+_BELOW: dict[str | None, Collection[str]] = {
+    "design": DESIGN["Verbs"],
+    "parts": PARTS["Verbs"],
+    "instruments": INSTRUMENTS["Verbs"],
+}
 _CONTEXT = {"help_option_names": ["-h", "--help"], "max_content_width": 100}
 
 

@@ -9,6 +9,7 @@ import click
 from benchtool.cli.exits import OK
 from benchtool.cli.options import measuring_options, output_options, report_option
 from benchtool.cli.output import Output, write_file
+from benchtool.errors import UsageError
 from benchtool.model.options import MeasureOptions
 
 
@@ -36,6 +37,12 @@ def command(
     from benchtool.pipeline import measure
 
     analysis = measure(file, baseline=baseline, options=options)
+    if intervals is not None and analysis.results[0].series is None:
+        raise UsageError(
+            f"{file} holds a counter's readings, and no intervals with their times",
+            hint="Leave out --intervals; the readings themselves stand in the file.",
+            code="counter-readings",
+        )
     if intervals is not None and analysis.results[0].series is not None:
         from benchtool.report.intervals import intervals_csv
 

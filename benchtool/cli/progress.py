@@ -11,8 +11,8 @@ from typing import TextIO
 LEAST_S = 1.0
 """A walk that takes no longer than that gets no line."""
 
-NO_BYTES = ("recording",)
-"""Walks that are told in something else than bytes, such as periods."""
+NO_BYTES = ("recording", "counting")
+"""Walks that are told in something else than bytes, such as periods or readings."""
 
 _EVERY_S = 0.2
 _BAR = 20

@@ -129,8 +129,8 @@ def _result(item: StageResult, parts: tuple[str, ...], several: bool) -> Json:
     made: Json = {"source": item.source} if several else {}
     made["stage"] = item.stage
     for name in parts:
-        of_counter = name == "jitter" and item.counted is not None
-        if name in _MAKERS and (item.trace or of_counter or name not in _OF_TRACE):
+        counted = name == "jitter" and item.jitter is not None
+        if name in _MAKERS and (item.trace is not None or counted or name not in _OF_TRACE):
             made[name] = _MAKERS[name](item)
     if item.counted is not None:
         made["counted"] = counted_document(item.counted)

@@ -13,6 +13,8 @@
 ``instrument``            what the user's kit says of it; null where it is not of the kit
 ``number``, ``periods``   number of the capture in its run from 1, complete periods in it
 ``traces``                channel, samples or transitions, sample interval or tick of each
+``counted``               of a counter's readings: input, resolution, and how many of what; null
+                          for a capture
 ``warnings``              code and text of each
 ========================= =====================================================================
 """
@@ -23,7 +25,9 @@ from typing import Any
 
 from benchtool.frozen import frozen_record
 from benchtool.model.capture import Capture, Trace, UniformTime, Waveform
+from benchtool.model.counted import Counted
 from benchtool.model.kit import KitInstrument
+from benchtool.report.counting import counted_document
 from benchtool.report.sources import instrument_document
 
 SCHEMA = "benchtool-acquisition/1"
@@ -62,7 +66,7 @@ class Saved:
         sha256: Of its bytes.
         number: Its number in the run, from 1.
         periods: Complete periods in it.
-        capture: The capture.
+        capture: The capture, or a counter's readings.
         made_at: UTC time in ISO 8601.
     """
 
@@ -70,7 +74,7 @@ class Saved:
     sha256: str
     number: int
     periods: int
-    capture: Capture
+    capture: Capture | Counted
     made_at: str
 
 
@@ -90,7 +94,8 @@ def acquisition_document(taken: Taken, saved: Saved) -> Json:
         "instrument": instrument_document(taken.kept) if taken.kept else None,
         "number": saved.number,
         "periods": saved.periods,
-        "traces": [_trace(trace) for trace in saved.capture.traces],
+        "traces": [_trace(trace) for trace in getattr(saved.capture, "traces", ())],
+        "counted": counted_document(saved.capture) if isinstance(saved.capture, Counted) else None,
         "warnings": [{"code": item.code, "text": item.text} for item in saved.capture.warnings],
     }
 

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterable
 
 from benchtool.model.result import Analysis, StageResult
+from benchtool.report.counting import TITLE
 from benchtool.report.page.cautions import CAUTIONS
 from benchtool.report.page.circuit import circuit_blocks
 from benchtool.report.page.facts import condition_facts

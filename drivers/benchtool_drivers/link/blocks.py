@@ -43,10 +43,11 @@ class BlockForm:
     length_unit_bytes: int = 1
 
 
-def read_lead(intake: Intake, patience: Patience) -> str:
-    """Return the text before a block, which begins at the first ``#``; it stays to be read."""
-    lead = intake.line(b"#", patience, longest=LONGEST_LEAD_BYTES)
-    intake.held[:0] = b"#"
+def read_lead(intake: Intake, form: BlockForm, patience: Patience) -> str:
+    """Return the text before a block, up to its first sign, which stays to be read."""
+    sign = b"%" if form.wrap == "counted-checksum" else b"#"
+    lead = intake.line(sign, patience, longest=LONGEST_LEAD_BYTES)
+    intake.held[:0] = sign
     return lead.decode("latin-1")
 
 

@@ -180,7 +180,9 @@ class Link:
         command: str,
         *,
         n_bytes: int | None = None,
+        wrap: Wrap = "definite",
         trailer: str = "\n",
+        length_unit_bytes: int = 1,
         progress: Progress | None = None,
     ) -> tuple[str, bytes]:
         """Return the text that leads a block in one answer, and the data of the block, whole.
@@ -188,18 +190,25 @@ class Link:
         Args:
             command: The query.
             n_bytes: How many bytes of data are to come, where that is known.
+            wrap: The form of the block, as ``link.blocks`` says.
             trailer: What follows the data.
+            length_unit_bytes: What one of the header's count stands for.
             progress: Is told bytes behind and in all.
 
         Raises:
             ReplyError: If no block follows, or it is not as ``ask_block`` wants it.
             InstrumentTimeoutError: If not all of it came in time.
         """
-        form = BlockForm(trailer=trailer.encode("ascii"), n_bytes=n_bytes)
+        form = BlockForm(
+            wrap=wrap,
+            trailer=trailer.encode("ascii"),
+            n_bytes=n_bytes,
+            length_unit_bytes=length_unit_bytes,
+        )
 
         def read(intake: Intake) -> tuple[str, bytes]:
             patience = self._block_patience()
-            lead = read_lead(intake, patience)
+            lead = read_lead(intake, form, patience)
             return lead, read_block(intake, form, patience, progress)
 
         return self._converse(command, "a text and a block", read)
