@@ -232,7 +232,7 @@ def _facts(target: Target, edges: Edges) -> TraceFacts:
         sample_interval_s=interval_s,
         tick_s=_tick(trace),
         start_s=edges.runs[0].start_s if edges.runs else 0.0,
-        duration_s=_duration(edges, interval_s),
+        duration_s=_duration(edges, interval_s) or _length(trace),
         gaps=tuple(
             Gap(start_s=before.end_s, end_s=after.start_s)
             for before, after in pairwise(edges.runs)
@@ -253,6 +253,13 @@ def _tick(trace: Trace) -> float | None:
     return _interval(trace) if trace.is_logic else None
 
 
+def _length(trace: Trace) -> float:
+    """Return N·dt of a trace in which nothing was looked for, such as a part of one slope."""
+    interval_s = _interval(trace)
+    return trace.samples.size * interval_s if interval_s and isinstance(trace, Waveform) else 0.0
+
+
 def _duration(edges: Edges, interval_s: float | None) -> float:
-    """Return N·dt: each run ends one interval after its last sample."""
-    return sum(run.end_s - run.start_s + (interval_s or 0.0) for run in edges.runs)
+    """Return N·dt: each run ends one interval after its last sample; 0 where none has a length."""
+    lengths_s = [run.end_s - run.start_s for run in edges.runs]
+    return sum(lengths_s) + len(lengths_s) * (interval_s or 0.0) if any(lengths_s) else 0.0

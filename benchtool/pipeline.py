@@ -24,11 +24,23 @@ from benchtool.model.timing import Timing
 from benchtool.observation import glance, settle
 from benchtool.provenance import source_of, warnings_of
 from benchtool.targets import Target, find_channel, line_up
+from benchtool.undrawn import diagnose_unmarked, solve_early, solve_topology
 
 if TYPE_CHECKING:
     from benchtool.evidence import Companion
-    from benchtool.model.design import Design, Ic, TopologyName
+    from benchtool.model.design import Design
     from benchtool.model.diagnosis import Reading
+
+__all__ = [
+    "analyse",
+    "diagnose",
+    "diagnose_unmarked",
+    "look",
+    "measure",
+    "solve",
+    "solve_early",
+    "solve_topology",
+]
 
 DEFAULTS = MeasureOptions()
 MOST_LISTED = 64
@@ -154,66 +166,6 @@ def solve(
         analysis,
         results=tuple(solve_stage(item, intent, known=known) for item in analysis.results),
     )
-
-
-def solve_topology(
-    source: CaptureSource | Timing,
-    topology: TopologyName,
-    *,
-    ic: Ic | None = None,
-    supply_v: float | None = None,
-    known: Mapping[str, float] = NOTHING_KNOWN,
-    options: MeasureOptions = DEFAULTS,
-) -> Analysis:
-    """Solve for the products where there is no design.
-
-    Args:
-        source: The capture, its file, ``-`` for standard input, or times already known.
-        topology: The circuit.
-        ic: Family and thresholds; a CMOS timer is assumed, with a notice, where none is given.
-        supply_v: Supply in volts, where known.
-        known: Reference of a part to its value in ohms or farads.
-        options: What is overruled.
-
-    Returns:
-        One result.
-
-    Raises:
-        SolveError: If the times are too few, or no parts of the topology give them.
-        BenchtoolError: As ``measure``.
-    """
-    from benchtool.assessment import solve_plain
-
-    analysis = times_of(source, None, None, options)
-    solved = solve_plain(analysis.results[0], topology, ic=ic, supply_v=supply_v, known=known)
-    return replace(analysis, results=(solved,))
-
-
-def diagnose_unmarked(
-    source: CaptureSource,
-    topology: TopologyName,
-    *,
-    ic: Ic | None = None,
-    options: MeasureOptions = DEFAULTS,
-) -> Analysis:
-    """Say what can be said of a board without a drawing and without markings.
-
-    Args:
-        source: The capture, or its file; ``-`` is standard input.
-        topology: The circuit.
-        ic: Family of the IC; a CMOS timer is assumed, with a notice, where none is given.
-        options: What is overruled.
-
-    Returns:
-        One result: the products, and the preferred values that could give them.
-
-    Raises:
-        BenchtoolError: As ``solve_topology``.
-    """
-    from benchtool.assessment import combine_parts
-
-    solved = solve_topology(source, topology, ic=ic, options=options)
-    return replace(solved, command="diagnose", results=tuple(map(combine_parts, solved.results)))
 
 
 def analyse(

@@ -21,6 +21,7 @@ from benchtool.model.options import MeasureOptions
 
 if TYPE_CHECKING:
     from benchtool.model.design import Ic, Threshold
+    from benchtool.model.quantity import Measured
     from benchtool.model.result import Analysis
     from benchtool.model.timing import Timing
 
@@ -60,6 +61,9 @@ _FIGURES = {
 @click.option("--duty", metavar="SHARE", help="Duty, in place of FILE.")
 @click.option("--first", metavar="TIME", help="First high time after power-up.")
 @click.option("--delay", metavar="TIME", help="Delay of a power-on circuit, in place of FILE.")
+@click.option(
+    "--asymptote", metavar="VOLTS", help="Early answer from a part of one slope that ends there."
+)
 @report_option
 @measuring_options
 @output_options
@@ -79,7 +83,11 @@ def command(
     \b
     benchtool solve capture.csv --design board.toml
     benchtool solve --topology astable --high 14.01s --low 10.75s --first 22.20s
+    benchtool solve slow_node.csv --asymptote "12V ± 50mV" --design board.toml
     """  # noqa: D301 - click's mark of lines to keep as they are
+    if given["asymptote"] is not None:
+        output.show(_early(file, design, options, given), report=report)
+        return OK
     if (design is None) == (given["topology"] is None):
         raise UsageError(
             "solve needs to know the circuit", hint="Give either --design FILE or --topology NAME."
@@ -98,6 +106,29 @@ def command(
         raise
     output.show(analysis, report=report)
     return OK
+
+
+def _early(
+    file: str | None, design: str | None, options: MeasureOptions, given: dict[str, Any]
+) -> Analysis:
+    """Return the early answer from a part of one slope of the node."""
+    from benchtool.pipeline import solve_early
+
+    if file is None:
+        raise UsageError("--asymptote needs a capture of the node", hint="Name its file.")
+    return solve_early(
+        file, _asymptote(given["asymptote"]), design, stage=given["stage"], options=options
+    )
+
+
+def _asymptote(text: str) -> Measured:
+    """Return the end of a slope; its U is what is stated after ``±``, or 1 % (assumed)."""
+    from benchtool.model.quantity import Measured
+
+    typed, _, stated = text.partition("±")
+    value = value_of("--asymptote", typed.strip(), "V") or 0.0
+    U = positive("--asymptote", stated.strip(), "V") if stated else 0.01 * abs(value) + 0.01
+    return Measured(value=value, u=(U or 0.0) / 1.96, unit="V")
 
 
 def _refuse_unused(design: str | None, options: MeasureOptions, given: dict[str, Any]) -> None:

@@ -77,10 +77,11 @@ def find_early_tau(
         )
     part = _longest_way(take_points(trace, 0.0))
     if np.any(part.sign * (end.value - part.volts) <= 0):
+        way = "rises" if part.sign > 0 else "falls"
         raise MeasurementError(
-            f"the node is beyond {end.value:.4g} V, to which it was to settle",
+            f"the slope {way}, away from {end.value:.4g} V or beyond it, where it was to settle",
             code="asymptote-passed",
-            hint="Check that voltage against a reading of the supply, and the offset of the probe.",
+            hint="Give the supply for a rise, 0 V for a fall; check them and the probe's offset.",
         )
     answer = _Answer(part, end)
     tau = answer.measured("s", lambda _, log_tau, __: math.exp(log_tau), timebase_rel)

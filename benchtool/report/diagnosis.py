@@ -8,6 +8,7 @@ if TYPE_CHECKING:
     from collections.abc import Callable
 
     from benchtool.model.diagnosis import Diagnosis, NextReading, Suspect
+    from benchtool.model.node import EarlyTau
     from benchtool.model.picking import Combinations
     from benchtool.model.quantity import Quantity
 
@@ -60,6 +61,21 @@ def combination_parts(found: Combinations | None) -> Json:
         for item in found.best
     ]
     return {"combinations": {"fitting": found.n_fitting, "best": best}}
+
+
+def early_parts(found: EarlyTau | None, quantity: Callable[[Quantity | None], Json | None]) -> Json:
+    """Return an early answer from a part of one slope; nothing where there is none."""
+    if found is None:
+        return {}
+    early = {
+        "tau": quantity(found.tau),
+        "end": quantity(found.end),
+        "rises": found.rises,
+        "covered": found.covered,
+        "arrives": quantity(found.arrives),
+        "length": quantity(found.length),
+    }
+    return {"early": early}
 
 
 def _suspect(item: Suspect, estimate: Json | None) -> Json:

@@ -18,7 +18,7 @@ from benchtool.model.result import (
 )
 from benchtool.model.timing import Jitter, Levels, StabilityPoint, Timing
 from benchtool.report.counting import counted_document
-from benchtool.report.diagnosis import combination_parts, diagnosis_parts
+from benchtool.report.diagnosis import combination_parts, diagnosis_parts, early_parts
 from benchtool.report.sources import instrument_document, source_document
 from benchtool.uncertainty import coverage_factor
 
@@ -137,6 +137,7 @@ def _result(item: StageResult, parts: tuple[str, ...], several: bool) -> Json:
     if item.changes:
         made["changes"] = [_change(change) for change in item.changes]
     made |= diagnosis_parts(item.diagnosis, quantity) | combination_parts(item.combinations)
+    made |= early_parts(item.early, quantity)
     if item.likely is not None:
         made["likely"] = item.likely
     made["findings"] = [_finding(found) for found in item.findings]

@@ -5,8 +5,10 @@ from __future__ import annotations
 from benchtool.frozen import frozen_record
 from benchtool.manual import lookup
 from benchtool.model.diagnosis import Diagnosis, Group, NextReading, Suspect
+from benchtool.model.node import EarlyTau
 from benchtool.model.picking import Combinations
 from benchtool.report.compass import Point, place_directions
+from benchtool.report.phrases import quantity_text
 from benchtool.units import format_value
 
 _LEAST_SHOWN = 0.005
@@ -94,6 +96,19 @@ def combination_rows(found: Combinations) -> tuple[tuple[str, str, str], ...]:
         )
         for item in found.best
     )
+
+
+def early_rows(found: EarlyTau) -> tuple[tuple[str, str, str], ...]:
+    """Return the rows of an early answer: name, what it is, figure."""
+    way = "rise" if found.rises else "fall"
+    rows = (
+        ("tau", f"time constant of the {way}", found.tau),
+        ("end", "voltage to which it would settle", found.end),
+        ("arrives", "at the threshold, after the first sample", found.arrives),
+        ("length", f"of the whole {way}", found.length),
+    )
+    shown = [(name, label, quantity_text(item)) for name, label, item in rows if item is not None]
+    return (*shown, ("covered", "of a time constant, by this record", f"{found.covered:.2f}"))
 
 
 def percent(p: float) -> str:
