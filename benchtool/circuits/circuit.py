@@ -31,6 +31,8 @@ class Circuit:
         supply: Supply, volts.
         v_upper: Upper threshold, volts.
         v_lower: Lower threshold, volts.
+        v_control: Control pin, volts: it sets both thresholds, and does not see a comparator's own
+            shift; NaN where there is none.
         v_sat: Saturation voltage of the discharge switch at no current, volts.
         r_on: On-resistance of the discharge switch, ohms.
         i_discharge_leak: Current sunk by the open discharge switch, amperes.
@@ -58,6 +60,7 @@ class Circuit:
     supply: Value
     v_upper: Value
     v_lower: Value = 0.0
+    v_control: Value = math.nan
     RA: Value = math.nan
     RB: Value = math.nan
     R: Value = math.nan

@@ -205,6 +205,7 @@ def circuit_at(stage: Stage, design: Design, point: Point = NOWHERE) -> Circuit:
         supply=supply,
         v_upper=upper,
         v_lower=lower,
+        v_control=upper if topology.forced_by_control else math.nan,
         esr=stage.parts["C"].esr_ohm,
         i_leak=point.get("leakage", stage.parts["C"].leakage_a / 2),
         leak_ohm=stage.leak_ohm,
