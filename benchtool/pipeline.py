@@ -30,6 +30,8 @@ if TYPE_CHECKING:
     from benchtool.evidence import Companion
     from benchtool.model.design import Design
     from benchtool.model.diagnosis import Reading
+    from benchtool.model.result import StageResult
+    from benchtool.observation import Settings
 
 __all__ = [
     "analyse",
@@ -48,11 +50,11 @@ MOST_LISTED = 64
 NOTHING_KNOWN: Mapping[str, float] = MappingProxyType({})
 
 
-def look(sources: Sequence[FilePath], *, options: MeasureOptions = DEFAULTS) -> Analysis:
+def look(sources: Sequence[CaptureSource], *, options: MeasureOptions = DEFAULTS) -> Analysis:
     """Say what captures hold: structure with its evidence, traces, roles, levels.
 
     Args:
-        sources: The capture files; ``-`` is standard input.
+        sources: The captures, or their files; ``-`` is standard input.
         options: What is overruled.
 
     Returns:
@@ -229,23 +231,24 @@ def diagnose(
     """
     from benchtool.designs.settling import settled_design
     from benchtool.evidence import diagnose_stage
-    from benchtool.nodes import read_node
+    from benchtool.nodes import place_probe, read_node
 
     intent = settled_design(design, options)
     lineup = line_up(take(source, options))
+    intent = place_probe(lineup, intent, settle(options, intent))
     main = observe_lineup(lineup, intent, stage, options, "diagnose")
     noded = lineup if node is None else line_up(take(node, options))
+    settings = settle(options, intent)
     further = [
         (item, observe_all(item.source, intent, stage, options, "diagnose")) for item in companions
     ]
-    settings, required = settle(options, intent), node is not None
     results = tuple(
         diagnose_stage(
             result,
-            [(item, seen.results[k]) for item, seen in further],
+            [(item, _as_stated(item, seen.results[k], settings)) for item, seen in further],
             readings,
             intent,
-            read_node(noded, result.design, intent, settings, required=required),
+            read_node(noded, result.design, intent, settings, apart=node is not None),
         )
         for k, result in enumerate(main.results)
     )
@@ -253,3 +256,12 @@ def diagnose(
     if noded is not lineup:
         sources.append(replace(source_of(noded.capture, options), role="node"))
     return replace(main, results=results, sources=(*main.sources, *sources))
+
+
+def _as_stated(companion: Companion, result: StageResult, settings: Settings) -> StageResult:
+    """Return what was observed in a further capture, read as what it is stated to be."""
+    if companion.role != "power-up":
+        return result
+    from benchtool.powerups import with_first_high
+
+    return with_first_high(result, settings)

@@ -60,7 +60,7 @@ def _print_version(ctx: click.Context, _parameter: click.Parameter, wanted: bool
     help="Show the version, with those of the libraries.",
 )
 def program() -> None:
-    """Measure, solve and judge boards timed by a resistor and a capacitor.
+    """Measure, solve, judge and diagnose boards timed by a resistor and a capacitor.
 
     Start with:  benchtool look FILE
     """

@@ -9,7 +9,6 @@ from __future__ import annotations
 import json
 import math
 from pathlib import Path
-from unittest import mock
 
 import numpy as np
 
@@ -19,6 +18,7 @@ from benchtool.formats import read_capture
 from benchtool.formats.text import walking
 from benchtool.model.capture import Capture, LogicTrace, ReadOptions, StampedTime, Trace
 from benchtool.model.options import MeasureOptions
+from benchtool.model.result import Analysis
 from benchtool.report.document import analysis_document, error_document
 
 SMALL_BLOCK = 700
@@ -59,8 +59,7 @@ def _attempt_with(path: Path, options: ReadOptions) -> str:
         compare(whole, walked, scales=False)  # the first block tells the step of the values
     for trace in whole.traces:
         check_trace(trace)
-    with mock.patch.object(pipeline, "read_capture", return_value=whole):  # it has been read
-        _measure(path, options)
+    _measure(whole, options)
     return "read"
 
 
@@ -89,9 +88,12 @@ def check_error(error: BenchtoolError) -> None:
     json.dumps(error_document(error, command="measure"), allow_nan=False)
 
 
-def _measure(path: Path, options: ReadOptions) -> None:
+def _measure(capture: Capture, options: ReadOptions) -> None:
     chosen = MeasureOptions(read=options)
-    for verb in (lambda: pipeline.look([path], options=chosen), lambda: _timing(path, chosen)):
+    for verb in (
+        lambda: pipeline.look([capture], options=chosen),
+        lambda: _timing(capture, chosen),
+    ):
         try:
             analysis = verb()
         except BenchtoolError as error:
@@ -101,8 +103,8 @@ def _measure(path: Path, options: ReadOptions) -> None:
         json.dumps(document, allow_nan=False)
 
 
-def _timing(path: Path, chosen: MeasureOptions) -> object:
-    return pipeline.measure(path, options=chosen)
+def _timing(capture: Capture, chosen: MeasureOptions) -> Analysis:
+    return pipeline.measure(capture, options=chosen)
 
 
 def check_trace(trace: Trace) -> None:
