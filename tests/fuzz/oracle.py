@@ -90,17 +90,18 @@ def check_error(error: BenchtoolError) -> None:
 
 def _measure(capture: Capture, options: ReadOptions) -> None:
     chosen = MeasureOptions(read=options)
-    for verb in (
-        lambda: pipeline.look([capture], options=chosen),
-        lambda: _timing(capture, chosen),
-    ):
+    for verb in (_looked, _timing):
         try:
-            analysis = verb()
+            analysis = verb(capture, chosen)
         except BenchtoolError as error:
             check_error(error)
             continue
         document = analysis_document(analysis, version="0", made_at="2031-03-02T03:12:00Z")
         json.dumps(document, allow_nan=False)
+
+
+def _looked(capture: Capture, chosen: MeasureOptions) -> Analysis:
+    return pipeline.look([capture], options=chosen)
 
 
 def _timing(capture: Capture, chosen: MeasureOptions) -> Analysis:
