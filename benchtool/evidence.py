@@ -6,6 +6,7 @@ from collections.abc import Iterable, Sequence
 from dataclasses import replace
 
 from benchtool.diagnose import diagnose
+from benchtool.diagnose.priors import DEFAULT_PRIORS, Priors
 from benchtool.frozen import frozen_record
 from benchtool.model.design import Design
 from benchtool.model.diagnosis import Evidence, Observation, ObservationRole, Reading
@@ -33,6 +34,22 @@ class Companion:
     u: float = 0.0
     part: str | None = None
     same_board: bool = True
+
+
+_TOLD = ("no-first-high",)
+"""Of what was seen in a further capture, what bears on the diagnosis as a whole."""
+
+_LOADED_WEIGHT = 3.0
+"""Of a probe that loads the node, where one was seen on it and nothing is stated: assumed."""
+
+
+def _priors(node: NodeEvidence) -> Priors:
+    """Return what is held beforehand: a probe that was seen on the node is a likely load."""
+    if not node.is_loaded:
+        return DEFAULT_PRIORS
+    table = dict(DEFAULT_PRIORS.table)
+    table["probe-load"] = replace(table["probe-load"], weight=_LOADED_WEIGHT)
+    return replace(DEFAULT_PRIORS, table=table)
 
 
 def observation_of(result: StageResult, companion: Companion | None = None) -> Observation:
@@ -83,11 +100,12 @@ def diagnose_stage(
     further = (observation_of(seen, companion) for companion, seen in companions)
     brought = (*readings, *node.readings)
     evidence = Evidence(observations=(observation_of(result), *further), readings=brought)
-    found = diagnose(evidence, result.design, design)
+    found = diagnose(evidence, result.design, design, priors=_priors(node))
     power_ups = [seen for companion, seen in companions if companion.role == "power-up"]
     is_healthy = found.best.fault == "healthy"
     findings, noted = further_findings(result, power_ups, brought, design, is_healthy=is_healthy)
-    warnings = (*result.warnings, *node.warnings, *noted, *found.warnings)
+    apart = [notice for _, seen in companions for notice in seen.warnings if notice.code in _TOLD]
+    warnings = (*result.warnings, *node.warnings, *apart, *noted, *found.warnings)
     return replace(
         result,
         diagnosis=found,

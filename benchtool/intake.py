@@ -3,9 +3,12 @@
 from __future__ import annotations
 
 from pathlib import Path
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, TypeAlias
 
+from benchtool.errors import UsageError
 from benchtool.formats import read_capture
+from benchtool.formats.content import open_content
+from benchtool.formats.reading import read_content
 from benchtool.model.capture import Capture
 from benchtool.model.options import MeasureOptions
 from benchtool.model.result import Analysis, StageResult
@@ -15,11 +18,14 @@ from benchtool.provenance import source_of, warnings_of
 from benchtool.targets import Lineup, choose_stages, choose_targets, line_up
 
 if TYPE_CHECKING:
+    from benchtool.model.counted import Counted
     from benchtool.model.design import Design
 
 FilePath = str | Path
-CaptureSource = FilePath | Capture
-"""A capture file, ``-`` for standard input, or a capture that is already in memory."""
+CaptureSource: TypeAlias = "FilePath | Capture | Counted"
+"""A file, ``-`` for standard input, or a capture or a counter's readings already in memory."""
+
+_ARCHIVE = b"PK\x03\x04"
 
 _DEAD_TOO = ("judge", "diagnose")
 """Verbs to which a board without an interval is a result."""
@@ -51,8 +57,36 @@ def _given(timing: Timing, design: Design | None, stage: str | None) -> Analysis
 
 
 def take(source: CaptureSource, options: MeasureOptions) -> Capture:
-    """Read a capture, or the part of it that is asked for."""
-    capture = source if isinstance(source, Capture) else read_capture(source, options.read)
+    """Read a capture, or the part of it that is asked for.
+
+    Raises:
+        UsageError: If it is a counter's readings (``counter-readings``).
+    """
+    if isinstance(source, str | Path):
+        return _part(read_capture(source, options.read), options)
+    if isinstance(source, Capture):
+        return _part(source, options)
+    raise UsageError(
+        f"{source.source} gave a counter's readings, and a trace is wanted",
+        hint="Measure, solve or judge them; a digitising instrument gives a trace.",
+        code="counter-readings",
+    )
+
+
+def _found(source: CaptureSource, options: MeasureOptions) -> Capture | Counted:
+    """Return what a source holds: a capture, or the readings of a counter."""
+    if not isinstance(source, str | Path):
+        return source
+    content = open_content(source)
+    if content.head(len(_ARCHIVE)) == _ARCHIVE:
+        from benchtool.formats.counted import is_counted, read_counted
+
+        if is_counted(content):
+            return read_counted(content)
+    return read_content(content, options.read)
+
+
+def _part(capture: Capture, options: MeasureOptions) -> Capture:
     if options.window is None:
         return capture
     from benchtool.timing.window import narrow
@@ -70,7 +104,7 @@ def observe_all(
     """Measure every trace that is to be measured.
 
     Args:
-        source: The capture, or its file.
+        source: The capture or a counter's readings, or the file of either.
         design: The design, where there is one: a result a stage.
         stage: Measure this stage alone.
         options: What is overruled.
@@ -79,7 +113,13 @@ def observe_all(
     Raises:
         BenchtoolError: As reading, choosing and observing.
     """
-    return observe_lineup(line_up(take(source, options)), design, stage, options, command)
+    found = _found(source, options)
+    if isinstance(found, Capture):
+        lineup = line_up(_part(found, options))
+        return observe_lineup(lineup, design, stage, options, command)
+    from benchtool.counts import observe_counted
+
+    return observe_counted(found, design, stage, options, command)
 
 
 def observe_lineup(

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from dataclasses import replace
 
 from benchtool.circuits import circuit_at
 from benchtool.errors import MeasurementError, UsageError
@@ -21,17 +22,29 @@ U_GAIN_REL = 0.005
 """Standard uncertainty of a voltage scale of which nothing is stated: assumed."""
 
 _U_LOAD_REL = 0.01
+_ANY_PROBE = Probe(r_ohm=20e6, c_f=6e-12)
+_U_ANY_PROBE_REL = 1 / math.sqrt(3)
+"""Of a probe of which nothing is stated: conductance and capacitance anywhere between nothing and
+those of 10 MΩ and 12 pF, what most probes have (common practice)."""
 _U_DELAY_REL = 0.3
 _U_LEAST_V = 5e-3
 
 
 @frozen_record(eq=False)
 class NodeEvidence:
-    """What the node says: readings, the fit behind them, and what was assumed."""
+    """What the node says: readings, the fit behind them, and what was assumed.
+
+    Attributes:
+        readings: Its figures.
+        fit: What they were taken from.
+        warnings: What was assumed.
+        is_loaded: Whether a probe of which nothing is stated was on it while the output ran.
+    """
 
     readings: tuple[Reading, ...] = ()
     fit: NodeFit | None = None
     warnings: tuple[Notice, ...] = ()
+    is_loaded: bool = False
 
 
 NOTHING = NodeEvidence()
@@ -43,7 +56,7 @@ def read_node(
     design: Design,
     settings: Settings,
     *,
-    required: bool = False,
+    apart: bool = False,
 ) -> NodeEvidence:
     """Return what the capacitor node of a capture says; nothing where it was not recorded.
 
@@ -52,17 +65,17 @@ def read_node(
         stage: The stage; it may name the trace.
         design: Its supply and probe.
         settings: As settled for this run.
-        required: Whether a capture without a node is an error.
+        apart: Whether the capture was made for the node's sake, apart from that of the output.
 
     Raises:
-        UsageError: Where ``required`` and there is none (``no-node``).
-        MeasurementError: Where ``required`` and it shows too little (``node-too-short``).
+        UsageError: Where ``apart`` and there is none (``no-node``).
+        MeasurementError: Where ``apart`` and it shows too little (``node-too-short``).
     """
     if stage is None:
         return NOTHING
     shape = _node(lineup, stage)
     if shape is None or not isinstance(shape.trace, Waveform) or shape.levels is None:
-        if required:
+        if apart:
             raise UsageError(
                 f"{lineup.capture.origin.source} holds no trace of the capacitor node",
                 hint='Record the node, or name its trace in the design: capacitor = "...".',
@@ -77,13 +90,17 @@ def read_node(
     try:
         fit = fit_node(shape.trace, shape.levels, terms=terms)
     except MeasurementError as error:
-        if required:
+        if apart:
             raise
         notice = Notice(code="node-not-used", text=f"the node was left out: {error.message}")
         return NodeEvidence(warnings=(notice,))
-    found, warnings = _as_diagnosed(fit, stage, design, settings)
+    is_freed = design.probe.at != "capacitor" and (apart or _stated(settings) is not None)
+    found, warnings = _as_diagnosed(fit, stage, design, settings, apart=apart)
     return NodeEvidence(
-        readings=node_readings(found), fit=found, warnings=(*fit.warnings, *warnings)
+        readings=tuple(replace(item, is_freed=is_freed) for item in node_readings(found)),
+        fit=found,
+        warnings=(*fit.warnings, *warnings),
+        is_loaded=not is_freed and design.probe.at != "capacitor",
     )
 
 
@@ -113,19 +130,49 @@ def _node(lineup: Lineup, stage: Stage) -> Shape | None:
 
 
 def _as_diagnosed(
-    fit: NodeFit, stage: Stage, design: Design, settings: Settings
+    fit: NodeFit, stage: Stage, design: Design, settings: Settings, *, apart: bool
 ) -> tuple[NodeFit, tuple[Notice, ...]]:
     """Return the node as the diagnosed circuit has it: with its probe, or freed of another."""
-    probe = settings.options.probe
     if design.probe.at == "capacitor":  # the circuit has the same load
         return fit, ()
-    if probe is None or not math.isfinite(probe.r_ohm):
+    probe = _stated(settings)
+    if probe is not None:
+        return remove_probe(fit, _load(probe, stage, _U_LOAD_REL)), ()
+    if not apart:
         text = "the probe on the node is taken as no load; state it with --probe"
         return fit, (Notice(code="assumed-no-probe-load", text=text),)
-    return remove_probe(fit, _load(probe, stage)), ()
+    text = (
+        "the probe on the node is not stated: any load up to that of 10 MΩ is allowed for; "
+        "--probe makes the node tell more"
+    )
+    freed = remove_probe(fit, _load(_ANY_PROBE, stage, _U_ANY_PROBE_REL))
+    return freed, (Notice(code="assumed-probe-load", text=text),)
 
 
-def _load(probe: Probe, stage: Stage) -> Load:
+def _stated(settings: Settings) -> Probe | None:
+    """Return the probe that was stated, None where it is none or no load."""
+    probe = settings.options.probe
+    return probe if probe is not None and math.isfinite(probe.r_ohm) else None
+
+
+def place_probe(lineup: Lineup, design: Design, settings: Settings) -> Design:
+    """Return the design with the stated probe on the node where the capture shows the node.
+
+    The output beside it was recorded with the probe on the capacitor then.
+
+    Args:
+        lineup: The capture of the board as it is.
+        design: With the probe as it was settled.
+        settings: As settled for this run.
+    """
+    probe = _stated(settings)
+    shapes = (_node(lineup, stage) for stage in design.stages)
+    if probe is None or not any(shape and isinstance(shape.trace, Waveform) for shape in shapes):
+        return design
+    return replace(design, probe=replace(probe, at="capacitor"))
+
+
+def _load(probe: Probe, stage: Stage, u_rel: float) -> Load:
     parts = stage.parts
     charge = sum(part.value for ref, part in parts.items() if ref != "C")
     discharge = parts["RB"].value if "RB" in parts else charge
@@ -134,8 +181,8 @@ def _load(probe: Probe, stage: Stage) -> Load:
         return Measured(value=value, u=_U_LOAD_REL * value, unit="ohm")
 
     return Load(
-        ohm=ohms(probe.r_ohm),
-        farad=Measured(value=probe.c_f, u=_U_LOAD_REL * probe.c_f, unit="F"),
+        ohm=Measured(value=probe.r_ohm, u=u_rel * probe.r_ohm, unit="ohm"),
+        farad=Measured(value=probe.c_f, u=u_rel * probe.c_f, unit="F"),
         charge_ohm=ohms(charge),
         discharge_ohm=ohms(discharge),
     )

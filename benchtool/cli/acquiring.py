@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import hashlib
 import json
+import os
 import sys
 from collections.abc import Iterator
 from contextlib import closing, contextmanager
@@ -15,7 +16,7 @@ from typing import Any
 
 from benchtool.cli.cautions import tell_cautions
 from benchtool.cli.output import Output, made_at, refuse_existing, write_file
-from benchtool.errors import UsageError
+from benchtool.errors import BenchtoolError, UsageError
 from benchtool.formats import write_counted, write_npz
 from benchtool.instruments import Order, Recorder
 from benchtool.jobs.acquiring import Enough, acquire, count_periods, named, record
@@ -49,6 +50,9 @@ def run_acquisition(
     several = enough.captures > 1 or (enough.periods is not None and "::" in wanted.resource)
     for name in (first := _numbered(path, 1, several=several), _beside(first)):
         refuse_existing(name, force=output.force)
+    if kind_of(wanted.resource) == "file":
+        raise _no_source(wanted.resource)
+    _refuse_unwritable(path.parent)
     tell_cautions(output)
     written: list[dict[str, Any]] = []
     with _opened(wanted, order, enough, output) as (found, captures):
@@ -70,16 +74,41 @@ def run_acquisition(
     output.tell_written([item["file"] for item in written], "benchtool measure")
 
 
+def _refuse_unwritable(folder: Path) -> None:
+    """Refuse a folder that cannot take the files: after a first pulse it would be too late."""
+    if not folder.is_dir():
+        what = "there is no such folder"
+    elif not os.access(folder, os.W_OK | os.X_OK):
+        what = "nothing may be written there"
+    else:
+        return
+    raise UsageError(
+        f"{folder}: {what}",
+        hint="Nothing was armed. Make the folder, or name another one with -o.",
+        code="not-writable",
+    )
+
+
+def _no_source(name: str) -> UsageError:
+    """Return the error to raise for a file in place of something live."""
+    if name == "-" or not Path(name).is_dir():
+        return UsageError(
+            f"{'standard input' if name == '-' else name} is no instrument and no port",
+            hint=f"Measure a file: benchtool measure {name}, or follow it: benchtool watch {name}.",
+            code="already-a-file",
+        )
+    return UsageError(
+        f"{name} is a folder",
+        hint="Give a resource or a serial port; `benchtool instruments list` shows what is "
+        "connected.",
+        code="no-such-source",
+    )
+
+
 @contextmanager
 def _opened(wanted: Wanted, order: Order, enough: Enough, output: Output) -> Iterator[Run]:
     """Open the source; yield how captures are taken, and the captures with their periods."""
     kind, taken = kind_of(wanted.resource), Taken(source=wanted.resource, kept=wanted.kept)
-    if kind == "file":
-        raise UsageError(
-            f"{wanted.resource} is a file already",
-            hint=f"Measure it: benchtool measure {wanted.resource}, or follow it: benchtool watch.",
-            code="already-a-file",
-        )
     if kind == "stream":
         with closing(open_recorder(wanted)) as stream:
             yield taken, _recorded(stream, enough, output)
@@ -131,9 +160,13 @@ def _write(
         made_at=made_at(),
     )
     document = acquisition_document(taken, saved)
-    write_file(path, data, force=output.force)
     text = json.dumps(document, indent=1, ensure_ascii=False) + "\n"
-    write_file(_beside(path), text.encode(), force=output.force)
+    write_file(path, data, force=output.force)
+    try:
+        write_file(_beside(path), text.encode(), force=output.force)
+    except BenchtoolError:  # a capture that nothing is known of would be half a file
+        path.unlink(missing_ok=True)
+        raise
     for notice in capture.warnings:
         _say(output, f"warning: {notice.text}")
     _say(output, f"{path}: {_held(capture, periods)}")

@@ -9,6 +9,8 @@ from typing import Any
 
 import click
 
+from benchtool.errors import UsageError
+
 _LIVE = (
     click.option("--dialect", metavar="NAME", help="Dialect of the instrument, by name or file."),
     click.option("--lines", metavar="FILE", help="Description of a logger's lines."),
@@ -47,4 +49,14 @@ def _kept(source: str) -> Any:
     from benchtool.cli.kit import instrument_in_kit, user_kit
 
     kit = user_kit()
-    return instrument_in_kit(source) if kit and source in kit.instruments else None
+    if not kit or source not in kit.instruments:
+        return None
+    kept = instrument_in_kit(source)
+    if kept.resource is None:
+        raise UsageError(
+            f"your kit gives no resource for {source!r}",
+            hint=f'Add resource = "TCPIP::192.0.2.7::hislip0::INSTR" or a serial port to '
+            f"[instrument.{source}]; `benchtool instruments list` shows what is connected.",
+            code="no-such-source",
+        )
+    return kept

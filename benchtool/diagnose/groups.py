@@ -108,7 +108,7 @@ def used_names(posterior: Posterior) -> Iterator[str]:
 
 
 def _source(name: str, condition: str) -> str:
-    if condition != "main":
+    if condition != "main" and not name.startswith("node-"):
         return f"the {condition.rpartition(' ')[0]} capture"
     if name in ("t_high", "t_low", "period", "delay"):
         return "the output"

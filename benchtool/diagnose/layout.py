@@ -10,7 +10,13 @@ import numpy as np
 
 from benchtool.circuits import circuit_at, find_topology
 from benchtool.circuits import observations as times
-from benchtool.diagnose.conditions import MAIN, Condition, condition_of, own_axes
+from benchtool.diagnose.conditions import (
+    MAIN,
+    Condition,
+    condition_of,
+    lifted_condition,
+    own_axes,
+)
 from benchtool.diagnose.observables import SORTS, U_MODEL, Observable, View
 from benchtool.diagnose.scatter import Axis, healthy_axes
 from benchtool.errors import SolveError
@@ -22,6 +28,8 @@ from benchtool.model.quantity import Notice
 from benchtool.uncertainty import t_quantile
 
 _NORMAL_K = 1.959964
+_FREED = lifted_condition("node 0")
+"""The board without any probe: a node whose own probe was taken off shows no other either."""
 
 
 @frozen_record(eq=False)
@@ -170,16 +178,18 @@ def _is_bound(reading: Reading, stage: Stage) -> bool:
 
 def _figure(reading: Reading, design: Design) -> Observable:
     name = reading.part or reading.kind
+    condition = _FREED if reading.is_freed else MAIN
     if not SORTS[name].is_log:
         supply_v = design.supply.nominal
-        return Observable(name=name, seen=reading.value / supply_v, u=reading.u / supply_v)
+        seen, u = reading.value / supply_v, reading.u / supply_v
+        return Observable(name=name, condition=condition, seen=seen, u=u)
     if reading.value <= 0:
         raise SolveError(
             f"the reading {reading.name} is {reading.value:g} {reading.unit}; it is greater than 0",
             hint="Check the figure and its unit.",
         )
     seen, u = math.log(reading.value), reading.u / reading.value
-    return Observable(name=name, condition=MAIN, seen=seen, u=u)
+    return Observable(name=name, condition=condition, seen=seen, u=u)
 
 
 def left_out(evidence: Evidence, layout: Layout) -> Iterator[Notice]:

@@ -88,6 +88,9 @@ SHORT: Mapping[str, str] = MappingProxyType(
     }
 )
 
+_LEAST_NAMED = 0.5
+"""Probability from which a fault is named although two at once would do better than most."""
+
 _ENDINGS = {"low": "too small", "high": "too large", "open": "open", "short": "shorted"}
 
 
@@ -131,9 +134,15 @@ def sum_up(
 ) -> str:
     """Return one sentence that says what to do now."""
     best = suspects[0]
-    if not is_single or best.fault in ("unexplained", "two-faults"):
+    doubted = not is_single and best.probability < _LEAST_NAMED
+    if doubted or best.fault in ("unexplained", "two-faults"):
         return _not_single(suspects, proposals)
     sure = percent(best.probability)
+    if not is_single:
+        return (
+            f"Most likely {name_fault(best.fault)} ({sure}), but one fault alone rarely does this: "
+            f"look for a second one too.{_then(proposals)}"
+        )
     if best.fault == "healthy":
         return f"Nothing points to a fault ({sure}): the board does what healthy parts do."
     if is_certain:

@@ -8,6 +8,7 @@ from benchtool.formats.claim import Claim, Format
 from benchtool.formats.reading import FORMATS, read_capture
 
 if TYPE_CHECKING:
+    from benchtool.formats.counted import write_counted
     from benchtool.formats.npz import write_npz
     from benchtool.formats.text.writing import write_text
     from benchtool.formats.vcd.writing import write_vcd
@@ -17,12 +18,14 @@ __all__ = [
     "Claim",
     "Format",
     "read_capture",
+    "write_counted",
     "write_npz",
     "write_text",
     "write_vcd",
 ]
 
 _WRITERS = {
+    "write_counted": "benchtool.formats.counted",
     "write_npz": "benchtool.formats.npz",
     "write_text": "benchtool.formats.text.writing",
     "write_vcd": "benchtool.formats.vcd.writing",

@@ -52,7 +52,9 @@ def sniff(head: bytes, suffix: str) -> Claim:
 
 def _read(content: Content, options: ReadOptions) -> Capture:
     from benchtool.formats.arrays import read_arrays
+    from benchtool.formats.counted import refuse_counted
 
+    refuse_counted(content)
     return read_arrays(content, options)
 
 

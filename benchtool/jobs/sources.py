@@ -68,7 +68,7 @@ def kind_of(resource: str) -> Kind:
         return "instrument"
     if _PORT.fullmatch(resource):
         return "stream"
-    if resource == "-" or Path(resource).exists():
+    if resource and (resource == "-" or Path(resource).exists()):
         return "file"
     raise UsageError(
         f"there is nothing live called {resource!r}",

@@ -64,6 +64,7 @@ class Reading:
         part: Reference of the part, for ``part`` alone.
         way: For a part: ``isolated`` (one leg lifted: its own value), ``at-most`` or ``at-least``
             for a bound, as an ohmmeter in the circuit gives.
+        is_freed: For a figure of the node: whether the load of its own probe was taken off it.
     """
 
     kind: ReadingKind
@@ -72,6 +73,7 @@ class Reading:
     unit: str
     part: str | None = None
     way: PartWay = "isolated"
+    is_freed: bool = False
 
     def __post_init__(self) -> None:
         if not math.isfinite(self.value):

@@ -18,11 +18,12 @@ from benchtool.model.timing import (
 )
 
 if TYPE_CHECKING:
+    from benchtool.model.counted import Counted
     from benchtool.model.design import Design, Rule, Stage
     from benchtool.model.diagnosis import Diagnosis
     from benchtool.model.judgement import Change, Check, Solution, VerdictName
     from benchtool.model.kit import KitInstrument
-    from benchtool.model.node import NodeFit
+    from benchtool.model.node import EarlyTau, NodeFit
     from benchtool.model.overview import Overview
     from benchtool.model.picking import Combinations
     from benchtool.model.window import Window
@@ -102,7 +103,8 @@ class StageResult:
     """All that was found for one stage, or for the one trace measured without a design.
 
     ``trace`` is None where plain figures were given in place of a capture; ``source`` is the
-    index of the file in the analysis. ``likely`` is one sentence that names the likeliest
+    index of the file in the analysis; ``counted`` holds a counter's readings, which have no trace
+    either. ``likely`` is one sentence that names the likeliest
     part; ``edges`` and ``series`` are the edges and the intervals themselves; ``flat`` is set
     where there is no edge.
     """
@@ -128,7 +130,9 @@ class StageResult:
     flat: Flat | None = None
     design: Stage | None = None
     diagnosis: Diagnosis | None = None
+    counted: Counted | None = None
     node: NodeFit | None = None
+    early: EarlyTau | None = None
     combinations: Combinations | None = None
 
 

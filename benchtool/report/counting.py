@@ -2,10 +2,12 @@
 
 from __future__ import annotations
 
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
-from benchtool.model.counted import Counted, Readings
 from benchtool.units import format_value
+
+if TYPE_CHECKING:
+    from benchtool.model.counted import Counted, Readings
 
 TITLE = "counter readings"
 

@@ -17,7 +17,6 @@ from benchtool.model.result import (
     TraceFacts,
 )
 from benchtool.model.timing import Jitter, Levels, StabilityPoint, Timing
-from benchtool.report.counting import counted_document
 from benchtool.report.diagnosis import combination_parts, diagnosis_parts, early_parts
 from benchtool.report.sources import instrument_document, source_document
 from benchtool.uncertainty import coverage_factor
@@ -133,6 +132,8 @@ def _result(item: StageResult, parts: tuple[str, ...], several: bool) -> Json:
         if name in _MAKERS and (item.trace is not None or counted or name not in _OF_TRACE):
             made[name] = _MAKERS[name](item)
     if item.counted is not None:
+        from benchtool.report.counting import counted_document
+
         made["counted"] = counted_document(item.counted)
     if item.changes:
         made["changes"] = [_change(change) for change in item.changes]

@@ -28,6 +28,13 @@ def resource_of(name: str) -> str:
     kit = user_kit()
     if kit and name in kit.instruments:
         return instrument_in_kit(name).resource or name
+    if name.startswith("/dev/") or name.upper().startswith("COM"):
+        raise UsageError(
+            f"{name!r} is a serial port, and no resource",
+            hint=f"An instrument at a serial port is ASRL{name}::INSTR. One that sends edges by "
+            f"itself is not asked: benchtool watch {name}.",
+            code="no-such-source",
+        )
     raise UsageError(
         f"{name!r} is neither a resource nor an instrument of your kit",
         hint="Give a resource such as TCPIP::192.0.2.7::hislip0::INSTR; "
@@ -37,10 +44,13 @@ def resource_of(name: str) -> str:
 
 
 def exchange_log(path: str | None) -> Any:
-    """Return the log of an exchange as a context; of nothing where no file is named."""
+    """Return the log of an exchange, with whole answers so that it can be played back, as a context.
+
+    Of nothing where no file is named.
+    """
     from contextlib import nullcontext
 
     from benchtool_drivers.link import ExchangeLog
 
-    found: ExchangeLog | nullcontext[None] = ExchangeLog(Path(path)) if path else nullcontext()
+    found: ExchangeLog | nullcontext[None] = ExchangeLog(Path(path), whole=True) if path else nullcontext()
     return found

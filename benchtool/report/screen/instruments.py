@@ -153,6 +153,11 @@ def draw_summary(console: Console, row: Row, notices: Sequence[Notice]) -> None:
 
 
 def _of_trace(trace: Row) -> str:
+    if "per" in trace:
+        least, greatest = (value_text(trace[key], trace["unit"]) for key in ("least", "greatest"))
+        each = "one interval" if trace["per"] == "interval" else "an average over a gate"
+        count = f"{trace['channel']}: {trace['samples']} readings"
+        return f"{count}, {least} to {greatest}, each {each}"
     dt_s = trace["sample_interval_s"]
     spaced = "with a time each"
     if dt_s:

@@ -19,6 +19,7 @@ from benchtool.report.screen.blocks import (
     draw_rows,
 )
 from benchtool.report.screen.measured import draw_timing, trace_line, trace_title
+from benchtool.report.suspicion import early_rows
 from benchtool.units import format_value
 
 _WITHIN = {True: "within tolerance", False: "OUT OF TOLERANCE", None: "not decided"}
@@ -27,11 +28,16 @@ _WITHIN = {True: "within tolerance", False: "OUT OF TOLERANCE", None: "not decid
 def draw_solved(console: Console, analysis: Analysis) -> None:
     """Draw the times and the products they give."""
     for result in analysis.results:
-        of_trace = "" if result.trace is None and result.counted is None else file_name(analysis, result)
+        of_trace = (
+            "" if result.trace is None and result.counted is None else file_name(analysis, result)
+        )
         draw_heading(console, f"{trace_title(result)}{_circuit(result)}", of_trace)
         draw_line(console, trace_line(result), "dim")
         console.print()
-        draw_timing(console, result)
+        if result.early is not None:
+            draw_rows(console, early_rows(result.early))
+        else:
+            draw_timing(console, result)
         draw_products(console, result)
         draw_notes(console, analysis, result)
     if analysis.sources:

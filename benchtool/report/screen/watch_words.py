@@ -12,7 +12,7 @@ from benchtool.units import format_measured, format_value
 HINTS: dict[Heading, str] = {
     "unmoved": "turn a little: which way it goes is not known until it moved",
     "unclear": "it moved by less than U: turn further, or wait for more readings",
-    "towards": "it moved towards the goal: turn on",
+    "towards": "it moved towards the goal: keep turning",
     "past": "it went past the goal: turn back",
     "away": "it moved away from the goal: turn back",
     "there": "at the goal, within U",

@@ -6,7 +6,7 @@ import hashlib
 import re
 import time
 from collections.abc import Callable
-from typing import Literal
+from typing import Literal, NamedTuple
 
 import numpy as np
 
@@ -28,6 +28,14 @@ from benchtool_drivers.digitiser.talk import Talk, Tell
 from benchtool_drivers.link import ExchangeLog, Link
 
 _Gate = tuple[Literal["interval", "gate"], float | None]
+
+
+class _Run(NamedTuple):
+    """What one run gave: readings, what was noticed, the hash of all that came."""
+
+    readings: dict[CountedName, Readings]
+    notices: tuple[Notice, ...]
+    sha256: str
 
 
 class Counter:
@@ -120,36 +128,48 @@ class Counter:
                 code="counter-delivers-edges",
             )
         channel, names = self._channel(order), self._asked(order)
-        n = order.readings or self._body.take.n
-        digest, start_ns = hashlib.sha256(), time.time_ns()
+        start_ns = time.time_ns()
         with self._session.run(order, channel) as notices:
             resolution_s = self._resolution(channel)
             found, unread = self._settings.read((channel,))
-            told = self._counted_so_far(progress, n * max(len(names), 1))
-            readings: dict[CountedName, Readings] = {}
-            own: list[Notice] = []
-            for k, name in enumerate(names):
-                batch = Batch(channel=channel, function=self._body.functions[name].word, n=n)
-                raw = take(self._talk, batch, order, told(k * n), armed if k == 0 else None)
-                digest.update(raw.tobytes())
-                readings[name] = self._readings(name, raw, channel, own)
-            if self._body.stamps is not None:
+            if self._body.stamps is None:
+                run = self._count_functions(names, channel, order, progress, armed)
+            else:
                 stamped = read_stamps(self._talk, channel, order, resolution_s, progress, armed)
-                digest.update(stamped.raw)
-                readings["period"] = periods_of(stamped, self._talk)
-                own += stamped.notices
+                periods = periods_of(stamped, self._talk)
+                run = _Run({"period": periods}, stamped.notices, _sha256(stamped.raw))
         return Counted(
             source=self.resource,
             identity=self.identity,
             dialect=self.dialect,
             channel=channel,
-            readings=readings,
+            readings=run.readings,
             resolution_s=resolution_s,
             start_ns=start_ns,
-            sha256=digest.hexdigest(),
+            sha256=run.sha256,
             settings=tuple((point.evidence, point.value) for point in found),
-            warnings=tuple(dict.fromkeys((*notices, *unread, *own))),
+            warnings=tuple(dict.fromkeys((*notices, *unread, *run.notices))),
         )
+
+    def _count_functions(
+        self,
+        names: tuple[CountedName, ...],
+        channel: str,
+        order: Order,
+        progress: Progress | None,
+        armed: Armed | None,
+    ) -> _Run:
+        """Take the readings of one function after the other."""
+        n, content = order.readings or self._body.take.n, b""
+        told = _parts_of(progress, n * len(names))
+        readings: dict[CountedName, Readings] = {}
+        notices: list[Notice] = []
+        for k, name in enumerate(names):
+            batch = Batch(channel=channel, function=self._body.functions[name].word, n=n)
+            raw = take(self._talk, batch, order, told(k * n), armed if k == 0 else None)
+            content += raw.tobytes()
+            readings[name] = self._readings(name, raw, channel, notices)
+        return _Run(readings, tuple(notices), _sha256(content))
 
     def acquire(
         self, order: Order, *, progress: Progress | None = None, armed: Armed | None = None
@@ -216,14 +236,6 @@ class Counter:
             )
         return tuple(name for name in self.functions if name in order.functions)
 
-    def _counted_so_far(
-        self, progress: Progress | None, total: int
-    ) -> Callable[[int], Progress | None]:
-        """Return the progress of one function, as a part of all."""
-        if progress is None:
-            return lambda _behind: None
-        return lambda behind: lambda done, _of: progress(behind + done, total)
-
     def _readings(
         self, name: CountedName, raw: AnyArray, channel: str, own: list[Notice]
     ) -> Readings:
@@ -268,3 +280,14 @@ class Counter:
                 code="impossible-reading",
             )
         return step_s
+
+
+def _parts_of(progress: Progress | None, total: int) -> Callable[[int], Progress | None]:
+    """Return the progress of one function, as a part of all, from how many are behind."""
+    if progress is None:
+        return lambda _behind: None
+    return lambda behind: lambda done, _of: progress(behind + done, total)
+
+
+def _sha256(content: bytes) -> str:
+    return hashlib.sha256(content).hexdigest()

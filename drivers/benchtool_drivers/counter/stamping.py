@@ -18,6 +18,8 @@ _NEAR = 0.05
 """Share of a period within which a long interval counts as whole periods: jitter of a timer is far
 below, and a real long interval seldom there."""
 
+_LEAST_NEAR = 1e-3  # however little the periods scatter in a short record
+
 _LEAST = 5  # stamps from which there is a usual period to hold intervals against
 
 
@@ -122,21 +124,33 @@ def _missed_in_turn(times_s: FloatArray) -> tuple[np.ndarray, int]:
     period_s = _middle(times_s[2:] - times_s[:-2])
     short_s = _middle(np.minimum(gaps_s[1:], gaps_s[:-1]))
     long = gaps_s > period_s - short_s / 2
+    near = _tolerance((times_s[2:] - times_s[:-2])[~(long[1:] | long[:-1])] / period_s)
     for k in np.flatnonzero(long):
         before = k > 0 and not long[k - 1]
         due_s = [period_s - gaps_s[k - 1]] if before else [short_s, period_s - short_s]
-        odd = _whole(gaps_s[k] / period_s)
-        even = max(_whole((gaps_s[k] - item) / period_s) for item in due_s)
-        if odd and even:
+        odd = _whole(gaps_s[k] / period_s, near)
+        even = max(_whole((gaps_s[k] - item) / period_s, near) for item in due_s)
+        if odd and (even or k == 0):  # a first pulse can be as long as a period
             return missed, int(k) + 1
         missed[k] = 2 * odd - 1 if odd else 2 * even
     return missed, times_s.size
 
 
-def _whole(periods: float) -> int:
+def _tolerance(periods: FloatArray) -> float:
+    """Return how near to whole periods an interval must be, as a share of one.
+
+    Args:
+        periods: Periods between which nothing is missing, over the usual one.
+    """
+    if not periods.size:
+        return _NEAR
+    return min(_NEAR, 2 * float(np.abs(periods - 1).max()) + _LEAST_NEAR)
+
+
+def _whole(periods: float, near: float) -> int:
     """Return the whole number of periods that an interval is near, 0 where it is near none."""
     whole = round(periods)
-    return whole if whole >= 1 and abs(periods - whole) < _NEAR else 0
+    return whole if whole >= 1 and abs(periods - whole) < near else 0
 
 
 def _middle(values: FloatArray) -> float:
@@ -147,6 +161,4 @@ def _middle(values: FloatArray) -> float:
 def _pieces(breaks: BoolArray) -> tuple[Piece, ...]:
     """Return the pieces between the gaps; ``breaks`` has one less than there are stamps."""
     bounds = [0, *(np.flatnonzero(breaks) + 1).tolist(), breaks.size + 1]
-    return tuple(
-        Piece(start=first, stop=stop) for first, stop in pairwise(bounds)
-    )
+    return tuple(Piece(start=first, stop=stop) for first, stop in pairwise(bounds))

@@ -194,6 +194,14 @@ _WHOLE = Key(
 _INCLUSIVE = Key(
     take=flag, default=True, meaning="whether {stop} is still part of the window", example="false"
 )
+_UNIT = Key(
+    take=choice("samples", "bytes"),
+    default="samples",
+    meaning="what {start}, {stop}, {offset} and {count} number",
+    example='"bytes"',
+)
+_WINDOWED = {"total": _TOTAL, "first": _FIRST, "unit": _UNIT}
+_CHOSEN = {"set": _SET, "join": _JOIN, "whole": _WHOLE, "max_points": _MOST}
 
 CHUNK = Forms(
     tag="by",
@@ -201,33 +209,11 @@ CHUNK = Forms(
     forms={
         "none": table(ChunkKeys, {"by": "none"}, total=_TOTAL),
         "start-stop": table(
-            ChunkKeys,
-            {"by": "start-stop"},
-            total=_TOTAL,
-            first=_FIRST,
-            inclusive=_INCLUSIVE,
-            set=_SET,
-            join=_JOIN,
-            whole=_WHOLE,
-            max_points=_MOST,
+            ChunkKeys, {"by": "start-stop"}, **_WINDOWED, inclusive=_INCLUSIVE, **_CHOSEN
         ),
-        "offset-count": table(
-            ChunkKeys,
-            {"by": "offset-count"},
-            total=_TOTAL,
-            first=_FIRST,
-            set=_SET,
-            join=_JOIN,
-            whole=_WHOLE,
-            max_points=_MOST,
-        ),
+        "offset-count": table(ChunkKeys, {"by": "offset-count"}, **_WINDOWED, **_CHOSEN),
         "query-args": table(
-            ChunkKeys,
-            {"by": "query-args"},
-            total=_TOTAL,
-            first=_FIRST,
-            inclusive=_INCLUSIVE,
-            max_points=_MOST,
+            ChunkKeys, {"by": "query-args"}, **_WINDOWED, inclusive=_INCLUSIVE, max_points=_MOST
         ),
         "pages": table(
             ChunkKeys,

@@ -69,7 +69,7 @@ _EXTRA = {
     "units": Key(
         take=mapping(choice(*FIELD_UNITS)),
         default={},
-        meaning="units of fields that are not in s, V, Hz",
+        meaning="units of fields that are bare numbers and not in s, V, Hz",
         example='{ dt = "ns" }',
     ),
 }
@@ -166,6 +166,12 @@ PREAMBLE = Forms(
                 take=either((list, listing(some_text, least=1)), (object, _KEYS.take)),
                 meaning="fields with their keys, or a list of them in their order",
                 example='{ points = "NPT", dt = "TINT" }',
+            ),
+            ends=Key(
+                take=text,
+                default="",
+                meaning="what stands between the text and samples that are printed too",
+                example='":"',
             ),
         ),
         "dif": _form("dif"),

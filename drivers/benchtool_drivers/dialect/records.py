@@ -215,6 +215,7 @@ class ChunkKeys:
     by: str
     total: str = ""
     first: int = 0
+    unit: str = "samples"
     inclusive: bool = True
     set: tuple[str, ...] = ()
     join: bool = False

@@ -11,7 +11,7 @@ from benchtool_drivers.dialect.vocabulary import FIELDS, X_FORMS, Y_FORMS
 
 _MUST_HOLD = {
     "start-stop": {"start", "stop"},
-    "offset-count": {"offset", "count"},
+    "offset-count": {"offset"},
     "query-args": set[str](),
     "pages": {"n"},
 }
@@ -111,6 +111,17 @@ def _of_windows(body: DigitiserKeys) -> Iterator[Flaw]:
     if missing:
         words = listed(f"{{{word}}}" for word in sorted(missing, reverse=True))
         yield Flaw(path=place, message=f"{chunk.by} needs {words} in its commands")
+    if chunk.by == "offset-count" and "count" not in used and chunk.max_points is None:
+        yield Flaw(
+            path=place,
+            message="without {count} in its commands max_points says how many samples one "
+            "transfer brings",
+        )
+    if chunk.unit == "bytes" and (isinstance(data.dtype, Lookup) or data.dtype == "ascii"):
+        yield Flaw(
+            path=("chunk", "unit"),
+            message='bytes need one fixed type of a sample: dtype in [data], such as "i2"',
+        )
     yield from _of_lengths(body)
 
 
@@ -145,8 +156,16 @@ def _of_wraps(body: DigitiserKeys) -> Iterator[Flaw]:
 def _of_leads(body: DigitiserKeys) -> Iterator[Flaw]:
     """A text before the block needs a block with a count; some preambles need that text."""
     data, kind = body.data, body.preamble.kind
-    if data.lead and data.wrap in ("ascii", "hex"):
-        yield Flaw(path=("data", "lead"), message="goes with a block, and not with a text")
+    printed = data.wrap in ("ascii", "hex")
+    if data.lead and printed and kind != "lead-text":
+        yield Flaw(
+            path=("data", "lead"), message='goes with a block, or with kind = "lead-text" in [preamble]'
+        )
+    if kind == "lead-text" and printed and not body.preamble.ends:
+        yield Flaw(
+            path=("preamble", "ends"),
+            message="is missing: what stands between the figures and printed samples",
+        )
     if kind == "lead-text" and not data.lead:
         yield Flaw(path=("preamble", "kind"), message="needs lead = true in [data]")
     if kind == "dif" and not data.lead and data.wrap != "ascii":

@@ -51,11 +51,29 @@ class Fetch:
         data, link = self._body.data, self._talk.link
         if data.wrap in ("ascii", "hex"):
             content = self._plain(link.ask_text_list(command, progress=progress))
-            return content.decode("latin-1") if self._body.preamble.kind == "dif" else "", content
+            return self._parted(command, content)
         given: Any = {"wrap": data.wrap, "trailer": data.trailer, "length_unit_bytes": unit_bytes}
         if data.lead:
             return link.ask_led_block(command, n_bytes=n_bytes, progress=progress, **given)
         return "", link.ask_block(command, n_bytes=n_bytes, progress=progress, **given)
+
+    def _parted(self, command: str, content: bytes) -> tuple[str, bytes]:
+        """Return the figures that lead a printed record, and its samples."""
+        preamble = self._body.preamble
+        if preamble.kind == "dif":
+            return content.decode("latin-1"), content
+        if preamble.kind != "lead-text":
+            return "", content
+        lead, mark, samples = content.partition(preamble.ends.encode("ascii"))
+        if not mark:
+            raise self._talk.wrong(
+                f"the answer holds no {preamble.ends!r} after its figures",
+                hint="Compare ends in [preamble] with the manual.",
+                command=command,
+                expected=repr(preamble.ends),
+                got=repr(content[:24]),
+            )
+        return lead.decode("latin-1"), samples
 
     def _plain(self, content: bytes) -> bytes:
         """Take the header off a long text."""
@@ -86,7 +104,7 @@ class Fetch:
     def _query(self, window: Window) -> str:
         """Return the query of a window, after choosing it; one message where they are joined."""
         chunk: ChunkKeys = self._body.chunk
-        values = {"channel": self._channel, **placeholders(window, chunk)}
+        values = {"channel": self._channel, **self._placeholders(window)}
         query = self._body.data.query.format(**values)
         if not chunk.set:
             return query
@@ -100,8 +118,14 @@ class Fetch:
     def choose(self, window: Window) -> None:
         """Choose a window by commands."""
         chunk: ChunkKeys = self._body.chunk
-        values = placeholders(window, chunk)
+        values = self._placeholders(window)
         self._talk.send(chunk.set, "choose the window", channel=self._channel, **values)
+
+    def _placeholders(self, window: Window) -> dict[str, int]:
+        dtype = self._body.data.dtype
+        sized = isinstance(dtype, str) and dtype != "ascii"
+        point_bytes = self._per_point * (int(str(dtype)[1:]) if sized else 1)
+        return placeholders(window, self._body.chunk, point_bytes)
 
 
 def _joined(commands: list[str]) -> str:

@@ -7,7 +7,7 @@ from collections.abc import Mapping
 
 from benchtool_drivers.dialect.records import Lookup
 from benchtool_drivers.dialect.vocabulary import FIELD_UNITS, FIELDS
-from benchtool_drivers.digitiser.numerals import is_whole
+from benchtool_drivers.digitiser.numerals import has_unit, is_whole
 from benchtool_drivers.digitiser.talk import Talk
 
 
@@ -45,6 +45,15 @@ class Fields:
         value = self._talk.number(text, self._called(name), self._command)
         if not math.isfinite(value) or abs(value) >= 9e36:
             raise self._unfit(name, "a finite number")
+        if name in self._units and has_unit(text):
+            raise self._talk.wrong(
+                f"{self._called(name)} is {text!r}, with a unit of its own",
+                hint=f"Take {name} out of units in [preamble]: units are for bare numbers.",
+                command=self._command,
+                expected="a number without a unit",
+                got=text,
+                code="bad-preamble",
+            )
         return value * FIELD_UNITS[self._units.get(name, "1")]
 
     def above_zero(self, name: str) -> float:

@@ -39,6 +39,17 @@ class Told:
 Tell = Callable[[Told], None]
 
 
+_BUSY = (
+    "It is busy with an acquisition of its own: stop it at its front, or wait for its end, and "
+    "try again."
+)
+"""What helps after -213, Init ignored (SCPI-1999, volume 2, SYSTem:ERRor)."""
+_REFUSED = (
+    "Compare the commands of the dialect with the manual: `benchtool instruments try` shows each "
+    "one."
+)
+
+
 class Speaker(Protocol):
     """What is needed of a link."""
 
@@ -181,8 +192,8 @@ class Talk:
         if entries:
             raise RefusedError(
                 f"after {after} the instrument reports {'; '.join(entries)}",
-                hint="Nothing was kept of this record. Compare the commands of the dialect with "
-                "the manual: `benchtool instruments try` shows each one.",
+                hint="Nothing was kept of this record. "
+                + (_BUSY if entries[0].startswith("-213") else _REFUSED),
                 step=self.step(after, expected="an empty error queue", got="; ".join(entries)),
             )
 

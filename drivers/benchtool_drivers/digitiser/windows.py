@@ -29,13 +29,21 @@ def plan_windows(n_points: int, most: int | None) -> Iterator[Window]:
         yield Window(offset=offset, count=min(step, n_points - offset), n=n)
 
 
-def placeholders(window: Window, chunk: ChunkKeys) -> dict[str, int]:
-    """Return what stands in place of the words between braces."""
-    start = chunk.first + window.offset
+def placeholders(window: Window, chunk: ChunkKeys, point_bytes: int) -> dict[str, int]:
+    """Return what stands in place of the words between braces.
+
+    Args:
+        window: The piece.
+        chunk: How pieces are numbered.
+        point_bytes: Bytes of one point of the record, where pieces are numbered in bytes.
+    """
+    step = point_bytes if chunk.unit == "bytes" else 1
+    start = chunk.first + window.offset * step
+    count = window.count * step
     return {
         "start": start,
-        "stop": start + window.count - (1 if chunk.inclusive else 0),
+        "stop": start + count - (1 if chunk.inclusive else 0),
         "offset": start,
-        "count": window.count,
+        "count": count,
         "n": chunk.first + window.n,
     }

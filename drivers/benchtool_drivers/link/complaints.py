@@ -10,7 +10,14 @@ from benchtool.errors import (
     ReplyError,
     Step,
 )
+from benchtool_drivers.link.addresses import unknown_host
 from benchtool_drivers.link.foreign import ours
+from benchtool_drivers.link.intake import FIRST_BYTES
+from benchtool_drivers.link.text import printable
+
+_LONGEST_PROMPT = 16
+_LONGEST_QUOTED = 80
+_FEW_BYTES = 24
 
 HINTS: dict[type[InstrumentError], str] = {
     NotConnectedError: "Check that it is on and that its cable is in, and try again.",
@@ -50,11 +57,35 @@ def unreachable(error: BaseException, resource: str) -> InstrumentError:
             hint=HINTS[DriverMissingError],
             step=step,
         )
+    host = unknown_host(resource)
     return NotConnectedError(
-        f"{resource} cannot be reached: {_first_line(error)}.",
-        hint="Check the resource string, that the instrument is on and that its cable is in.",
+        f"{resource} cannot be reached: "
+        + (_first_line(error) if host is None else f"no address is known for the name {host}")
+        + ".",
+        hint="Check the resource string, that the instrument is on and that its cable is in."
+        if host is None
+        else "Check how the name is written, or give the instrument's number, such as 192.0.2.7.",
         step=step,
     )
+
+
+def too_much(rest: bytes) -> ReplyError:
+    """Return the error to raise where more came than one answer; an unended rest may be a prompt."""
+    prompt = rest.decode("latin-1")
+    looks_so = 0 < len(prompt) <= _LONGEST_PROMPT and prompt.isprintable()
+    return ReplyError(
+        f"More came than one answer: {printable(rest)}.",
+        hint=f"Is it what the instrument prints when it is ready? Say so in the dialect: prompt = "
+        f'"{prompt}" in its [link] table. Else an earlier answer came late: try again.'
+        if looks_so
+        else "An answer to an earlier command may have come late: try again.",
+    )
+
+
+def beginning(got: bytes) -> str:
+    """Return what came as a message quotes it: all of a short text, little of anything else."""
+    whole = printable(got[:FIRST_BYTES])
+    return whole if len(whole) <= _LONGEST_QUOTED else f"{printable(got[:_FEW_BYTES])}.."
 
 
 def _sentence(kind: type[InstrumentError], error: BaseException, step: Step, n_bytes: int) -> str:

@@ -8,7 +8,8 @@ from contextlib import suppress
 from typing import TypeVar
 
 from benchtool.errors import NotConnectedError, ReplyError, Step
-from benchtool_drivers.link.complaints import complaint, unreachable
+from benchtool_drivers.link.addresses import check_resource
+from benchtool_drivers.link.complaints import beginning, complaint, too_much, unreachable
 from benchtool_drivers.link.connecting import connect
 from benchtool_drivers.link.exchange import ExchangeLog
 from benchtool_drivers.link.intake import FIRST_BYTES, Intake
@@ -119,10 +120,7 @@ class Conversation:
         else:
             rest = bool(intake.held) or intake.wire.unasked()
         if rest and not leave_rest:
-            raise ReplyError(
-                f"More came than one answer: {printable(bytes(intake.held[:FIRST_BYTES]))}.",
-                hint="An answer to an earlier command may have come late: try again.",
-            )
+            raise too_much(bytes(intake.held[:FIRST_BYTES]))
         return rest
 
     def _failure(
@@ -133,7 +131,7 @@ class Conversation:
             resource=self.resource,
             command=command,
             expected=expected,
-            got=printable(intake.kept[:FIRST_BYTES]) or NOTHING,
+            got=beginning(intake.kept) or NOTHING,
             last_good=self.last_good,
         )
         wrong = complaint(error, step, intake.n_bytes)
@@ -228,6 +226,7 @@ class Conversation:
 
 
 def _connected(resource: str, settings: LinkSettings) -> Wire:
+    check_resource(resource)
     try:
         return connect(resource, settings.timeout_s, settings.baud)
     except Exception as error:

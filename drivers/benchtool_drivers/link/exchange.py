@@ -28,6 +28,7 @@ from __future__ import annotations
 import base64
 import json
 import time
+from contextlib import suppress
 from datetime import UTC, datetime
 from pathlib import Path
 from types import TracebackType
@@ -116,6 +117,7 @@ class ExchangeLog:
 
     def __init__(self, path: Path | str, *, whole: bool = False) -> None:
         self.whole = whole
+        self._path = path
         try:
             self._file = Path(path).open("a", encoding="utf-8")  # noqa: SIM115 - closed by close()
         except OSError as error:
@@ -170,12 +172,20 @@ class ExchangeLog:
         self._put({"at_s": at_s, "resource": resource, "note": text})
 
     def _put(self, line: dict[str, Any]) -> None:
-        self._file.write(json.dumps(line, ensure_ascii=True) + "\n")
-        self._file.flush()
+        try:
+            self._file.write(json.dumps(line, ensure_ascii=True) + "\n")
+            self._file.flush()
+        except OSError as error:
+            raise InputError(
+                f"The log {self._path} cannot be written: {error.strerror}.",
+                hint="Choose another file for the log; captures written before stand.",
+                code="not-writable",
+            ) from error
 
     def close(self) -> None:
-        """Close the file."""
-        self._file.close()
+        """Close the file; what a full disk keeps it from writing was told before."""
+        with suppress(OSError):
+            self._file.close()
 
     def __enter__(self) -> ExchangeLog:
         return self

@@ -29,6 +29,11 @@ from benchtool_drivers.link.wire import Patience
 N_QUEUE = 32
 """More entries than an error queue has: one that never empties is not read for ever."""
 
+_NO_QUEUE = (
+    "This is the query for errors. The manual names another one, or none: error_query in the "
+    'dialect\'s [link] table, error_query = "" for none.'
+)
+
 T = TypeVar("T")
 
 
@@ -234,7 +239,11 @@ class Link:
         query = self.settings.error_query
         found: list[str] = []
         while query is not None and len(found) < N_QUEUE:
-            entry = self.ask(query)
+            try:
+                entry = self.ask(query)
+            except InstrumentTimeoutError as silence:
+                silence.hint = _NO_QUEUE
+                raise
             if re.search(self.settings.error_none, entry):
                 break
             found.append(entry.strip())

@@ -15,6 +15,7 @@ from benchtool.frozen import frozen_record
 from benchtool.model.capture import Capture
 from benchtool.model.design import Design, Stage
 from benchtool.simulation import Acquisition, Injected, simulate
+from benchtool_drivers.loopback.families.counting import Beat
 
 
 @frozen_record
@@ -86,19 +87,25 @@ class SimulatedBoard:
         capture, _ = simulate(self.circuit(elapsed_s), self._acquisition, self._rng)
         return capture
 
+    def beat(self, elapsed_s: float) -> Beat | None:
+        """Return how its output goes high and low by then; None where it stands still."""
+        times = predict(replace(self.circuit(elapsed_s), divide=1))
+        t_high, t_low = float(times.t_high or math.nan), float(times.t_low or math.nan)
+        if not math.isfinite(t_high + t_low):
+            return None
+        clock = 1 + self._acquisition.timebase_rel
+        return Beat(
+            t_high=t_high * clock, t_low=t_low * clock, jitter_rel=self._acquisition.jitter_rel
+        )
+
     def edges(self) -> Iterator[tuple[float, bool]]:
         """Yield the output's edges for ever: seconds since the start, and the state after each.
 
         A board that stands still yields none.
         """
         now_s = 0.0
-        while True:
-            times = predict(replace(self.circuit(now_s), divide=1))
-            t_high, t_low = float(times.t_high or math.nan), float(times.t_low or math.nan)
-            if not math.isfinite(t_high + t_low):
-                return
-            own = 1 + self._acquisition.jitter_rel * self._rng.standard_normal()
-            clock = own * (1 + self._acquisition.timebase_rel)
+        while (beat := self.beat(now_s)) is not None:
+            own = 1 + beat.jitter_rel * self._rng.standard_normal()
             yield now_s, True
-            yield now_s + t_high * clock, False
-            now_s += (t_high + t_low) * clock
+            yield now_s + beat.t_high * own, False
+            now_s += (beat.t_high + beat.t_low) * own

@@ -16,6 +16,7 @@ from benchtool_drivers.loopback.board import SimulatedBoard
 from benchtool_drivers.loopback.edge_printer import DeviceForm, Printer
 from benchtool_drivers.loopback.edge_stream import EdgeDevice
 from benchtool_drivers.loopback.families import FAMILIES, make_family
+from benchtool_drivers.loopback.families.counters import COUNTERS, Beat
 from benchtool_drivers.loopback.serving import serve_forever
 
 WAYS = {"tcp": "socket", "hislip": "hislip", "pty": ""}
@@ -28,7 +29,7 @@ class Offer:
 
     Attributes:
         way: One of ``WAYS``.
-        family: Structure that the instrument speaks, one of ``FAMILIES``.
+        family: Structure that the instrument speaks, one of ``FAMILIES`` or ``COUNTERS``.
         port: TCP port, 0 for a free one.
         pace: Seconds of the board in a second of time, of edge lines.
         tick_hz: Ticks in a second, of edge lines.
@@ -56,10 +57,13 @@ def offer_board(board: SimulatedBoard, offer: Offer, announce: Callable[[str], N
     if offer.way == "pty":
         _offer_edges(board, offer, announce)
         return
+    if offer.family in COUNTERS:
+        _offer_counter(board, offer, announce)
+        return
     if offer.family not in FAMILIES:
         raise UsageError(
             f"no simulated instrument speaks as {offer.family!r}",
-            hint=f"One of {', '.join(FAMILIES)}.",
+            hint=f"One of {', '.join((*FAMILIES, *COUNTERS))}.",
             code="no-such-family",
         )
     start_s = time.monotonic()
@@ -74,6 +78,24 @@ def offer_board(board: SimulatedBoard, offer: Offer, announce: Callable[[str], N
             "an instrument shows waveforms", hint="Leave out --kind, or use --serve pty for edges."
         )
     subject = make_family(offer.family, volts=volts, dt_s=first.time.dt_s)
+    serve_forever(subject, WAYS[offer.way], announce, port=offer.port)
+
+
+def _offer_counter(board: SimulatedBoard, offer: Offer, announce: Callable[[str], None]) -> None:
+    """Offer a counter that looks at the board; its readings take no time."""
+    start_s = time.monotonic()
+
+    def beat() -> Beat:
+        found = board.beat(time.monotonic() - start_s)
+        if found is None:
+            raise UsageError(
+                "this board stands still: a counter sees no edge of it",
+                hint="Choose a fault with which it runs.",
+                code="no-edges-to-send",
+            )
+        return found
+
+    subject = COUNTERS[offer.family](beat, tick_s=1 / offer.tick_hz)
     serve_forever(subject, WAYS[offer.way], announce, port=offer.port)
 
 

@@ -3,7 +3,9 @@
 from __future__ import annotations
 
 import errno
+import re
 import select
+import socket
 import time
 from typing import Any
 
@@ -20,6 +22,11 @@ _REASONS = {
         "ask for permission to use serial ports (on Linux the group that owns the port)",
     ),
     errno.EBUSY: ("another program has it open", "close the other program"),
+    errno.ENOTTY: ("it is no serial port", "see how the port is named: benchtool instruments list"),
+    socket.EAI_NONAME: (
+        "no address is known for that name",
+        "check how the name is written, or give its number, such as 192.0.2.7",
+    ),
     errno.ECONNREFUSED: ("nobody answers there", "see that the other end listens"),
 }
 
@@ -136,11 +143,19 @@ def _url(name: str) -> str:
     if name.upper().startswith("ASRL") and name.upper().endswith("::INSTR"):
         bare = name[4:-7]
         return f"COM{bare}" if bare.isdigit() else bare
+    if name.startswith(("socket://", "rfc2217://")) and not re.search(r":\d+(?:[/?].*)?$", name):
+        raise UsageError(
+            f"{name} names no port",
+            hint="Write its number at the end: socket://192.0.2.9:7000.",
+        )
     return name
 
 
 def _not_opened(name: str, error: OSError) -> NotConnectedError:
-    number = error.errno or getattr(error.__context__, "errno", None) or 0
+    beneath = error.__context__
+    number = error.errno or getattr(beneath, "errno", None) or 0
+    if not number and beneath is not None and beneath.args and isinstance(beneath.args[0], int):
+        number = beneath.args[0]
     if not number and "refused" in str(error).lower():
         number = errno.ECONNREFUSED
     says, hint = _REASONS.get(
