@@ -109,11 +109,12 @@ class Stream(Protocol):
         """The connection or file, as the user named it."""
         ...
 
-    def newest(self, timeout_s: float) -> Capture | None:
-        """Return what came last as a capture, None where nothing new came within the time.
+    def newest(self, timeout_s: float) -> Capture | Counted | None:
+        """Return what came last, None where nothing new came within the time.
 
-        The capture holds the newest stretch of the stream (a window that its opener chose), as
+        A capture holds the newest stretch of the stream (a window that its opener chose), as
         one trace or several; what was lost on the way is a gap, and counted in its warnings.
+        A counter that is asked again and again gives its readings in place of captures.
 
         Raises:
             InstrumentError: If the stream has ended or the connection has gone.

@@ -56,7 +56,16 @@ ALLOWED: dict[str, set[str]] = {
     "kit": {"model", "units", "designs"},
     "jobs": {
         *("pipeline", "records", "model", "instruments", "uncertainty", "units", "plugins"),
-        *("formats", "assessment", "circuits", "judge", "observation", "targets", "timing"),
+        *(
+            "formats",
+            "assessment",
+            "circuits",
+            "counts",
+            "judge",
+            "observation",
+            "targets",
+            "timing",
+        ),
     },
     "fitting": {"model"},
     "node": {"model", "uncertainty", "fitting", "timing", "circuits"},

@@ -8,7 +8,8 @@ from typing import TypeGuard
 
 from benchtool.errors import UsageError
 from benchtool.instruments import Armed, Counter, Instrument, Order, Progress
-from benchtool.jobs.acquiring import Enough
+from benchtool.jobs.acquiring import Enough, named
+from benchtool.model.capture import Capture
 from benchtool.model.counted import Counted
 from benchtool.model.kit import KitInstrument
 
@@ -71,6 +72,11 @@ def single_periods(counted: Counted) -> int:
     """Return how many single periods were read; averages over a gate are none."""
     item = counted.readings.get("period")
     return int(item.values.size) if item is not None and item.per == "interval" else 0
+
+
+def called(found: Capture | Counted, kept: KitInstrument | None) -> Capture | Counted:
+    """Return a capture or readings under the user's names of the channels."""
+    return with_name(found, kept) if isinstance(found, Counted) else named(found, kept)
 
 
 def with_name(counted: Counted, kept: KitInstrument | None) -> Counted:

@@ -9,13 +9,15 @@ from __future__ import annotations
 
 import re
 from collections.abc import Callable
+from dataclasses import replace
 from pathlib import Path
 from typing import Any, Literal
 
 from benchtool.errors import UsageError
 from benchtool.frozen import frozen_record
-from benchtool.instruments import Instrument, Order, Recorder, Stream
+from benchtool.instruments import Counter, Instrument, Order, Recorder, Stream
 from benchtool.model.capture import Capture
+from benchtool.model.counted import Counted
 from benchtool.model.kit import KitInstrument
 from benchtool.plugins import Registry
 
@@ -116,6 +118,10 @@ def open_recorder(wanted: Wanted) -> Recorder:
     return opener(wanted.resource, description=wanted.description, baud=wanted.baud)
 
 
+FEW_READINGS = 10
+"""Readings of a counter that make one update of a watch."""
+
+
 class Repeated:
     """An instrument that is asked for record after record, as a stream.
 
@@ -133,11 +139,15 @@ class Repeated:
         """The connection, as the user named it."""
         return self.instrument.resource
 
-    def newest(self, timeout_s: float) -> Capture | None:
-        """Return the next record; the time is that for its trigger."""
-        return self.instrument.acquire(
-            Order(channels=self._channels, trigger_timeout_s=max(timeout_s, 1.0))
-        )
+    def newest(self, timeout_s: float) -> Capture | Counted:
+        """Return the next record, or a counter's next readings; the time is for the trigger."""
+        order = Order(channels=self._channels, trigger_timeout_s=max(timeout_s, 1.0))
+        if isinstance(self.instrument, Counter):
+            few = replace(order, readings=FEW_READINGS, trigger_timeout_s=None)
+            if self.instrument.delivers == "readings":
+                return self.instrument.count(few)
+            return self.instrument.acquire(few)
+        return self.instrument.acquire(order)
 
     def close(self) -> None:
         """End the connection."""

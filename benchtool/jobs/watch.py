@@ -8,7 +8,7 @@ from typing import Literal, Protocol
 
 from benchtool.errors import NoTriggerError
 from benchtool.instruments import Stream
-from benchtool.jobs.acquiring import named
+from benchtool.jobs.counting import called
 from benchtool.jobs.watch_feed import Feed
 from benchtool.jobs.watch_plan import plan_watch
 from benchtool.jobs.watch_sight import View, look_at
@@ -77,7 +77,7 @@ def watch(
                 capture, state = None, hinder(state, Notice(code=error.code, text=error.message))
             if capture is not None:
                 now_s = clock()
-                sight, view = look_at(named(capture, plan.instrument), view, now_s)
+                sight, view = look_at(called(capture, plan.instrument), view, now_s)
                 state = advance(state, sight)
                 audience.update(state.reading, now_s)
             for key in audience.pressed():

@@ -9,6 +9,9 @@ from types import TracebackType
 from benchtool.errors import NoTriggerError
 from benchtool.instruments import Stream
 from benchtool.model.capture import Capture
+from benchtool.model.counted import Counted
+
+Found = Capture | Counted
 
 _WAIT_S = 0.2
 _LAST_WAIT_S = 1.0
@@ -26,7 +29,7 @@ class Feed:
     def __init__(self, stream: Stream, *, pace_s: float = 0.0) -> None:
         self._stream = stream
         self._pace_s = pace_s
-        self._queue: Queue[Capture | BaseException] = Queue(maxsize=2)
+        self._queue: Queue[Found | BaseException] = Queue(maxsize=2)
         self._stopped = threading.Event()
         self._thread = threading.Thread(target=self._read, name="feed", daemon=True)
 
@@ -44,7 +47,7 @@ class Feed:
         self._thread.join(_LAST_WAIT_S)
         self._stream.close()
 
-    def take(self, timeout_s: float) -> Capture | None:
+    def take(self, timeout_s: float) -> Found | None:
         """Return the next capture, None where none came within the time.
 
         Raises:
@@ -62,7 +65,7 @@ class Feed:
     def _read(self) -> None:
         """Hand on captures; one that waits to be taken holds the source back."""
         while not self._stopped.is_set():
-            found: Capture | BaseException | None
+            found: Found | BaseException | None
             try:
                 found = self._stream.newest(_WAIT_S)
             except BaseException as error:
@@ -73,7 +76,7 @@ class Feed:
             if isinstance(found, BaseException) and not isinstance(found, NoTriggerError):
                 return
 
-    def _put(self, found: Capture | BaseException) -> None:
+    def _put(self, found: Found | BaseException) -> None:
         while not self._stopped.is_set():
             try:
                 self._queue.put(found, timeout=_WAIT_S)

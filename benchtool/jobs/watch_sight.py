@@ -5,9 +5,11 @@ from __future__ import annotations
 from dataclasses import replace
 from typing import TYPE_CHECKING
 
+from benchtool.counts import observe_counted
 from benchtool.errors import MeasurementError
 from benchtool.frozen import frozen_record
 from benchtool.model.capture import Capture, Trace, Waveform
+from benchtool.model.counted import Counted
 from benchtool.model.quantity import Notice
 from benchtool.model.result import Source, StageResult
 from benchtool.model.timing import Edges
@@ -73,11 +75,11 @@ class Sight:
         return self.result.edges if self.result else None
 
 
-def look_at(capture: Capture, view: View, at_s: float) -> tuple[Sight, View]:
-    """Take a capture as far as its intervals.
+def look_at(capture: Capture | Counted, view: View, at_s: float) -> tuple[Sight, View]:
+    """Take a capture as far as its intervals, or a counter's readings as they are.
 
     Args:
-        capture: The capture.
+        capture: The capture, or the readings.
         view: How to look, with what was learnt before.
         at_s: When it came.
 
@@ -87,6 +89,8 @@ def look_at(capture: Capture, view: View, at_s: float) -> tuple[Sight, View]:
     Raises:
         UsageError: If several traces could be meant, or one that was named is not there.
     """
+    if isinstance(capture, Counted):
+        return _look_at_counted(capture, view, at_s), view
     view = replace(view, start_ns=view.start_ns or capture.origin.start_ns)
     begun = next((x.text for x in capture.warnings if x.code == "file-begun-anew"), "")
     sight = Sight(
@@ -108,6 +112,12 @@ def look_at(capture: Capture, view: View, at_s: float) -> tuple[Sight, View]:
         return replace(sight, trouble=trouble), replace(view, target=None)
     notices = tuple(dict.fromkeys((*capture.warnings, *result.warnings)))
     return replace(sight, result=replace(result, warnings=notices)), view
+
+
+def _look_at_counted(counted: Counted, view: View, at_s: float) -> Sight:
+    seen = observe_counted(counted, view.design, view.stage, view.settings.options, "watch")
+    result = replace(seen.results[0], warnings=(*seen.warnings, *seen.results[0].warnings))
+    return Sight(at_s=at_s, offset_s=None, source=seen.sources[0], result=result)
 
 
 def _offset(capture: Capture, view: View) -> float | None:

@@ -11,11 +11,13 @@ from typing import Literal
 import numpy as np
 
 from benchtool.frozen import frozen_record
+from benchtool.jobs.watch_counts import join_counted, readings_of, scatter_of, with_figures
 from benchtool.jobs.watch_edges import are_alike, edges_from, join_edges
 from benchtool.jobs.watch_movement import Course, Scatter, follow
 from benchtool.jobs.watch_reading import assess, compare
 from benchtool.jobs.watch_sight import Sight
 from benchtool.model.arrays import FloatArray, middle
+from benchtool.model.counted import Counted
 from benchtool.model.quantity import Measured, Notice
 from benchtool.model.timing import Edges, Intervals
 from benchtool.model.watch import MOST_POINTS, Mark, Point, Reading, WatchedName, WatchPlan
@@ -46,6 +48,7 @@ class WatchState:
             without a rest are one.
         n_rested: Captures since the last movement.
         arrivals_s: When the last new intervals came.
+        counted: Of a counter, its readings since the last movement.
     """
 
     reading: Reading
@@ -55,6 +58,7 @@ class WatchState:
     before: Measured | None = None
     n_rested: int = REST
     arrivals_s: tuple[float, ...] = ()
+    counted: Counted | None = None
 
 
 def begin(plan: WatchPlan) -> WatchState:
@@ -79,6 +83,8 @@ def advance(state: WatchState, sight: Sight) -> WatchState:
     state = replace(state, reading=reading)
     if sight.is_anew:
         state = _cleared(state)
+    if sight.result is not None and sight.result.counted is not None:
+        return _counted(state, sight, sight.result.counted)
     edges = sight.edges
     if edges is None or sight.result is None:
         return state
@@ -90,6 +96,31 @@ def advance(state: WatchState, sight: Sight) -> WatchState:
     joined = join_edges(state.edges, edges, sight.offset_s)
     active = sight.result.series.active if sight.result.series else "high"
     return _folded(replace(state, edges=joined), sight, active)
+
+
+def _counted(state: WatchState, sight: Sight, counted: Counted) -> WatchState:
+    """Take a run of a counter: one reading of the watch, averaged with those since a movement."""
+    plan, course = state.reading.plan, state.course
+    values = readings_of(counted, plan.quantity)
+    if not values.size or sight.result is None:
+        text = f"this counter does not count the {plan.quantity}; choose another --quantity"
+        return hinder(state, Notice(code="not-counted", text=text))
+    course, moved = follow(course, values, scatter_of(counted, plan, values))
+    known = None if moved else state.counted
+    joined = join_counted(known, counted)
+    points = (*state.reading.points, Point(value=float(np.mean(values)), moved=moved))
+    reading = assess(state.reading, with_figures(sight.result, joined, plan), plan)
+    reading = replace(reading, moved=moved, points=points[-MOST_POINTS:])
+    before = _before(state, reading)
+    state = replace(
+        state,
+        counted=joined,
+        course=course,
+        before=before,
+        reading=compare(reading, before),
+        n_rested=0 if moved else state.n_rested + 1,
+    )
+    return _arrived(state, sight.at_s)
 
 
 def _cleared(state: WatchState) -> WatchState:

@@ -11,6 +11,9 @@ import numpy as np
 import pytest
 from running import run_here
 
+from benchtool.cli import acquiring, cautions
+from benchtool.cli.output import write_file
+from benchtool.errors import InputError
 from benchtool.formats import read_capture
 from benchtool.model.capture import Waveform
 from benchtool_drivers.loopback.edge_printer import DeviceForm, Printer
@@ -22,6 +25,12 @@ from benchtool_drivers.loopback.serving import serve
 Capsys = pytest.CaptureFixture[str]
 DT_S = 1e-3
 VOLTS = np.where(np.arange(4000) % 250 < 143, 12.0, 0.1)  # 16 cycles of 0.25 s, from a high on
+
+
+@pytest.fixture(autouse=True)
+def nobody_cautioned_yet(monkeypatch: pytest.MonkeyPatch) -> None:
+    """Let each test be the first live connection of its run."""
+    monkeypatch.setattr(cautions, "_TOLD", [])
 
 
 @pytest.fixture
@@ -114,6 +123,9 @@ def test_edges_of_a_serial_line_become_a_logic_trace(tmp_path: Path, capsys: Cap
     ("arguments", "says"),
     [
         (("nothing-here", "-o", "x.npz"), "nothing live called"),
+        (("", "-o", "x.npz"), "nothing live called"),
+        (("/", "-o", "x.npz"), "is a folder"),
+        (("TCPIP::127.0.0.1::1::SOCKET", "-o", "no-such-folder/x.npz"), "no such folder"),
         (("TCPIP::127.0.0.1::1::SOCKET", "-o", "x.csv"), "writes an .npz"),
         (("TCPIP::127.0.0.1::1::SOCKET",), "writes an .npz"),
         (("/dev/ttyACM0", "-o", "x.npz", "--until", "forever"), "--until"),
@@ -126,6 +138,32 @@ def test_what_cannot_be_is_said_before_anything_is_opened(
     ran = run_here(capsys, "acquire", *arguments)
     assert ran.code == 2
     assert says in ran.err
+    assert "Caution" not in ran.err
+
+
+def test_a_capture_whose_sidecar_cannot_be_written_is_taken_away(
+    resource: str, tmp_path: Path, capsys: Capsys, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    def full(path: Path, content: bytes, *, force: bool) -> None:
+        if path.suffix == ".json":
+            raise InputError("no space", hint="", code="not-writable")
+        write_file(path, content, force=force)
+
+    monkeypatch.setattr(acquiring, "write_file", full)
+    ran = run_here(capsys, "acquire", resource, "-o", tmp_path / "b.npz")
+    assert ran.code == 2
+    assert not list(tmp_path.iterdir())
+
+
+def test_an_instrument_of_the_kit_without_a_resource_is_told_as_one(
+    tmp_path: Path, capsys: Capsys, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    monkeypatch.setenv("XDG_CONFIG_HOME", str(tmp_path))
+    (tmp_path / "benchtool").mkdir()
+    (tmp_path / "benchtool" / "kit.toml").write_text('[instrument.left]\ntimebase = "2 ppm"\n')
+    ran = run_here(capsys, "acquire", "left", "-o", "x.npz")
+    assert ran.code == 2
+    assert "no resource for 'left'" in ran.err
 
 
 def test_a_port_where_nobody_listens_is_an_instrument_error(tmp_path: Path, capsys: Capsys) -> None:
