@@ -12,13 +12,14 @@ from benchtool.model.options import MeasureOptions
 from benchtool.model.result import Analysis, Source, StageResult
 from benchtool.observation import Settings, settle
 from benchtool.provenance import warnings_of
-from benchtool.targets import choose_stages
+from benchtool.targets import choose_one_stage
 from benchtool.timing.counted import timing_of_counted
 
 if TYPE_CHECKING:
     from benchtool.model.design import Design, Stage
 
 _AS_FOUND = ReadOptions()
+_WHY = "and a counter's readings are of one"
 
 
 def observe_counted(
@@ -43,7 +44,7 @@ def observe_counted(
     """
     _refuse_of_a_record(counted, options)
     settings = settle(options, design)
-    result = result_of_counted(counted, _stage(design, stage), settings)
+    result = result_of_counted(counted, choose_one_stage(design, stage, _WHY), settings)
     return Analysis(
         command=command,
         sources=(_source(counted),),
@@ -89,19 +90,6 @@ def _refuse_of_a_record(counted: Counted, options: MeasureOptions) -> None:
             hint="Leave out the options that are about a record.",
             code="counter-readings",
         )
-
-
-def _stage(design: Design | None, name: str | None) -> Stage | None:
-    if design is None:
-        return None
-    stages = choose_stages(design, name)
-    if len(stages) > 1:
-        raise UsageError(
-            f"{design.source} has {len(stages)} stages, and a counter's readings are of one",
-            hint=f"Add --stage: {', '.join(item.name for item in stages)}.",
-            code="choose-stage",
-        )
-    return stages[0]
 
 
 def _source(counted: Counted) -> Source:

@@ -134,6 +134,29 @@ def choose_stages(design: Design, name: str | None) -> tuple[Stage, ...]:
     return chosen
 
 
+def choose_one_stage(design: Design | None, name: str | None, why: str) -> Stage | None:
+    """Return the one stage that is meant, None without a design.
+
+    Args:
+        design: The design, where there is one.
+        name: Name of the stage, where it was given.
+        why: Why there can be but one, as the end of "... has 3 stages".
+
+    Raises:
+        UsageError: As ``choose_stages``; or if several could be meant (``choose-stage``).
+    """
+    if design is None:
+        return None
+    stages = choose_stages(design, name)
+    if len(stages) > 1:
+        raise UsageError(
+            f"{design.source} has {len(stages)} stages {why}",
+            hint=f"Give --stage: {', '.join(item.name for item in stages)}.",
+            code="choose-stage",
+        )
+    return stages[0]
+
+
 def _stage_target(lineup: Lineup, stage: Stage, channel: str | None, *, alone: bool) -> Target:
     wanted = channel if channel is not None else _named(lineup.capture, stage)
     try:

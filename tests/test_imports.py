@@ -56,16 +56,8 @@ ALLOWED: dict[str, set[str]] = {
     "kit": {"model", "units", "designs"},
     "jobs": {
         *("pipeline", "records", "model", "instruments", "uncertainty", "units", "plugins"),
-        *(
-            "formats",
-            "assessment",
-            "circuits",
-            "counts",
-            "judge",
-            "observation",
-            "targets",
-            "timing",
-        ),
+        *("formats", "assessment", "circuits", "counts", "judge", "observation"),
+        *("provenance", "targets", "timing"),
     },
     "fitting": {"model"},
     "node": {"model", "uncertainty", "fitting", "timing", "circuits"},

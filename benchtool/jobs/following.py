@@ -71,6 +71,7 @@ class Growing:
         self._options = options
         self._window_bytes = window_bytes
         self._n_begun = 0
+        self._given = False
         self._begin()
 
     def _begin(self) -> None:
@@ -100,6 +101,7 @@ class Growing:
         until = time.monotonic() + timeout_s
         while True:
             capture = self._read() if self._grow() else None
+            self._given = self._given or capture is not None
             if capture is not None or time.monotonic() >= until:
                 return capture
             time.sleep(_BETWEEN_LOOKS_S)
@@ -128,6 +130,8 @@ class Growing:
         except NotConnectedError:
             if after:
                 return b""
+            if not self._given and (self._rows or self._unended):
+                self._capture_of(self._rows + self._unended)  # says what is wrong with all of it
             raise
 
     def _take(self, data: bytes) -> int:

@@ -8,7 +8,7 @@ from benchtool.errors import UsageError
 from benchtool.model.design import Rule
 from benchtool.model.watch import WATCHED_UNITS, Goal, WatchedName, WatchPlan
 from benchtool.observation import Settings
-from benchtool.targets import choose_stages
+from benchtool.targets import choose_one_stage
 
 if TYPE_CHECKING:
     from benchtool.model.decision import StageLimit
@@ -18,6 +18,7 @@ GoalUnit = tuple[float, str]
 """A value with its SI unit: s, Hz or 1."""
 
 _BY_UNIT: dict[str, WatchedName] = {"s": "period", "Hz": "frequency", "1": "duty"}
+_WHY = "and one trimmer is watched at a time"
 
 
 def plan_watch(
@@ -41,7 +42,7 @@ def plan_watch(
         UsageError: If the goal is of another unit than the quantity (``goal-unit``), or the stage
             is not known (``choose-stage``, ``no-such-stage``).
     """
-    chosen = _stage(design, stage)
+    chosen = choose_one_stage(design, stage, _WHY)
     name = quantity or _suggested(goal, chosen)
     if goal is not None and goal[1] != WATCHED_UNITS[name]:
         raise UsageError(
@@ -67,19 +68,6 @@ def plan_watch(
         jitter_rel=settings.jitter_rel,
         instrument=settings.options.instrument,
     )
-
-
-def _stage(design: Design | None, name: str | None) -> Stage | None:
-    if design is None:
-        return None
-    stages = choose_stages(design, name)
-    if len(stages) > 1:
-        raise UsageError(
-            f"{design.source} has {len(stages)} stages and one trimmer is watched at a time",
-            hint=f"Give --stage: {', '.join(item.name for item in stages)}.",
-            code="choose-stage",
-        )
-    return stages[0]
 
 
 def _suggested(goal: GoalUnit | None, stage: Stage | None) -> WatchedName:

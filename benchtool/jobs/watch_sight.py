@@ -14,6 +14,7 @@ from benchtool.model.quantity import Notice
 from benchtool.model.result import Source, StageResult
 from benchtool.model.timing import Edges
 from benchtool.observation import Settings, glance, observe
+from benchtool.provenance import source_of
 from benchtool.targets import Target, choose_targets, line_up
 from benchtool.timing import Shape, find_edges, require_states
 
@@ -96,7 +97,7 @@ def look_at(capture: Capture | Counted, view: View, at_s: float) -> tuple[Sight,
     sight = Sight(
         at_s=at_s,
         offset_s=_offset(capture, view),
-        source=_source(capture),
+        source=source_of(capture, view.settings.options),
         is_anew=begun != view.begun,
     )
     view = replace(view, begun=begun)
@@ -126,20 +127,6 @@ def _offset(capture: Capture, view: View) -> float | None:
     if capture.origin.start_ns is None or view.start_ns is None:
         return 0.0
     return (capture.origin.start_ns - view.start_ns) * 1e-9
-
-
-def _source(capture: Capture) -> Source:
-    origin = capture.origin
-    return Source(
-        role="main",
-        name=origin.source,
-        sha256=origin.sha256,
-        format=origin.format,
-        structure=capture.structure,
-        start_ns=origin.start_ns,
-        instrument=origin.instrument,
-        window=capture.window,
-    )
 
 
 def _target(capture: Capture, view: View, at_s: float) -> tuple[Target, View]:
