@@ -8,7 +8,6 @@ from pathlib import Path
 
 from simulated import QUICK, assert_whole, simulated
 
-import benchtool_drivers
 from benchtool.instruments import Order
 from benchtool_drivers.dialect import known_dialects, parse_dialect
 from benchtool_drivers.dialect.bodies import CHUNK
@@ -17,7 +16,7 @@ from benchtool_drivers.dialect.vocabulary import X_FORMS, Y_FORMS
 from benchtool_drivers.loopback.serving import serve
 from benchtool_drivers.opening import open_instrument
 
-README = (Path(benchtool_drivers.__file__).parent.parent / "README.md").read_text("utf-8")
+README = (Path(__file__).parents[2] / "drivers" / "README.md").read_text("utf-8")
 
 
 def shown_dialect() -> str:
