@@ -10,6 +10,7 @@ import numpy as np
 import pytest
 from running import Ran, run_here
 
+import benchtool
 from benchtool.cli import cautions
 from benchtool_drivers.loopback.families.counters import (
     Beat,
@@ -21,7 +22,8 @@ from benchtool_drivers.loopback.serving import serve
 
 ROOT = Path(__file__).parents[2]
 DESIGN = ROOT / "sample_captures" / "mist_valve.toml"
-SCHEMA = json.loads((ROOT / "benchtool" / "report" / "document.schema.json").read_text("utf-8"))
+PACKAGE = Path(benchtool.__file__).parent
+SCHEMA = json.loads((PACKAGE / "report" / "document.schema.json").read_text("utf-8"))
 
 
 def board() -> Beat:
