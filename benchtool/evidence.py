@@ -8,12 +8,13 @@ from dataclasses import replace
 from benchtool.diagnose import diagnose
 from benchtool.diagnose.priors import DEFAULT_PRIORS, Priors
 from benchtool.frozen import frozen_record
+from benchtool.mistakes import refuse_short, refuse_stopping, unused_notices
 from benchtool.model.design import Design
 from benchtool.model.diagnosis import Evidence, Observation, ObservationRole, Reading
 from benchtool.model.result import StageResult
 from benchtool.model.timing import Timing
 from benchtool.nodes import NOTHING, NodeEvidence
-from benchtool.sightings import further_findings
+from benchtool.sightings import further_findings, sentence_with
 
 
 @frozen_record
@@ -97,6 +98,8 @@ def diagnose_stage(
     """
     if result.design is None:
         return result
+    refuse_short(result, design)
+    refuse_stopping(result.design, companions, design)
     further = (observation_of(seen, companion) for companion, seen in companions)
     brought = (*readings, *node.readings)
     evidence = Evidence(observations=(observation_of(result), *further), readings=brought)
@@ -105,10 +108,11 @@ def diagnose_stage(
     is_healthy = found.best.fault == "healthy"
     findings, noted = further_findings(result, power_ups, brought, design, is_healthy=is_healthy)
     apart = [notice for _, seen in companions for notice in seen.warnings if notice.code in _TOLD]
-    warnings = (*result.warnings, *node.warnings, *apart, *noted, *found.warnings)
+    unused = unused_notices(result, companions, brought)
+    warnings = (*result.warnings, *node.warnings, *unused, *apart, *noted, *found.warnings)
     return replace(
         result,
-        diagnosis=found,
+        diagnosis=replace(found, sentence=sentence_with(found, findings)),
         node=node.fit,
         findings=findings,
         warnings=tuple(dict.fromkeys(warnings)),

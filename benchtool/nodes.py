@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import math
 from dataclasses import replace
+from typing import TYPE_CHECKING
 
 from benchtool.circuits import circuit_at
 from benchtool.errors import MeasurementError, UsageError
@@ -13,10 +14,12 @@ from benchtool.model.design import Design, Probe, Stage
 from benchtool.model.diagnosis import Reading
 from benchtool.model.node import NodeFit
 from benchtool.model.quantity import Measured, Notice
-from benchtool.node import Load, Terms, fit_node, node_readings, remove_probe
 from benchtool.observation import Settings
 from benchtool.targets import Lineup
 from benchtool.timing import Shape
+
+if TYPE_CHECKING:
+    from benchtool.node import Load, Terms
 
 U_GAIN_REL = 0.005
 """Standard uncertainty of a voltage scale of which nothing is stated: assumed."""
@@ -86,6 +89,8 @@ def read_node(
         u_v = max(shape.levels.u_low_v, U_GAIN_REL * abs(shape.levels.low_v), _U_LEAST_V)
         level = Reading(kind="node-level", value=shape.levels.low_v, u=u_v, unit="V")
         return NodeEvidence(readings=(level,))
+    from benchtool.node import fit_node, node_readings  # not where no node was recorded
+
     terms = _terms(stage, design, settings)
     try:
         fit = fit_node(shape.trace, shape.levels, terms=terms)
@@ -105,6 +110,8 @@ def read_node(
 
 
 def _terms(stage: Stage, design: Design, settings: Settings) -> Terms:
+    from benchtool.node import Terms
+
     circuit = circuit_at(stage, design)
 
     def delay(value: float) -> Measured:
@@ -135,6 +142,8 @@ def _as_diagnosed(
     """Return the node as the diagnosed circuit has it: with its probe, or freed of another."""
     if design.probe.at == "capacitor":  # the circuit has the same load
         return fit, ()
+    from benchtool.node import remove_probe
+
     probe = _stated(settings)
     if probe is not None:
         return remove_probe(fit, _load(probe, stage, _U_LOAD_REL)), ()
@@ -173,8 +182,11 @@ def place_probe(lineup: Lineup, design: Design, settings: Settings) -> Design:
 
 
 def _load(probe: Probe, stage: Stage, u_rel: float) -> Load:
+    from benchtool.node import Load
+
     parts = stage.parts
-    charge = sum(part.value for ref, part in parts.items() if ref != "C")
+    through = ("RA",) if stage.topology == "astable-diode" else ("RA", "RB", "R")
+    charge = sum(part.value for ref, part in parts.items() if ref in through)
     discharge = parts["RB"].value if "RB" in parts else charge
 
     def ohms(value: float) -> Measured:

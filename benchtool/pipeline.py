@@ -231,6 +231,7 @@ def diagnose(
     """
     from benchtool.designs.settling import settled_design
     from benchtool.evidence import diagnose_stage
+    from benchtool.mistakes import told_apart
     from benchtool.nodes import place_probe, read_node
 
     intent = settled_design(design, options)
@@ -242,6 +243,7 @@ def diagnose(
     further = [
         (item, observe_all(item.source, intent, stage, options, "diagnose")) for item in companions
     ]
+    told_apart(main, further, readings)
     results = tuple(
         diagnose_stage(
             result,

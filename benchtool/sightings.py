@@ -4,19 +4,36 @@ from __future__ import annotations
 
 from collections.abc import Iterable, Iterator, Sequence
 
-from benchtool.circuits import circuit_at, settle_states
+from benchtool.circuits import circuit_at, faults_of, settle_states
 from benchtool.diagnose import find_findings
+from benchtool.diagnose.words import join, percent
 from benchtool.errors import SolveError
 from benchtool.model.design import Design, Stage
-from benchtool.model.diagnosis import Reading
+from benchtool.model.diagnosis import Diagnosis, Reading
 from benchtool.model.node import FirstPulse
 from benchtool.model.quantity import Measured, Notice
 from benchtool.model.result import Finding, StageResult
 from benchtool.model.timing import Timing
-from benchtool.node import judge_first_pulse, read_resting_node, solve_schmitt
 from benchtool.timing.regularity import find_regularity
 from benchtool.uncertainty import expanded
 from benchtool.units import format_measured, format_value
+
+_NOTEWORTHY = {
+    "drifting": "the period drifts",
+    "ripple-line": "the period follows a ripple",
+    "ripple-lock": "the period follows a ripple",
+    "missed-edge": "pulses are missing",
+    "false-trigger": "there are pulses too many",
+    "two-level": "the period jumps between two values",
+    "paused": "the board stood still for a while",
+    "output-level": "the output's high level is that of the other IC family",
+}
+"""What no mean time shows and the first sentence must not pass over."""
+
+_DROP_V = (1.1, 1.9)
+"""How far below its supply a bipolar timer's output stays: common practice."""
+
+_NO_DROP_V = 0.3
 
 Seen = tuple[tuple[Finding, ...], tuple[Notice, ...]]
 
@@ -44,13 +61,56 @@ def further_findings(
     findings, warnings = _ordered(result, stage, design)
     timing = result.timing or Timing()
     first = _first_high((result, *power_ups))
-    more = [*_schmitt(first, timing, stage, design)]
+    more = [*_output_level(result, stage, design), *_schmitt(first, timing, stage, design)]
     if not is_healthy:  # else the scatter of healthy thresholds explains it
         more += _first_pulse(first, timing, stage, design)
     state = result.flat.state if result.flat else None
     if state is not None:
         more += _resting(state, readings, stage, design)
     return (*findings, *more), warnings
+
+
+def sentence_with(found: Diagnosis, findings: Iterable[Finding]) -> str:
+    """Return the sentence on top with what was seen beside the mean times.
+
+    Args:
+        found: The diagnosis.
+        findings: What was seen.
+    """
+    seen = dict.fromkeys(_NOTEWORTHY[item.code] for item in findings if item.code in _NOTEWORTHY)
+    if not seen:
+        return found.sentence
+    words = join(list(seen), "and")
+    if found.best.fault == "healthy":
+        sure = percent(found.best.probability)
+        return f"The mean times are those of healthy parts ({sure}), but {words}: begin with that."
+    return f"{found.sentence} Besides, {words}."
+
+
+def _output_level(result: StageResult, stage: Stage, design: Design) -> Iterator[Finding]:
+    """Yield that the output's high level is the other family's, where it can be no other."""
+    levels, supply = result.levels, design.supply
+    if levels is None or levels.kind != "two-state" or "wrong-ic-family" not in _faults(stage):
+        return
+    low, high = (supply.lower - _DROP_V[1], supply.upper - _DROP_V[0])
+    if stage.ic.family == "cmos":
+        is_other = low <= levels.high_v <= min(high, supply.lower - _NO_DROP_V)
+    else:
+        is_other = supply.upper - _NO_DROP_V >= levels.high_v >= supply.lower - _NO_DROP_V > high
+    if is_other:
+        text = (
+            f"The output's high level is {format_value(levels.high_v, 'V', 3)} at a supply of "
+            f"{format_value(supply.nominal, 'V', 3)}: that of the other IC family, or of a "
+            "loaded output."
+        )
+        may_be = ("wrong-ic-family", "output-high-drop")
+        likely = tuple(name for name in may_be if name in _faults(stage))
+        yield Finding(code="output-level", text=text, may_be=likely)
+
+
+def _faults(stage: Stage) -> tuple[str, ...]:
+    known = stage.ic.family is not None
+    return tuple(item.name for item in faults_of(stage.topology)) if known else ()
 
 
 def _first_high(results: Iterable[StageResult]) -> Measured | None:
@@ -81,6 +141,8 @@ def _first_pulse(
 ) -> Iterator[Finding]:
     if first is None or not isinstance(timing.t_high, Measured):
         return
+    from benchtool.node import judge_first_pulse
+
     try:
         found = judge_first_pulse(first, timing.t_high, circuit_at(stage, design))
     except SolveError:
@@ -113,6 +175,8 @@ def _schmitt(
         return
     if not (isinstance(high, Measured) and isinstance(low, Measured)):
         return
+    from benchtool.node import solve_schmitt
+
     circuit = circuit_at(stage, design)
     top_v = float(circuit.supply) - float(circuit.output_high_drop)
     try:
@@ -134,6 +198,8 @@ def _resting(
     level = next((item for item in readings if item.kind == "node-level"), None)
     if level is None:
         return
+    from benchtool.node import read_resting_node
+
     circuit = circuit_at(stage, design)
     states = settle_states(circuit)
     found = read_resting_node(

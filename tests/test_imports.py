@@ -51,7 +51,8 @@ ALLOWED: dict[str, set[str]] = {
     "early": {"model", "circuits", "node", "observation", "targets"},
     "sightings": {"model", "units", "uncertainty", "circuits", "diagnose", "node", "timing"},
     "powerups": {"model", "circuits", "observation", "timing"},
-    "evidence": {"model", "diagnose", "nodes", "sightings"},
+    "mistakes": {"model", "units", "circuits", "evidence"},
+    "evidence": {"model", "diagnose", "mistakes", "nodes", "sightings"},
     "assessment": {"model", "circuits", "judge", "observation", "parts"},
     "kit": {"model", "units", "designs"},
     "jobs": {

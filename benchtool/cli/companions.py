@@ -52,6 +52,7 @@ _U_ADDED = 0.005
 _WARMED_C = 55.0
 _U_WARMED_C = 10.0
 """A part under a hot-air pencil or a finger's heat: assumed where not stated."""
+_LEAST_C, _MOST_C = 25.0, 200.0
 _HEATABLE = ("C", "R", "RA", "RB", "IC")
 
 
@@ -112,6 +113,11 @@ def _heated(text: str, source: str) -> Any:
             hint=f"One of {', '.join(_HEATABLE)}, such as --heated C warm.csv or C@60degC.",
         )
     stated = value_of("--heated", at, "degC") if at else None
+    if stated is not None and not _LEAST_C < stated <= _MOST_C:
+        raise UsageError(
+            f"--heated {text}: {_LEAST_C:g} to {_MOST_C:g} degC can be",
+            hint="Give the temperature of the warmed part, such as C@60degC.",
+        )
     return Companion(
         role="heated",
         source=source,

@@ -70,6 +70,7 @@ def command(
     benchtool diagnose slow.csv --topology astable --RA 100k --RB 330k --C 47u
     benchtool diagnose slow.csv --topology astable
     """  # noqa: D301 - click's mark of lines to keep as they are
+    from benchtool.cli.again import again
     from benchtool.cli.readings import reading_of
     from benchtool.pipeline import diagnose
 
@@ -87,7 +88,12 @@ def command(
         readings=tuple(reading_of(text) for text in readings),
         options=options,
     )
-    output.show(replace(analysis, warnings=(*analysis.warnings, *assumed)), report=report)
+    first, *others = analysis.sources
+    first = replace(first, options=(*first.options, *again(click.get_current_context().params)))
+    output.show(
+        replace(analysis, sources=(first, *others), warnings=(*analysis.warnings, *assumed)),
+        report=report,
+    )
     return OK
 
 

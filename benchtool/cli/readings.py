@@ -8,6 +8,7 @@ from benchtool.cli.options import value_of
 from benchtool.errors import UsageError
 from benchtool.frozen import frozen_record
 from benchtool.model.diagnosis import PartWay, Reading, ReadingKind
+from benchtool.units import format_value
 
 _PARTS = {"RA": "ohm", "RB": "ohm", "R": "ohm", "C": "F"}
 _TYPED = re.compile(
@@ -24,26 +25,47 @@ _WAYS: dict[str, PartWay] = {
 
 @frozen_record
 class _Sort:
-    """A sort of reading: its unit, and U at 95 % where the user states none (assumed)."""
+    """A sort of reading: its unit, and U at 95 % where the user states none (assumed).
+
+    Attributes:
+        kind: What it is of.
+        unit: Its unit.
+        U_rel, U_abs: Half-width as a share, and in the unit.
+        lower, upper: Outside of these it is a slip of the pen.
+    """
 
     kind: ReadingKind
     unit: str
     U_rel: float = 0.0
     U_abs: float = 0.0
+    lower: float = -1.0
+    upper: float = 100.0
 
 
 _SORTS = {
-    "control-pin": _Sort(kind="control-pin", unit="V", U_rel=0.006),
-    "supply": _Sort(kind="supply", unit="V", U_rel=0.006),
+    "control-pin": _Sort(kind="control-pin", unit="V", U_rel=0.006, lower=1e-3),
+    "supply": _Sort(kind="supply", unit="V", U_rel=0.006, lower=0.1),
     "discharge-pin": _Sort(kind="discharge-pin", unit="V", U_rel=0.02, U_abs=2e-3),
     "output-high": _Sort(kind="output-high", unit="V", U_rel=0.006),
     "output-low": _Sort(kind="output-low", unit="V", U_rel=0.02, U_abs=2e-3),
     "node-level": _Sort(kind="node-level", unit="V", U_rel=0.01, U_abs=5e-3),
-    "temperature": _Sort(kind="temperature", unit="degC", U_abs=2.0),
-    **{ref: _Sort(kind="part", unit="ohm", U_rel=0.01) for ref in ("RA", "RB", "R")},
-    "C": _Sort(kind="part", unit="F", U_rel=0.02),
+    "temperature": _Sort(kind="temperature", unit="degC", U_abs=2.0, lower=-60.0, upper=200.0),
+    **{
+        ref: _Sort(kind="part", unit="ohm", U_rel=0.01, lower=1e-3, upper=1e12)
+        for ref in ("RA", "RB", "R")
+    },
+    "C": _Sort(kind="part", unit="F", U_rel=0.02, lower=1e-13, upper=1.0),
 }
 """Half-widths that a handheld meter keeps: common practice; one that is stated wins."""
+
+
+def _refuse_impossible(option: str, value: float, sort: _Sort) -> None:
+    if not sort.lower <= value <= sort.upper:
+        ends = " to ".join(format_value(end, sort.unit) for end in (sort.lower, sort.upper))
+        raise UsageError(
+            f"{option}={format_value(value, sort.unit)} cannot be: {ends} can",
+            hint="Check the figure, its unit and its sign.",
+        )
 
 
 def reading_of(text: str) -> Reading:
@@ -70,6 +92,7 @@ def reading_of(text: str) -> Reading:
         )
     option = f"--reading {typed['name']}"
     value = value_of(option, typed["value"], sort.unit) or 0.0
+    _refuse_impossible(option, value, sort)
     stated = value_of(option, typed["u"], sort.unit) if typed["u"] else None
     if stated is not None and stated <= 0:
         raise UsageError(

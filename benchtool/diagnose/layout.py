@@ -17,7 +17,7 @@ from benchtool.diagnose.conditions import (
     lifted_condition,
     own_axes,
 )
-from benchtool.diagnose.observables import SORTS, U_MODEL, Observable, View
+from benchtool.diagnose.observables import SORTS, U_MODEL, Observable, View, is_driving
 from benchtool.diagnose.scatter import Axis, healthy_axes
 from benchtool.errors import SolveError
 from benchtool.frozen import frozen_record
@@ -28,6 +28,9 @@ from benchtool.model.quantity import Notice
 from benchtool.uncertainty import t_quantile
 
 _NORMAL_K = 1.959964
+_U_OUTPUT_V = {"output-high": 0.25, "output-low": 0.1}
+"""How well an output's level is known that drives a load of which nothing is stated: assumed."""
+
 _FREED = lifted_condition("node 0")
 """The board without any probe: a node whose own probe was taken off shows no other either."""
 
@@ -96,7 +99,10 @@ def lay_out(evidence: Evidence, stage: Stage, design: Design) -> Layout:
     """
     timed = tuple(_timed(evidence, stage))
     figures = tuple(item for item in evidence.readings if _is_figure(item, stage, design))
-    observables = (*(item for item, _ in timed), *(_figure(item, design) for item in figures))
+    observables = (
+        *(item for item, _ in timed),
+        *(_figure(item, stage, design) for item in figures),
+    )
     if not observables:
         raise SolveError(
             "there is no time and no reading that bears on the circuit",
@@ -176,12 +182,13 @@ def _is_bound(reading: Reading, stage: Stage) -> bool:
     return reading.kind == "part" and reading.way != "isolated" and reading.part in stage.parts
 
 
-def _figure(reading: Reading, design: Design) -> Observable:
+def _figure(reading: Reading, stage: Stage, design: Design) -> Observable:
     name = reading.part or reading.kind
     condition = _FREED if reading.is_freed else MAIN
     if not SORTS[name].is_log:
         supply_v = design.supply.nominal
-        seen, u = reading.value / supply_v, reading.u / supply_v
+        loose_v = 0.0 if is_driving(stage.topology) else _U_OUTPUT_V.get(name, 0.0)
+        seen, u = reading.value / supply_v, math.hypot(reading.u, loose_v) / supply_v
         return Observable(name=name, condition=condition, seen=seen, u=u)
     if reading.value <= 0:
         raise SolveError(

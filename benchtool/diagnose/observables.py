@@ -14,6 +14,7 @@ import numpy as np
 
 from benchtool.circuits import Prediction, States, predict, settle_states
 from benchtool.circuits.circuit import Circuit, Value
+from benchtool.circuits.families import FAMILIES
 from benchtool.circuits.topologies import find_topology
 from benchtool.diagnose.conditions import MAIN, Condition
 from benchtool.frozen import frozen_record
@@ -117,8 +118,17 @@ def _discharge_pin(view: View) -> Value:
     return level / view.design_supply_v
 
 
+def _rise(view: View, field: str) -> Value:
+    """Return a figure of the rise: of its first stretch where that reaches the upper threshold."""
+    first, last = view.states.charge[0], view.states.charge[-1]
+    if first is last or first.until_v is None:
+        return _log(getattr(last, field))
+    reaches = np.greater_equal(first.until_v, view.circuit.v_upper)
+    return _log(np.where(reaches, getattr(first, field), getattr(last, field)))
+
+
 def _charge_end(view: View) -> Value:
-    return _log(view.states.charge[-1].v)
+    return _rise(view, "v")
 
 
 def _discharge_end(view: View) -> Value:
@@ -127,7 +137,7 @@ def _discharge_end(view: View) -> Value:
 
 
 def _charge_tau(view: View) -> Value:
-    return _log(view.states.charge[-1].tau)
+    return _rise(view, "tau")
 
 
 def _discharge_tau(view: View) -> Value:
@@ -136,7 +146,17 @@ def _discharge_tau(view: View) -> Value:
 
 
 def _output_high(view: View) -> Value:
-    return (view.circuit.supply - view.circuit.output_high_drop) / view.design_supply_v
+    """Return the high output; where it drives no timing part its drop is the family's."""
+    circuit = view.circuit
+    drop = circuit.output_high_drop
+    if circuit.family is not None and not is_driving(circuit.topology):
+        drop = FAMILIES[circuit.family].terms["output_high_drop"].at(circuit.supply)
+    return (circuit.supply - drop) / view.design_supply_v
+
+
+def is_driving(topology: str) -> bool:
+    """Return whether the output charges the capacitor in a topology."""
+    return "output_high_drop" in find_topology(topology).ic_terms
 
 
 def _output_low(view: View) -> Value:

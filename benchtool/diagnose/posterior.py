@@ -69,14 +69,16 @@ def make_posterior(model: Model) -> Posterior:
             change = np.nan_to_num(held - evidence[:-1], nan=0.0, neginf=-np.inf)
         evidence = np.append(evidence[:-1] + change, evidence[-1])
         cautious = np.append(cautious[:-1] + change, cautious[-1])
-    singles = evidence[:-1] + model.log_prior[:-1]
+    best = int(np.argmax(evidence[:-1] + model.log_prior[:-1]))
     return Posterior(
         model=model,
         seen=seen,
         evidence=evidence,
         probabilities=shares(evidence + model.log_prior),
         cautious=shares(cautious + model.log_prior),
-        single=weigh_single(model, int(np.argmax(singles)), float(weighed.strangeness()[0])),
+        single=weigh_single(
+            model, best, float(weighed.strangeness()[0]), posterior_weights=logs[best]
+        ),
         logs=logs,
     )
 
@@ -198,27 +200,51 @@ def normal_cdfs(x: FloatArray) -> FloatArray:
     return chances
 
 
-def weigh_single(model: Model, best: int, strangeness: float) -> SingleTest:
+def weigh_single(
+    model: Model, best: int, strangeness: float, posterior_weights: FloatArray | None = None
+) -> SingleTest:
     """Return how a board compares with simulated boards that have the likeliest fault.
+
+    A fault larger than most is stranger than most, and still a single one: where the boards of
+    all sizes are less strange, those of the size that was found are asked too.
 
     Args:
         model: The hypotheses.
         best: Index of the likeliest single hypothesis.
         strangeness: How much better two faults explain the board than one.
+        posterior_weights: Logarithms of the weights of its nodes given what was seen; None asks
+            boards of all sizes alone.
     """
-    boards = simulate(model, model.nodes[best], _STRANGERS)
+    nodes, false_alarm = model.nodes[best], model.priors.false_alarm
+    p_value = _share_stranger(model, nodes, nodes.log_weights, strangeness)
+    if posterior_weights is not None and p_value < false_alarm:
+        p_value = max(p_value, _share_stranger(model, nodes, posterior_weights, strangeness))
+    return SingleTest(p_value=p_value, false_alarm=false_alarm)
+
+
+def _share_stranger(
+    model: Model, nodes: Nodes, log_weights: FloatArray, strangeness: float
+) -> float:
+    boards = simulate(model, nodes, _STRANGERS, log_weights)
     usual = model.weigh(boards, as_believed=True).strangeness()
-    stranger = float(np.count_nonzero(usual >= strangeness))
-    p_value = (stranger + 1) / (usual.size + 1)
-    return SingleTest(p_value=p_value, false_alarm=model.priors.false_alarm)
+    return float((np.count_nonzero(usual >= strangeness) + 1) / (usual.size + 1))
 
 
-def simulate(model: Model, nodes: Nodes, count: int) -> FloatArray:
-    """Return what boards with one fault show, the scatter as believed: shape (m, count)."""
+def simulate(
+    model: Model, nodes: Nodes, count: int, log_weights: FloatArray | None = None
+) -> FloatArray:
+    """Return what boards with one fault show, the scatter as believed: shape (m, count).
+
+    Args:
+        model: The hypotheses.
+        nodes: Of the fault.
+        count: Number of boards.
+        log_weights: Of the nodes, in place of their prior weights.
+    """
     rng = np.random.default_rng(_SEED)
     noise = np.linalg.cholesky(model.layout.noise)
     plain = nodes.scatter_index == 0
-    share = shares(nodes.log_weights[plain])
+    share = shares((nodes.log_weights if log_weights is None else log_weights)[plain])
     size = nodes.size_index[plain][rng.choice(share.size, count, p=share)]
     slopes, means = nodes.table.slopes[size], nodes.table.means[size]
     pulls = rng.standard_normal((count, slopes.shape[2]))

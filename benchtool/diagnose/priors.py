@@ -30,6 +30,7 @@ class Prior:
         by_effect: Whether its size goes by its effect on the times; else by the fault's own range.
         least: Value of the moved figure below which it is not considered, in its unit.
         rare_beyond: Value of the moved figure above which it gets rarer in proportion.
+        peaks: Values of the figure near which most of them lie, in its unit.
         origin: Where the weight is from.
     """
 
@@ -38,6 +39,7 @@ class Prior:
     by_effect: bool = True
     least: float = 0.0
     rare_beyond: float = math.inf
+    peaks: tuple[float, ...] = ()
     origin: str = _ASSUMED
 
 
@@ -187,7 +189,8 @@ DEFAULT_PRIORS = Priors(
             "node-leak-to-supply": Prior(weight=0.5, origin=_PRACTICE),
             "slow-ic": Prior(weight=0.1, by_effect=False),
             "wrong-ic-family": Prior(weight=0.2, by_effect=False, origin=_PRACTICE),
-            "probe-load": Prior(weight=0.3, by_effect=False, origin=_PRACTICE),
+            # Most probes have 1 or 10 MΩ.
+            "probe-load": Prior(weight=0.3, by_effect=False, peaks=(1e6, 10e6), origin=_PRACTICE),
             "output-high-drop": Prior(weight=0.4),
             "output-low-rise": Prior(weight=0.4),
             "diode-open": Prior(weight=0.5, by_effect=False, origin=_PRACTICE),

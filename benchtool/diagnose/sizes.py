@@ -19,6 +19,8 @@ _POINTS = 1600
 _LEAST_SHARE, _FALL, _RISE = 1e-4, 0.999, 1e4
 _WIDE = (1e-5, 1e4)  # multiples of a fault's usual sizes between which its effect is looked up
 _OWN_POINTS = 60
+_PEAK_WIDTH = 0.1  # of the logarithm
+_ELSEWHERE = 0.2  # share of sizes that lie at no peak, where there are peaks: assumed
 _TIMES = ("t_high", "t_low", "delay", "period")
 _TAIL_STEPS = 4  # the grid is this much coarser outside the usual range
 
@@ -54,7 +56,7 @@ def sizes_of(fault: Fault, prior: Prior, circuit: Circuit, law: SizeLaw) -> Size
     if not fault.unit:
         return Sizes(values=np.zeros(1), weights=np.ones(1), ends=(0, 1))
     if not prior.by_effect:
-        return _own_range(fault, circuit)
+        return _own_range(fault, prior, circuit)
     branches = [
         found
         for grid in _branches(fault, circuit)
@@ -70,13 +72,17 @@ def sizes_of(fault: Fault, prior: Prior, circuit: Circuit, law: SizeLaw) -> Size
     )
 
 
-def _own_range(fault: Fault, circuit: Circuit) -> Sizes:
+def _own_range(fault: Fault, prior: Prior, circuit: Circuit) -> Sizes:
     lower, upper = (edge * float(fault.reference(circuit)) for edge in fault.sizes)
     if lower > 0:
         values = np.geomspace(lower, upper, _OWN_POINTS)
     else:
         values = np.linspace(lower, upper, _OWN_POINTS)
     weights = np.full(_OWN_POINTS, 1 / _OWN_POINTS)
+    if prior.peaks:
+        off = np.log(values[:, None] / np.array(prior.peaks)) / _PEAK_WIDTH
+        near = np.exp(-(off**2) / 2)
+        weights = _ELSEWHERE * weights + (1 - _ELSEWHERE) * (near / near.sum(axis=0)).mean(axis=1)
     return Sizes(values=values, weights=weights, ends=(0, _OWN_POINTS))
 
 

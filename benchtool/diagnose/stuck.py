@@ -36,6 +36,7 @@ _UNKNOWN_SHARE = 0.1  # of the boards that stand still: no supply, a dead IC, a 
 _U_LEVEL = 0.02  # of the supply: how well the model knows where a dead node rests, assumed
 _CERTAIN = 0.95
 _LEAST_RATIO = 1 / 20
+_MOST_NAMED = 4
 
 
 @frozen_record
@@ -232,7 +233,10 @@ def _sentence(state: State, suspects: tuple[Suspect, ...], group: Group | None) 
     head = f"The output stays {state}."
     if best.probability >= _CERTAIN and best.fault in ACTIONS:
         return f"{head} {ACTIONS[best.fault]} ({percent(best.probability)} sure)."
-    if group is None:
-        return f"{head} No fault of the list holds it there: check the supply, then the IC."
-    named = [name_fault(fault) for fault in group.members[:3]]
-    return f"{head} Most likely {join(named)}. Check the supply at the IC's pins first."
+    if group is None or best.fault == UNEXPLAINED:
+        first = "check the supply, the reset pin, then the IC"
+        return f"{head} No fault of the list holds it there: {first}."
+    more = len(group.members) - _MOST_NAMED
+    named = [name_fault(fault) for fault in group.members[:_MOST_NAMED]]
+    shown = f"{join(named)} (or {more} more)" if more > 0 else join(named)
+    return f"{head} Most likely {shown}. Check the supply at the IC's pins first."

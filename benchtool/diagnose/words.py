@@ -157,6 +157,8 @@ def sum_up(
 def _not_single(suspects: tuple[Suspect, ...], proposals: tuple[NextReading, ...]) -> str:
     pair = next((item for item in suspects if item.fault == "two-faults"), None)
     text = "No single fault explains this."
+    if pair is None:
+        text = f"{text} Check first that design, readings and files are of this board."
     if pair is not None:
         text = f"{text} The best pair: {join([name_fault(item) for item in pair.faults], 'and')}."
     return f"{text}{_then(proposals)}"

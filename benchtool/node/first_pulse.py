@@ -57,7 +57,7 @@ def _times(circuit: Circuit) -> tuple[float, float]:
 
 def _predicted(circuit: Circuit) -> float:
     first_s, steady_s = _times(circuit)
-    return first_s / steady_s
+    return first_s / steady_s if steady_s > 0 else math.inf  # where the thresholds meet
 
 
 def _moved(*fields: str) -> Ratio:

@@ -12,8 +12,12 @@ from benchtool.report.phrases import quantity_text
 from benchtool.units import format_value
 
 _LEAST_SHOWN = 0.005
+_LEAST_GROUP = 0.02
 _MOST_SHOWN = 8
 _MOST_NAMED = 6
+_LONG = 60  # characters
+_TELLS = ((0.5, "much"), (0.2, "some"), (-1.0, "a little"))
+"""Bits expected of a reading, in words."""
 
 
 @frozen_record
@@ -55,8 +59,10 @@ def compass_points(found: Diagnosis) -> tuple[Point, ...]:
 
 def group_text(group: Group) -> str:
     """Return why the members of a group cannot be told apart; empty for one alone."""
-    if len(group.members) < 2 or not group.why:
+    if len(group.members) < 2 or not group.why or group.probability < _LEAST_GROUP:
         return ""
+    if group.members[0] == "healthy":
+        return group.why
     more = len(group.members) - _MOST_NAMED
     names = ", ".join(group.members[:_MOST_NAMED]) + (f" and {more} more" if more > 0 else "")
     return f"Not told apart: {names}. {group.why}"
@@ -69,8 +75,36 @@ def reading_title(item: NextReading) -> str:
 
 
 def reading_cost(item: NextReading) -> str:
-    """Return what a reading costs and tells."""
-    return f"about {item.minutes:g} min, {item.gain_bits:.2f} bit"
+    """Return what a reading costs and how much it is expected to tell."""
+    tells = next(word for least, word in _TELLS if item.gain_bits >= least)
+    return f"about {item.minutes:g} min, tells {tells}"
+
+
+def next_heading(found: Diagnosis) -> str:
+    """Return the words over the readings to take next."""
+    if found.best.fault == "healthy":
+        return "To be surer still, what tells most for the time first:"
+    return "To measure next, what tells most for the time first:"
+
+
+def shorter_caution(caution: str, said: set[str]) -> str:
+    """Return a caution, long sentences that were said before cut to their first words.
+
+    Args:
+        caution: Its sentences.
+        said: Sentences that were said; those of this one are added.
+    """
+    words = []
+    for sentence in caution.split(". "):
+        text = sentence.strip().rstrip(".")
+        cut = text in said and len(text) > _LONG
+        words.append(f"{_head(text)} (as above)." if cut else f"{text}.")
+        said.add(text)
+    return " ".join(words)
+
+
+def _head(text: str) -> str:
+    return text.partition(":")[0].partition(",")[0]
 
 
 def unmarked_sentence(found: Combinations) -> str:

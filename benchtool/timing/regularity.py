@@ -46,7 +46,10 @@ def find_regularity(
         floor_rel: Scatter of the periods that a free board has at least, relative.
         timebase_rel: Half-width of the timebase error, relative.
     """
-    lines = find_lines(intervals, edges, ripple_hz=ripple_hz, timebase_rel=timebase_rel)
+    found = find_lines(intervals, edges, ripple_hz=ripple_hz, timebase_rel=timebase_rel)
+    # edges that lie on the grid beat with it: intervals swing by up to 2/pi of its step
+    least_s = 0.0 if edges.resolved else edges.step_s
+    lines = tuple(line for line in found if line.amplitude_s > least_s)
     lock = find_lock(
         intervals, edges, ripple_hz=ripple_hz, floor_rel=floor_rel, timebase_rel=timebase_rel
     )

@@ -38,7 +38,8 @@ def open_instrument(
         resource: A VISA resource string.
         dialect: Name or file of its dialect; None to take the one it was spoken to in before, or
             to find it by harmless queries.
-        log: Where to write what is said; a file is closed with the instrument.
+        log: Where to write what is said; a file keeps whole answers, so that it can be played
+            back, and is closed with the instrument.
         settings: How it talks until its dialect is known, or instead of what its dialect says.
         look: Is told how each dialect did, where it is probed.
         tell: Is told each step of what is said.
@@ -56,7 +57,7 @@ def open_instrument(
     named = find_dialect(dialect) if isinstance(dialect, str) else dialect
     first = settings or (link_settings(named.link) if named else LinkSettings())
     with ExitStack() as opened:
-        own = ExchangeLog(log) if isinstance(log, Path) else None
+        own = ExchangeLog(log, whole=True) if isinstance(log, Path) else None
         if own is not None:
             opened.callback(own.close)
         link = Link.open(resource, first, log=own if isinstance(log, Path) else log)

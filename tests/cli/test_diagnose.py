@@ -2,8 +2,10 @@
 
 from __future__ import annotations
 
+import shlex
 from pathlib import Path
 
+import numpy as np
 import pytest
 from running import run_here
 
@@ -120,7 +122,7 @@ def test_what_is_missing_or_wrong_is_said_in_one_line(
 
 def test_the_screen_names_hazards_before_what_to_do(capsys: Capsys) -> None:
     ran = run_here(capsys, "diagnose", SAMPLES / "leaky_c.csv", "--design", DESIGN)
-    caution, doing = ran.out.index("Caution:"), ran.out.index("Take any probe off")
+    caution, doing = ran.out.index("Caution:"), ran.out.index("Record the capacitor's voltage")
     assert caution < doing
     assert "this board" in ran.out
 
@@ -135,3 +137,47 @@ def test_the_report_holds_suspects_and_what_to_measure_next(
     text = report.read_text(encoding="utf-8")
     for words in ("C-leaky", "What to measure next", "Which way the times went", "Caution"):
         assert words in text
+
+
+@pytest.mark.parametrize(
+    "reading",
+    [
+        *("control-pin=0V", "control-pin=-5V", "supply=1e6V", "RB=0", "RB<=0", "RB<=-5"),
+        *("C=47", "C=-1u", "temperature=5000degC", "discharge-pin=1000V"),
+    ],
+)
+def test_a_reading_that_cannot_be_is_refused_as_a_slip(reading: str, capsys: Capsys) -> None:
+    given = ("diagnose", SAMPLES / "good_board.csv", "--design", DESIGN)
+    ran = run_here(capsys, *given, "--reading", reading)
+    assert ran.code == 2
+    assert "cannot be" in ran.err
+
+
+def test_the_next_command_brings_the_earlier_evidence_again(capsys: Capsys) -> None:
+    parts = ("--topology", "astable", "--RA", "100k", "--RB", "330k", "--C", "47u")
+    board = SAMPLES / "leaky_c.csv"
+    ran = run_here(capsys, "diagnose", board, *parts, "--reading", "supply=12V")
+    command = ran.out[ran.out.index("Next:  ") + 7 :].strip()
+    words = shlex.split(" ".join(command.split()))
+    assert words[:3] == ["benchtool", "diagnose", str(board)]
+    assert {"--topology", "--RA", "--RB", "--C", "supply=12V"} <= set(words)
+    typed = [str(SAMPLES / "good_board.csv") if word == "FILE" else word for word in words[1:]]
+    again = run_here(capsys, *typed)
+    assert again.code in (0, 2), again.err  # 2 where the file holds no node
+    assert "No such option" not in again.err
+
+
+def test_a_caution_is_said_in_full_once(capsys: Capsys) -> None:
+    ran = run_here(capsys, "diagnose", SAMPLES / "good_board.csv", "--design", DESIGN)
+    said = " ".join(ran.out.split())
+    assert said.count("an earth-referenced clip") == 1
+    assert "The board is powered (as above)." in said
+
+
+def test_a_dead_board_that_no_fault_explains_names_none(capsys: Capsys, tmp_path: Path) -> None:
+    noise_v = np.random.default_rng(5).normal(0.03, 0.02, 3000)
+    rows = "\n".join(f"{0.02 * k:.2f},{v:.3f}" for k, v in enumerate(noise_v))
+    (tmp_path / "low.csv").write_text(f"Time (s),OUT (V)\n{rows}\n", encoding="utf-8")
+    given = ("diagnose", tmp_path / "low.csv", "--design", DESIGN, "--reading", "node-level=0V")
+    sentence = run_here(capsys, *given, "--json").document["results"][0]["sentence"]
+    assert sentence.startswith("The output stays low. No fault of the list")

@@ -248,3 +248,11 @@ def test_every_verb_has_its_help(capsys: pytest.CaptureFixture[str], verb: str) 
     ran = run_here(capsys, "instruments", verb, "--help")
     assert ran.code == 0
     assert "--json" in ran.out
+
+
+def test_a_serial_port_is_told_how_it_is_named_as_a_resource(
+    capsys: pytest.CaptureFixture[str],
+) -> None:
+    ran = run_here(capsys, "instruments", "identify", "/dev/ttyUSB0")
+    assert ran.code == 2
+    assert "ASRL/dev/ttyUSB0::INSTR" in ran.err

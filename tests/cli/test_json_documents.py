@@ -424,3 +424,30 @@ def test_a_name_that_is_no_text_is_still_a_document(run: Run, tmp_path: Path) ->
     name = tmp_path / b"mist\xff.csv".decode("utf-8", "surrogateescape")
     assert run("look", write_square(name)).code == 0
     VALIDATOR.validate(run("look", f"{name}.none").document)
+
+
+@pytest.mark.parametrize(
+    "given",
+    [
+        ("good_board.csv", "--design", "mist_valve.toml"),
+        ("leaky_c.csv", "--design", "mist_valve.toml", "--reading", "control-pin=8V"),
+        ("wrong_rb.txt", "--design", "mist_valve.toml", "--good-board", "good_board.csv"),
+        ("stuck_high.csv", "--design", "mist_valve.toml", "--reading", "node-level=0V"),
+        ("node_probed.csv", "--design", "mist_valve_node.toml"),
+        ("power_up.csv", "--design", "mist_valve_power_up.toml", "--reading", "RB=100k"),
+        ("one_shot.csv", "--design", "mist_pulse.toml"),
+        ("rippling_supply.csv.gz", "--design", "mist_heartbeat.toml"),
+        ("good_board.csv", "--topology", "astable"),
+        ("good_board.csv", "--topology", "astable", "--RA", "100k", "--RB", "330k", "--C", "47u"),
+    ],
+)
+def test_every_diagnosis_keeps_to_the_schema_and_its_chances_sum_to_1(
+    given: tuple[str, ...], run: Run
+) -> None:
+    samples = Path(__file__).parents[2] / "sample_captures"
+    words = (samples / word if "." in word and "=" not in word else word for word in given)
+    document = run("diagnose", *words).document
+    for result in document["results"]:
+        chances = [item["probability"] for item in result.get("suspects", [])]
+        assert not chances or math.fsum(chances) == pytest.approx(1, abs=1e-9)
+        assert sorted(chances, reverse=True) == chances

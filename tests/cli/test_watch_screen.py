@@ -70,7 +70,7 @@ def test_eighty_columns_hold_all_of_it(turned: Reading) -> None:
     assert screen.count("######") > 3
     for words in (
         *("period", "Mist valve timer, quick", "average of", "since it moved", "nominal of the"),
-        *("goal, limits 24 ms … 25.5 ms", "PASS", "it moved towards the goal: turn on"),
+        *("goal, limits 24 ms … 25.5 ms", "PASS", "it moved towards the goal: keep turning"),
         *("reading 0.1 s old", "q quit", "| limit", "|===="),
     ):
         assert words in screen
@@ -92,7 +92,7 @@ def test_a_name_from_outside_does_not_act(turned: Reading) -> None:
 def test_no_hint_says_which_way_a_trimmer_turns() -> None:
     said = " ".join(HINTS.values())
     assert [w for w in ("clockwise", "left", "right") if w in said.split()] == []
-    assert "turn on" in HINTS["towards"]
+    assert "keep turning" in HINTS["towards"]
     assert "turn back" in HINTS["past"]
     assert "turn back" in HINTS["away"]
     assert "less than U" in HINTS["unclear"]

@@ -82,7 +82,7 @@ def test_a_power_up_record_tells_a_lower_threshold_from_the_upper():
 
 
 def test_a_lifted_probe_tells_a_probe_from_a_leak():
-    board = faulty(("probe-load", 2e6))
+    board = faulty(("probe-load", 1e6))
     asked = answer(evidence_of(board))
     assert "probe-lifted" in [item.reading for item in asked.next]
     lifted = answer(evidence_of(board, captures=(capture(BOARD, "probe-lifted"),)))

@@ -3,10 +3,11 @@
 from __future__ import annotations
 
 import pytest
-from simulated import TRANSPORTS, assert_whole, opened, simulated
+from simulated import DIALECTS, TRANSPORTS, assert_whole, opened, simulated
 
 from benchtool.errors import InstrumentError, NoTriggerError, RefusedError, ReplyError
 from benchtool.instruments import Order
+from benchtool_drivers.dialect import find_dialect
 from benchtool_drivers.loopback.families import FAMILIES
 from benchtool_drivers.loopback.families.instrument import CONTENT_FAULTS
 
@@ -71,7 +72,8 @@ def test_a_busy_instrument_is_told_before_old_samples_are_moved(family: str) -> 
     with opened(subject, "socket", family) as instrument:
         with pytest.raises(RefusedError, match="-213") as caught:
             instrument.acquire(ORDER)
-        assert caught.value.step.command == "arming"
+        armed_by = find_dialect(DIALECTS[family]).body.acquire.arm
+        assert caught.value.step.command == "; ".join(armed_by)
 
 
 @pytest.mark.parametrize(

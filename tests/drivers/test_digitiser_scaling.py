@@ -218,6 +218,9 @@ def test_marks_for_no_reading_are_a_gap_and_never_volts(mark: float) -> None:
         *(("12", 12.0), ("+12", 12.0), ("-1.5", -1.5), (".5", 0.5), ("1.", 1.0)),
         *(("1.5E-3", 1.5e-3), ("1.5 E +03", 1500.0), ("#HFF", 255.0), ("#q17", 15.0)),
         *(("#B101", 5.0), ('"1.5"', 1.5), ("500us", 500e-6), ("2.5 mV", 2.5e-3)),
+        *(("20 kpts", 2e4), ("20k", 2e4), ("5M", 5e6), ("50\N{MICRO SIGN}s", 50e-6)),
+        *(("5MV", 5e-3), ("5MS", 5e-3), ("5mV", 5e-3), ("1 MHZ", 1e6), ("2 V/div", 2.0)),
+        *(("1.25 MSa/s", 1.25e6), ("10 Mpts", 1e7)),
         *(("1 GHz", 1e9), ("100kSa/s", 1e5), ("10 V", 10.0), ("9.91E37", 9.91e37)),
     ],
 )
@@ -229,6 +232,18 @@ def test_numbers_are_read_as_instruments_print_them(text: str, value: float) -> 
 def test_what_is_no_number_is_refused(text: str) -> None:
     with pytest.raises(ValueError, match="is no number"):
         read_number(text)
+
+
+@pytest.mark.parametrize("text", ["20m", "10 mpts"])
+def test_a_prefix_that_could_be_milli_or_mega_is_refused(text: str) -> None:
+    with pytest.raises(ValueError, match="milli or mega"):
+        read_number(text)
+
+
+def test_a_unit_is_not_applied_twice() -> None:
+    units = tables('dt = "50us"').replace("[data]", 'units = { dt = "ns" }\n[data]')
+    with pytest.raises(ReplyError, match="a unit of its own"):
+        record(units, ScriptedLink({"DATA?": CODES}))
 
 
 def test_a_decimal_comma_is_read_where_the_dialect_says_so() -> None:

@@ -450,6 +450,31 @@ total = "LEN?"
 # Texts and hex.
 
 
+LED_BY_FIGURES = """
+[preamble]
+kind = "lead-text"
+separator = ","
+ends = ":"
+fields = ["points", "dt"]
+[data]
+query = "DATA?"
+wrap = "hex"
+dtype = "u1"
+lead = true
+[scale]
+y = "none"
+"""
+
+
+def test_figures_lead_printed_samples_in_the_same_answer() -> None:
+    capture = record(LED_BY_FIGURES, ScriptedLink({"DATA?": "3,2E-6:01FF80"}))
+    assert volts(capture).tolist() == [1, 255, 128]
+    assert dt_s(capture) == 2e-6
+    assert code_of(LED_BY_FIGURES, ScriptedLink({"DATA?": "4,2E-6:01FF80"})) == "wrong-count"
+    with pytest.raises(ReplyError, match="holds no ':'"):
+        record(LED_BY_FIGURES, ScriptedLink({"DATA?": "3,2E-6;01FF80"}))
+
+
 def listed(more: str = "", n: int = 4, link: str = "") -> str:
     return f"""{link}[preamble]
 kind = "constant"

@@ -11,6 +11,9 @@ import pytest
 from simulated import TRANSPORTS, holds, square
 from unseen import MV_PER_DIVISION, PAGE, PROBE, RATE_KHZ, Recorder
 from unseen_box import HIGH_V, LOW_V, RATE_HZ, Box
+from unseen_pages import DT_S, T0_S, Pages
+from unseen_pages import PAGE as PAGE_OF_PAGES
+from unseen_pages import STEP_V as STEP_OF_PAGES_V
 
 from benchtool.errors import NoTriggerError, RefusedError, ReplyError
 from benchtool.instruments import Order
@@ -89,3 +92,32 @@ def test_headers_decimal_commas_and_left_justified_words_are_read(transport: str
         assert capture.warnings == ()
         with pytest.raises(RefusedError, match="unknown GAIN"):
             instrument.acquire(Order(settings=("GAIN 2",)))
+
+
+@pytest.mark.parametrize("transport", TRANSPORTS)
+def test_figures_with_units_and_places_counted_in_bytes_are_read(transport: str) -> None:
+    pages = Pages(square(10_000))
+    file = str(FILE.with_name("unseen_pages.toml"))
+    with (
+        serve(pages, transport) as resource,
+        closing(open_instrument(resource, dialect=file)) as instrument,
+    ):
+        capture = instrument.acquire(Order(channels=("B",)))
+        trace = capture.traces[0]
+        assert pages.seeks == [0, 2 * PAGE_OF_PAGES, 4 * PAGE_OF_PAGES]
+        assert isinstance(trace, Waveform)
+        codes = np.concatenate(list(trace.samples.blocks()))
+        np.testing.assert_array_equal(codes, pages.codes("B"))
+        volts = codes * trace.scale.gain + trace.scale.offset
+        assert np.abs(volts - pages.inputs["B"]).max() <= STEP_OF_PAGES_V / 2 * (1 + 1e-9)
+        assert isinstance(trace.time, UniformTime)
+        assert trace.time.dt_s == pytest.approx(DT_S, rel=1e-12)
+        told = {point.name: point.value for point in capture.structure}
+        assert told["first sample"] == f"{T0_S} s after the trigger"
+        pages.miscount = True
+        with pytest.raises(ReplyError):
+            instrument.acquire(Order())
+        pages.miscount, pages.busy = False, True
+        with pytest.raises(RefusedError, match="-213") as caught:
+            instrument.acquire(Order())
+        assert "busy" in caught.value.hint

@@ -6,6 +6,7 @@ import socket
 import threading
 import time
 from collections import deque
+from contextlib import closing
 
 import pytest
 from answerer import DATA, IDENTITY, Answerer, block
@@ -332,8 +333,39 @@ def test_an_instrument_that_says_nothing_is_not_opened(transport: str) -> None:
 
 
 def test_what_stands_at_no_address_is_told() -> None:
-    with pytest.raises(NotConnectedError, match="cannot be reached"):
-        Link.open("this is no resource", SHORT)
+    for resource in ("this is no resource", "TCPIP::127.0.0.1::70000::SOCKET", "TCPIP::h,x::INSTR"):
+        with pytest.raises(UsageError) as caught:
+            Link.open(resource, SHORT)
+        assert caught.value.code == "malformed-resource"
+
+
+@pytest.mark.parametrize("kind", ["1::SOCKET", "hislip0::INSTR", "INSTR"])
+def test_a_name_that_no_address_is_known_for_is_told_as_one(
+    kind: str, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    def unknown(*_: object, **__: object) -> None:
+        raise socket.gaierror(socket.EAI_NONAME, "Name or service not known")
+
+    monkeypatch.setattr(socket, "getaddrinfo", unknown)
+    with pytest.raises(NotConnectedError, match=r"known for the name bench\.invalid"):
+        Link.open(f"TCPIP::bench.invalid::{kind}", SHORT)
+
+
+def test_a_prompt_nobody_told_of_is_told_as_one() -> None:
+    with (
+        serve(Prompting(), "socket") as resource,
+        pytest.raises(ReplyError) as caught,
+    ):
+        Link.open(resource, SHORT)
+    assert 'prompt = "> "' in caught.value.hint
+
+
+def test_an_instrument_without_the_query_for_errors_is_told_as_one() -> None:
+    settings = LinkSettings(timeout_s=0.2, block_timeout_s=0.2, error_query="FAULT?")
+    with serve(Answerer(), "socket") as resource, closing(Link.open(resource, settings)) as link:
+        with pytest.raises(InstrumentTimeoutError) as caught:
+            link.errors()
+        assert "error_query" in caught.value.hint
 
 
 @transports
@@ -415,6 +447,17 @@ def test_serving_for_ever_says_where_and_ends_with_an_interruption() -> None:
     serve_forever(Answerer(), "socket", use)
     assert heard == ["spacing"]
     assert threading.active_count() == n_threads
+
+
+@pytest.mark.parametrize("transport", ["socket", "hislip"])
+def test_a_port_that_another_program_has_is_refused(transport: str) -> None:
+    with socket.create_server(("127.0.0.1", 0)) as taken:
+        port = taken.getsockname()[1]
+        with (
+            pytest.raises(UsageError, match=f"port {port} .* another program"),
+            serve(Answerer(), transport, port=port),
+        ):
+            pass
 
 
 def test_a_transport_or_fault_that_is_not_known_is_refused() -> None:

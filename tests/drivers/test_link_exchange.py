@@ -163,3 +163,9 @@ def test_what_is_no_log_is_refused(tmp_path: Path, text: str) -> None:
 def test_a_log_that_cannot_be_written_is_told(tmp_path: Path) -> None:
     with pytest.raises(InputError, match="cannot be written"):
         ExchangeLog(tmp_path / "no such folder" / "said.jsonl")
+
+
+def test_a_log_that_has_no_room_is_named() -> None:
+    with pytest.raises(InputError, match="/dev/full") as caught:
+        ExchangeLog("/dev/full")
+    assert caught.value.code == "not-writable"

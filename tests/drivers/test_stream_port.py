@@ -51,6 +51,15 @@ def connected(
             stream.close()
 
 
+def newest_after(stream: EdgeStream, n_rows: int) -> Capture | None:
+    """Return the capture that follows so many rows, however long a loaded machine is silent."""
+    last = None
+    end_s = time.monotonic() + 8.0
+    while stream.intake.n_rows < n_rows and time.monotonic() < end_s:
+        last = stream.newest(1.0) or last
+    return last
+
+
 def all_up_to_the_end(stream: EdgeStream) -> list[Capture]:
     """Return what a stream gives before it says that it is gone."""
     captures = []
@@ -91,10 +100,7 @@ def test_a_recording_without_a_length_is_refused() -> None:
 def test_the_newest_stretch_is_bounded_and_says_where_it_lies() -> None:
     with connected(2000, window_periods=50) as (stream, device):
         device.go()
-        first = stream.newest(2.0)
-        assert first is not None
-        while (last := stream.newest(1.0)) is not None and stream.intake.n_rows < 2000:
-            pass
+        last = newest_after(stream, 2000)
     assert last is not None
     trace = trace_of(last)
     assert trace.times_s.size == 101
@@ -106,8 +112,7 @@ def test_the_newest_stretch_is_bounded_and_says_where_it_lies() -> None:
 def test_a_window_in_seconds_keeps_two_periods_at_least() -> None:
     with connected(500, window_s=0.01) as (stream, device):
         device.go()
-        while (last := stream.newest(1.0)) is not None and stream.intake.n_rows < 490:
-            pass
+        last = newest_after(stream, 490)
         assert last is not None
         assert 5 <= trace_of(last).times_s.size <= 21
 
@@ -246,3 +251,21 @@ def test_a_socket_gives_all_up_to_its_end_and_is_gone_then() -> None:
     np.testing.assert_allclose(
         trace_of(captures[-1]).times_s, times_s - times_s[0], rtol=0, atol=1e-12
     )
+
+
+@pytest.mark.parametrize(
+    ("name", "says"),
+    [("/dev/null", "no serial port"), ("socket://bench.invalid:1", "no address is known")],
+)
+def test_what_is_no_port_says_so(name: str, says: str, monkeypatch: pytest.MonkeyPatch) -> None:
+    def unknown(*_: object, **__: object) -> None:
+        raise socket.gaierror(socket.EAI_NONAME, "Name or service not known")
+
+    monkeypatch.setattr(socket, "create_connection", unknown)
+    with pytest.raises(NotConnectedError, match=says):
+        open_stream(name)
+
+
+def test_an_address_without_a_port_is_a_wrong_option() -> None:
+    with pytest.raises(UsageError, match="names no port"):
+        open_stream("socket://127.0.0.1")

@@ -12,9 +12,9 @@ from __future__ import annotations
 
 from collections import deque
 
-from benchtool.model.arrays import FloatArray, NDArray
-
 import numpy as np
+
+from benchtool.model.arrays import FloatArray, NDArray
 
 STEP_V = 5e-3
 ZERO = 548

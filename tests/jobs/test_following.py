@@ -12,7 +12,7 @@ from pathlib import Path
 import numpy as np
 import pytest
 
-from benchtool.errors import InputError, MalformedCaptureError, NotConnectedError
+from benchtool.errors import CaptureError, InputError, MalformedCaptureError, NotConnectedError
 from benchtool.jobs.following import WINDOW_BYTES, Growing, open_growing
 from benchtool.jobs.growing import GrowingPipe
 from benchtool.model.capture import Capture, LogicTrace, Waveform
@@ -198,3 +198,20 @@ def test_a_file_that_is_not_there_says_so(tmp_path: Path, follow: Follow) -> Non
     with pytest.raises(InputError) as raised:
         follow(tmp_path / "none.csv")
     assert raised.value.code == "no-such-file"
+
+
+@pytest.mark.parametrize(
+    ("text", "code"), [("nothing to read here\n", "no-rows"), ("a,b\n1,2\n", "no-time")]
+)
+def test_an_input_that_ends_without_a_reading_says_what_is_wrong_with_it(
+    text: str, code: str
+) -> None:
+    reading, writing = os.pipe()
+    os.write(writing, text.encode())
+    os.close(writing)
+    with os.fdopen(reading, "rb", buffering=0) as pipe:
+        stream = Growing(GrowingPipe(pipe))
+        assert stream.newest(0.0) is None
+        with pytest.raises(CaptureError) as caught:
+            stream.newest(0.5)
+    assert caught.value.code == code

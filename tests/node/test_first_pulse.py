@@ -130,3 +130,13 @@ def test_times_that_no_schmitt_oscillator_has_are_refused(
 ) -> None:
     with pytest.raises(SolveError):
         solve_schmitt(*(seconds(x, 1e-4) for x in times))
+
+
+def test_thresholds_that_would_meet_on_the_way_to_a_cause_are_no_fault() -> None:
+    near = Circuit(topology="schmitt", R=470e3, C=2.2e-6, supply=12.0, v_upper=6.96, v_lower=4.56)
+    times = predict(near)
+    assert times.first_high is not None
+    assert times.t_high is not None
+    first, usual = float(times.first_high), float(times.t_high)
+    found = judge_first_pulse(seconds(1.2 * first, 1e-4), seconds(usual, 1e-4), near)
+    assert found.stands_out

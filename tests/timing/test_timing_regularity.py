@@ -8,8 +8,10 @@ from timing_pulses import HIGH_S, LOW_S, pulses, seen
 
 from benchtool.circuits import Circuit
 from benchtool.model.quantity import Measured
+from benchtool.model.timing import EdgeRun, Edges
 from benchtool.simulation import Acquisition, Ripple, simulate
 from benchtool.timing import find_edges, find_intervals
+from benchtool.timing.lines import find_lines
 from benchtool.timing.regularity import find_jumps, find_lock, find_regularity, find_skips
 
 PERIOD_S = HIGH_S + LOW_S
@@ -134,3 +136,25 @@ def test_all_of_it_in_one_call() -> None:
     assert found.jumps
     assert found.lock is None
     assert found.skips == ()
+
+
+def test_the_beat_of_unresolved_edges_with_their_grid_is_no_ripple() -> None:
+    """Edges of a steady wave on a grid swing by 2/pi of its step; nothing follows anything."""
+    step_s, high_s, low_s = 1e-5, 3.3127e-3, 3.2571e-3
+    starts_s = 0.37e-5 + (high_s + low_s) * np.arange(200)
+    exact_s = np.sort(np.concatenate([starts_s, starts_s + high_s]))
+    times_s = np.ceil(exact_s / step_s) * step_s
+    edges = Edges(
+        times_s=times_s,
+        rising=np.arange(400) % 2 == 0,
+        u_s=np.full(400, 1e-9),
+        runs=(
+            EdgeRun(
+                first=0, stop=400, start_s=0.0, end_s=float(times_s[-1]) + step_s, starts_high=False
+            ),
+        ),
+        step_s=step_s,
+        resolved=False,
+    )
+    assert find_lines(find_intervals(edges), edges)  # the search alone takes the beat for one
+    assert find_regularity(find_intervals(edges), edges).lines == ()

@@ -44,13 +44,15 @@ def resource_of(name: str) -> str:
 
 
 def exchange_log(path: str | None) -> Any:
-    """Return the log of an exchange, with whole answers so that it can be played back, as a context.
+    """Return the log of an exchange as a context; of nothing where no file is named.
 
-    Of nothing where no file is named.
+    It holds whole answers, so that it can be played back.
     """
     from contextlib import nullcontext
 
     from benchtool_drivers.link import ExchangeLog
 
-    found: ExchangeLog | nullcontext[None] = ExchangeLog(Path(path), whole=True) if path else nullcontext()
+    found: ExchangeLog | nullcontext[None] = (
+        ExchangeLog(Path(path), whole=True) if path else nullcontext()
+    )
     return found

@@ -12,6 +12,7 @@ from benchtool.report.suspicion import (
     others_text,
     reading_cost,
     reading_title,
+    shorter_caution,
     suspect_rows,
 )
 
@@ -42,7 +43,8 @@ def next_blocks(found: Diagnosis | None) -> tuple[Block, ...]:
 
 
 def _rows(found: Diagnosis) -> Iterator[tuple[str, str]]:
+    heard: set[str] = set()
     for item in found.next[:3]:
-        caution = f"Caution: {item.caution}" if item.caution else ""
+        caution = f"Caution: {shorter_caution(item.caution, heard)}" if item.caution else ""
         said = (caution, f"Takes {reading_cost(item)}.", item.why)
         yield reading_title(item), " ".join(text for text in said if text)

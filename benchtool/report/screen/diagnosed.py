@@ -27,15 +27,17 @@ from benchtool.report.suspicion import (
     combination_rows,
     compass_points,
     group_text,
+    next_heading,
     others_text,
     reading_cost,
     reading_title,
+    shorter_caution,
     suspect_rows,
     unmarked_sentence,
 )
 from benchtool.units import format_value
 
-_BAR = 20
+_BAR = 12
 _MOST_NEXT = 3
 _COMPASS = (41, 13)
 
@@ -113,19 +115,22 @@ def _draw_next_readings(console: Console, found: Diagnosis) -> None:
     if not found.next:
         draw_line(console, found.stop or "Nothing cheap is left to measure.")
         return
-    draw_line(console, "To measure next, what tells most for the time first:", "bold")
+    draw_line(console, next_heading(found), "bold")
+    said: set[str] = set()
     for item in found.next[:_MOST_NEXT]:
         console.print()
         draw_line(console, f"{reading_title(item)}   {reading_cost(item)}")
         if item.caution:
-            draw_line(console, f"Caution: {item.caution}", "yellow", deeper=2)
+            draw_line(
+                console, f"Caution: {shorter_caution(item.caution, said)}", "yellow", deeper=2
+            )
         draw_line(console, item.why, deeper=2)
 
 
 def _next_command(analysis: Analysis) -> str:
     name = same_capture(analysis.sources[0])
     design = quoted(analysis.design.source) if analysis.design and analysis.design.source else ""
-    base = f"benchtool diagnose {name}" + (f" --design {design}" if design else " ...")
+    base = f"benchtool diagnose {name}" + (f" --design {design}" if design else "")
     found = next((item.diagnosis for item in analysis.results if item.diagnosis), None)
     first = found.next[0] if found and found.next else None
     return f"{base} {_as_option(first)}" if first else f"benchtool explain {_best(found)}"

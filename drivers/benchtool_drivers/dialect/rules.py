@@ -159,7 +159,8 @@ def _of_leads(body: DigitiserKeys) -> Iterator[Flaw]:
     printed = data.wrap in ("ascii", "hex")
     if data.lead and printed and kind != "lead-text":
         yield Flaw(
-            path=("data", "lead"), message='goes with a block, or with kind = "lead-text" in [preamble]'
+            path=("data", "lead"),
+            message='goes with a block, or with kind = "lead-text" in [preamble]',
         )
     if kind == "lead-text" and printed and not body.preamble.ends:
         yield Flaw(

@@ -184,7 +184,7 @@ class Digitiser:
             self._link.send(command)
             self._talk.tell("sent", command, meaning="as you asked")
         if commands:
-            self._talk.refuse_errors("the settings that you gave")
+            self._talk.refuse_errors("the settings that you gave", "; ".join(commands))
 
     @contextmanager
     def _left_running(self) -> Iterator[None]:
@@ -223,7 +223,7 @@ class Digitiser:
         talk = self._talk
         talk.send(acquire.arm, "take one record")
         if acquire.wait.by != "opc":  # which would wait behind a query
-            talk.refuse_errors("arming")
+            talk.refuse_errors("arming", "; ".join(acquire.arm))
         wait_for_end(
             talk,
             timeout_s=order.trigger_timeout_s or acquire.timeout_s,

@@ -6,7 +6,14 @@ import math
 import re
 
 _FACTORS = {
-    **{"": 1.0, "k": 1e3, "M": 1e6, "G": 1e9, "m": 1e-3, "u": 1e-6, "n": 1e-9, "p": 1e-12},
+    "": 1.0,
+    "k": 1e3,
+    "M": 1e6,
+    "G": 1e9,
+    "m": 1e-3,
+    "u": 1e-6,
+    "n": 1e-9,
+    "p": 1e-12,
     **dict.fromkeys(("\N{MICRO SIGN}", "\N{GREEK SMALL LETTER MU}"), 1e-6),
 }
 _NUMBER = re.compile(

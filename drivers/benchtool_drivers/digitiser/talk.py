@@ -182,8 +182,12 @@ class Talk:
         named = [name for bit, name in _ESR.items() if int(entry) & bit]
         return f"{entry} ({', '.join(named)})" if named else entry
 
-    def refuse_errors(self, after: str) -> None:
+    def refuse_errors(self, after: str, command: str = "") -> None:
         """Raise what the error queue holds.
+
+        Args:
+            after: What was done.
+            command: The command that did it, where it was one.
 
         Raises:
             RefusedError: If it holds something.
@@ -194,7 +198,9 @@ class Talk:
                 f"after {after} the instrument reports {'; '.join(entries)}",
                 hint="Nothing was kept of this record. "
                 + (_BUSY if entries[0].startswith("-213") else _REFUSED),
-                step=self.step(after, expected="an empty error queue", got="; ".join(entries)),
+                step=self.step(
+                    command or after, expected="an empty error queue", got="; ".join(entries)
+                ),
             )
 
     def number(self, text: str, what: str, command: str) -> float:

@@ -70,7 +70,7 @@ def unreachable(error: BaseException, resource: str) -> InstrumentError:
 
 
 def too_much(rest: bytes) -> ReplyError:
-    """Return the error to raise where more came than one answer; an unended rest may be a prompt."""
+    """Return the error to raise where more came than one answer; its rest may be a prompt."""
     prompt = rest.decode("latin-1")
     looks_so = 0 < len(prompt) <= _LONGEST_PROMPT and prompt.isprintable()
     return ReplyError(

@@ -7,7 +7,7 @@ from collections.abc import Callable
 from contextlib import suppress
 from typing import TypeVar
 
-from benchtool.errors import NotConnectedError, ReplyError, Step
+from benchtool.errors import NotConnectedError, Step
 from benchtool_drivers.link.addresses import check_resource
 from benchtool_drivers.link.complaints import beginning, complaint, too_much, unreachable
 from benchtool_drivers.link.connecting import connect

@@ -127,7 +127,11 @@ class ExchangeLog:
             ) from error
         self._start_s = time.monotonic()
         started = datetime.now(UTC).strftime("%Y-%m-%dT%H:%M:%SZ")
-        self._put({"log": FORMAT, "started": started})
+        try:
+            self._put({"log": FORMAT, "started": started})
+        except InputError:
+            self.close()
+            raise
 
     def exchange(
         self,

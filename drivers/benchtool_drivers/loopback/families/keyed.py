@@ -18,8 +18,8 @@ class Keyed(SimulatedInstrument):
         "HEADer?": "_header",
         "DATA:PREamble?": "_preamble",
         "DATA:VALues?": "_values",
-        "DATA:ENCoding": "_set_encoding",
-        "DATA:ENCoding?": "_encoding_now",
+        "DATA:TYPE": "_set_type",
+        "DATA:TYPE?": "_type_now",
         "DATA:WIDth": "_set_width",
         "DATA:WIDth?": "_width_now",
         "DATA:SOURce": "choose",
@@ -76,7 +76,7 @@ class Keyed(SimulatedInstrument):
         pairs = [
             f"NPT {self._n_window()}",
             f"BYT {self._width}",
-            f"SIGN {'RI' if self._signed else 'RP'}",
+            f"SIGN {'INT' if self._signed else 'UINT'}",
             f"ORD {'LSB' if self._little else 'MSB'}",
             f"TINT {self.figure(self.dt_s)}",
             f"TOFF {self.figure(0.0)}",
@@ -98,13 +98,13 @@ class Keyed(SimulatedInstrument):
     def _header(self, _parameters: str) -> str:
         return self._titled("HEADER", str(int(self._headers)))
 
-    def _set_encoding(self, parameters: str) -> None:
-        word = self.agreed(parameters, ("RIB", "RPB", "SRI", "SRP"))
-        self._signed, self._little = "RI" in word, word.startswith("S")
+    def _set_type(self, parameters: str) -> None:
+        word = self.agreed(parameters, ("INT,BIG", "UINT,BIG", "INT,LITT", "UINT,LITT"))
+        self._signed, self._little = word.startswith("INT"), word.endswith("LITT")
 
-    def _encoding_now(self, _parameters: str) -> str:
-        kind = "RI" if self._signed else "RP"
-        return self._titled("DATA:ENCODING", f"S{kind}" if self._little else f"{kind}B")
+    def _type_now(self, _parameters: str) -> str:
+        kind = "INT" if self._signed else "UINT"
+        return self._titled("DATA:TYPE", f"{kind},{'LITT' if self._little else 'BIG'}")
 
     def _set_width(self, parameters: str) -> None:
         self._width = int(self.agreed(parameters, ("1", "2")))

@@ -2,11 +2,14 @@
 
 from __future__ import annotations
 
+import errno
 import socket
 import struct
 import threading
 from collections.abc import Callable
 from contextlib import suppress
+
+from benchtool.errors import UsageError
 
 HOST = "127.0.0.1"
 ACCEPT_S = 0.05
@@ -22,7 +25,7 @@ class Listener:
 
     def __init__(self, serve: Callable[[socket.socket], None], port: int = 0) -> None:
         self._serve = serve
-        self._server = socket.create_server((HOST, port))
+        self._server = _bound(port)
         self._server.settimeout(ACCEPT_S)
         self.port: int = self._server.getsockname()[1]
         self.stopping = threading.Event()
@@ -106,3 +109,20 @@ def exactly(connection: socket.socket, n_bytes: int) -> bytes:
             raise EOFError
         n_got += n_read
     return bytes(buffer)
+
+
+def _bound(port: int) -> socket.socket:
+    """Take a port.
+
+    Raises:
+        UsageError: If that is not to be had.
+    """
+    try:
+        return socket.create_server((HOST, port))
+    except OSError as error:
+        taken = error.errno == errno.EADDRINUSE
+        raise UsageError(
+            f"port {port} cannot be served: "
+            + ("another program has it" if taken else str(error.strerror)),
+            hint="Leave --port out for one that is free, or give another.",
+        ) from error
