@@ -4,8 +4,6 @@ import ast
 from collections.abc import Iterator
 from pathlib import Path
 
-import pytest
-
 import benchtool
 import benchtool_drivers
 from benchtool.circuits.faults import FAULTS
@@ -41,11 +39,10 @@ def test_the_scan_finds_codes_of_errors_and_of_warnings() -> None:
     assert {"usage", "unit", "no-solution", "limits-narrower-than-u"} <= set(CODES)
 
 
-@pytest.mark.parametrize("code", CODES)
-def test_every_code_is_explained(code: str) -> None:
-    assert lookup(code) is not None
+def test_every_code_is_explained() -> None:
+    assert [code for code in CODES if lookup(code) is None] == []
 
 
-@pytest.mark.parametrize("name", [*FAULTS, *TOPOLOGIES, *IC_TERMS, *QUANTITIES])
-def test_every_fault_topology_ic_term_and_quantity_is_explained(name: str) -> None:
-    assert lookup(name) is not None
+def test_every_fault_topology_ic_term_and_quantity_is_explained() -> None:
+    names = [*FAULTS, *TOPOLOGIES, *IC_TERMS, *QUANTITIES]
+    assert [name for name in names if lookup(name) is None] == []

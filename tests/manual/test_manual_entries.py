@@ -10,36 +10,44 @@ from benchtool.manual.entries import _folded
 LONGEST_TEXT = 700
 """Characters; about a minute of reading at 200 words a minute is 1200, this is half of it."""
 
-BY_TERM = pytest.mark.parametrize("entry", entries(), ids=lambda entry: entry.term)
+BY_TOPIC = pytest.mark.parametrize("topic", sorted({entry.topic for entry in entries()}))
 
 
-@BY_TERM
-def test_an_entry_says_what_it_is_and_where_it_is_from(entry: Entry) -> None:
-    assert entry.title
-    assert entry.topic
-    assert entry.source
-    assert entry.text.endswith((".", ":")), entry.text[-20:]
-    assert len(entry.text) <= LONGEST_TEXT
+def entries_of(topic: str) -> list[Entry]:
+    return [entry for entry in entries() if entry.topic == topic]
 
 
-@BY_TERM
-def test_formulas_fit_a_screen_of_80_columns(entry: Entry) -> None:
+@BY_TOPIC
+def test_an_entry_says_what_it_is_and_where_it_is_from(topic: str) -> None:
+    for entry in entries_of(topic):
+        assert entry.title, entry.term
+        assert entry.topic, entry.term
+        assert entry.source, entry.term
+        assert entry.text.endswith((".", ":")), (entry.term, entry.text[-20:])
+        assert len(entry.text) <= LONGEST_TEXT, entry.term
+
+
+@BY_TOPIC
+def test_formulas_fit_a_screen_of_80_columns(topic: str) -> None:
     """With the indent of the screen, six columns are left free."""
-    assert all(len(line) <= 74 for line in entry.formula.splitlines())
+    for entry in entries_of(topic):
+        assert all(len(line) <= 74 for line in entry.formula.splitlines()), entry.term
 
 
-@BY_TERM
-def test_references_lead_to_other_entries(entry: Entry) -> None:
-    for term in entry.see_also:
-        found = lookup(term)
-        assert found is not None, f"{entry.term} refers to {term!r}"
-        assert found is not entry
+@BY_TOPIC
+def test_references_lead_to_other_entries(topic: str) -> None:
+    for entry in entries_of(topic):
+        for term in entry.see_also:
+            found = lookup(term)
+            assert found is not None, f"{entry.term} refers to {term!r}"
+            assert found is not entry, f"{entry.term} refers to itself"
 
 
-@BY_TERM
-def test_a_title_is_a_phrase_and_not_the_term_again(entry: Entry) -> None:
-    assert not entry.title.endswith(".")
-    assert _folded(entry.title) != _folded(entry.term)
+@BY_TOPIC
+def test_a_title_is_a_phrase_and_not_the_term_again(topic: str) -> None:
+    for entry in entries_of(topic):
+        assert not entry.title.endswith("."), entry.term
+        assert _folded(entry.title) != _folded(entry.term), entry.term
 
 
 def test_no_term_and_no_alias_stands_twice() -> None:

@@ -353,15 +353,15 @@ def test_edges_on_one_line_leave_little_noise_open() -> None:
     for n in (10, 30):
         for wander in (0.0, 0.3, 0.6):
             held = []
-            for _ in range(100):
+            for _ in range(60):
                 period = 20 + rng.uniform(0, 1)
                 widths = period / 2 + rng.normal(0, wander / math.sqrt(2), 2 * n)
                 times = np.ceil(rng.uniform(0, 1) + np.concatenate([[1], 1 + np.cumsum(widths)]))
                 edges = edges_at(times, end_s=1e3, step_s=1.0)
                 found = measured(timing_of(edges, timebase_rel=0.0).period)
                 held.append(abs(found.value - period) <= expanded(found))
-            # 100 draws fix 0.95 to 0.022; three of these below
-            assert np.mean(held) > 0.884, (n, wander)
+            # 60 draws fix 0.95 to 0.028; three of these below
+            assert np.mean(held) > 0.865, (n, wander)
 
 
 @pytest.mark.parametrize("variance", [1e-4, 0.004, 0.1])
