@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import os
 from collections.abc import Iterator
 from pathlib import Path
 
@@ -29,6 +30,11 @@ def design(tmp_path: Path) -> Path:
 def good(tmp_path: Path) -> Path:
     """A capture of a board as designed."""
     return write_square(tmp_path / "good.csv")
+
+
+def pytest_configure() -> None:
+    """Let the processes that tests begin keep what they compile: there are hundreds of them."""
+    os.environ.pop("PYTHONDONTWRITEBYTECODE", None)
 
 
 LOWER_BOUNDS = {"designs", "drivers", "samples", "timing", "report"}

@@ -6,6 +6,7 @@ turned after the fifth.
 
 from __future__ import annotations
 
+import signal
 import sys
 import time
 from collections.abc import Iterable, Iterator
@@ -35,6 +36,8 @@ def _paused(captures: Iterable[Capture], pause_s: float) -> Iterator[Capture]:
 
 
 if __name__ == "__main__":
+    # a shell tells a job in the background to ignore Ctrl-C
+    signal.signal(signal.SIGINT, signal.default_int_handler)
     stream = played(int(sys.argv[1]), float(sys.argv[2]))
     sources.open_stream = lambda wanted: stream  # noqa: ARG005 - whatever is named
     sys.exit(main(["watch", *sys.argv[3:]]))
