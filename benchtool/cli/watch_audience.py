@@ -102,7 +102,12 @@ class Screen(Silent):
             self._canvas.ring()
 
     def pressed(self) -> str:
-        """Return the keys pressed."""
+        """Return the keys pressed.
+
+        Raises:
+            KeyboardInterrupt: If a signal has ended the watch.
+        """
+        self._canvas.heed()
         return self._keyboard.pressed()
 
 

@@ -6,7 +6,7 @@ import os
 import signal
 import sys
 from types import FrameType, TracebackType
-from typing import TYPE_CHECKING, Any, NoReturn, TextIO
+from typing import TYPE_CHECKING, Any, TextIO
 
 if TYPE_CHECKING:
     from benchtool.report.screen.watch import Row, Tone
@@ -16,7 +16,7 @@ _LEAVE = "\x1b[0m\x1b[?7h\x1b[?25h\x1b[?1049l"
 _SMALLEST = (20, 2)
 _COLOURS: dict[Tone, str] = {"good": "1;32", "doubt": "1;33", "bad": "1;31"}
 _WEIGHTS: dict[Tone, str] = {"strong": "1", "faint": "2", "good": "1", "doubt": "1", "bad": "1"}
-_ENDING = ("SIGTERM", "SIGHUP")
+_ENDING = ("SIGINT", "SIGTERM", "SIGHUP")
 
 
 class Keyboard:
@@ -109,12 +109,13 @@ class Canvas:
         self._shown: list[str] = []
         self._size = (0, 0)
         self._handlers: dict[int, Any] = {}
+        self._is_told = False
 
     def __enter__(self) -> Canvas:
         for name in _ENDING:
             number = getattr(signal, name, None)
             if number is not None:
-                self._handlers[number] = signal.signal(number, _interrupt)
+                self._handlers[number] = signal.signal(number, self._note_ending)
         self._send(_ENTER)
         return self
 
@@ -130,6 +131,23 @@ class Canvas:
             self._shown = []
         for number, handler in self._handlers.items():
             signal.signal(number, handler)
+
+    def heed(self) -> None:
+        """End as Ctrl-C does where a signal has asked for it since.
+
+        A signal that raised by itself could come in the middle of anything, such as a lock of a
+        library, and leave the terminal as it must not be left.
+
+        Raises:
+            KeyboardInterrupt: If the watch is to end.
+        """
+        if self._is_told:
+            raise KeyboardInterrupt
+
+    def _note_ending(self, _signal: int, _frame: FrameType | None) -> None:
+        if self._is_told:  # told twice: something hangs
+            raise KeyboardInterrupt
+        self._is_told = True
 
     @property
     def encoding(self) -> str:
@@ -180,8 +198,3 @@ class Canvas:
     def _send(self, text: str) -> None:
         self._stream.write(text)
         self._stream.flush()
-
-
-def _interrupt(_signal: int, _frame: FrameType | None) -> NoReturn:
-    """End as Ctrl-C does, so that the terminal is left as it was found."""
-    raise KeyboardInterrupt
