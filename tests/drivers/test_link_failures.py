@@ -19,6 +19,7 @@ from benchtool_drivers.loopback.faults import TransportFault
 from benchtool_drivers.loopback.serving import TRANSPORTS, serve
 
 SHORT = LinkSettings(timeout_s=0.2, block_timeout_s=0.2)
+CALM = LinkSettings(timeout_s=1.0, block_timeout_s=1.0)  # where no silence is meant
 STREAMS = ("socket", "pty")
 transports = pytest.mark.parametrize("transport", TRANSPORTS)
 
@@ -160,7 +161,7 @@ def test_a_command_that_is_not_known_is_told_with_the_instruments_own_words(tran
 def test_a_new_connection_is_told_once(transport: str) -> None:
     fault = TransportFault(kind="half-close", on=r"^DATA\?")
     with serve(Answerer(), transport, fault) as resource:
-        link = Link.open(resource, SHORT)
+        link = Link.open(resource, CALM)
         assert not link.reopened
         with pytest.raises(NotConnectedError):
             link.ask_block("DATA?")

@@ -69,11 +69,15 @@ class Patience:
         self._silence_s = first_s
         self._next_s = next_s
         self._end_s = None if deadline_s is None else time.monotonic() + deadline_s
+        self._is_last = False
 
     @property
     def expired(self) -> bool:
-        """Whether the time in all has run out."""
-        return self._end_s is not None and time.monotonic() >= self._end_s
+        """Whether the time in all has run out, or ends with the read that was given what is left.
+
+        A library rounds that time, so that its silence may be over a moment before the whole is.
+        """
+        return self._is_last or (self._end_s is not None and time.monotonic() >= self._end_s)
 
     def heard(self) -> None:
         """Note that something came."""
@@ -90,4 +94,5 @@ class Patience:
         left_s = self._end_s - time.monotonic()
         if left_s <= 0:
             raise TimeoutError("the time for the whole answer has run out")
+        self._is_last = left_s <= self._silence_s
         return min(self._silence_s, left_s)
