@@ -6,10 +6,11 @@ import re
 from collections.abc import Iterator
 from contextlib import contextmanager, suppress
 
-from benchtool.errors import InstrumentError, NotConnectedError, UsageError
+from benchtool.errors import InstrumentError, NotConnectedError
 from benchtool.instruments import Order
 from benchtool.model.quantity import Notice
 from benchtool_drivers.dialect.records import AcquireKeys
+from benchtool_drivers.digitiser.orders import check_order
 from benchtool_drivers.digitiser.talk import Talk
 from benchtool_drivers.link import Link
 
@@ -36,7 +37,7 @@ class Session:
             UsageError: If the order asks for what the dialect does not offer.
             RefusedError: If the instrument reports an error.
         """
-        self._check(order)
+        check_order(self._talk.dialect, order)
         try:
             notices = self._begin(channel)
             self._set(order.settings)
@@ -56,22 +57,6 @@ class Session:
                 self._talk.errors()  # what is answered was heard: only then is the line cut
         self._kept.clear()
         self._link.close()
-
-    def _check(self, order: Order) -> None:
-        name = self._talk.dialect.name
-        if order.force and not self._talk.dialect.body.acquire.force:
-            raise UsageError(
-                f"the dialect {name} has no command to force a trigger",
-                hint="Force it at the instrument, or add force to [acquire] of the dialect.",
-                code="no-forced-trigger",
-            )
-        for command in order.settings:
-            if not (command.isascii() and command.isprintable() and command.strip()):
-                raise UsageError(
-                    f"{command!r} is no command: printable ASCII is wanted",
-                    hint="Give one command a setting, without line feeds.",
-                    code="bad-setting",
-                )
 
     def _begin(self, channel: str) -> tuple[Notice, ...]:
         self._link.recover()
